@@ -36,9 +36,9 @@ type Message struct {
 	Way     uint16
 	N       int32
 	A, B    int64
-	Ref     any    // immutable, or nil
-	epoch   int32  // state of the management ways when it was sent
-	remote  bool   // came over the management ways
+	Ref     any   // immutable, or nil
+	Epoch   int32 // set by the sender's site: state of the management ways
+	Remote  bool  // set by the sender's site: came over the management ways
 }
 
 // Trail is one incarnation of a circuit's route in one direction, as a sender
