@@ -1,0 +1,231 @@
+package scenarios
+
+import "fmt"
+
+// The words that a scenario file uses, as types. Each has a String method that
+// gives the word of the file, and panics for a value that is none of them.
+
+// QueueKind is how a class is served.
+type QueueKind uint8
+
+// Kinds of queue.
+const (
+	QueueStrict QueueKind = iota // before every class below it
+	QueueWeight                  // a share of what strict classes leave
+	QueueFIFO                    // in order of arrival, one queue for all classes
+)
+
+// Model is what a traffic entry sends like.
+type Model uint8
+
+// Traffic models.
+const (
+	ModelConstant Model = iota // packets at equal distances
+	ModelPoisson               // packets at exponential distances
+	ModelVoice                 // talk spurts of a codec
+	ModelVideo                 // frames, each sent as a train of packets
+	ModelFiles                 // files that arrive at random and are sent at a pace
+)
+
+// FlowArrival is how flows start.
+type FlowArrival uint8
+
+// How flows start.
+const (
+	FlowsNone    FlowArrival = iota // all are there from the start
+	FlowsPoisson                    // at exponential distances
+	FlowsRegular                    // at equal distances
+)
+
+// Figure is a figure on which an objective can be set.
+type Figure uint8
+
+// Figures, in the order in which they are listed.
+const (
+	FigureDelayMean Figure = iota // one-way delay
+	FigureDelayP50
+	FigureDelayP95
+	FigureDelayP99
+	FigureDelayP999
+	FigurePDVP50 // packet delay variation (RFC 5481)
+	FigurePDVP95
+	FigurePDVP99
+	FigurePDVP999
+	FigureIPDVP999 // inter-packet delay variation (RFC 3393)
+	FigureJitter   // interarrival jitter (RFC 3550)
+	FigureLoss     // ratio of packets lost
+	FigureOut      // longest outage
+)
+
+// CommandOrder is how the commands of one set-up are given.
+type CommandOrder uint8
+
+// Orders of commands.
+const (
+	CommandsByKind   CommandOrder = iota // slots in parallel, wavelengths in sequence
+	CommandsParallel                     // to all nodes at once
+	CommandsSequence                     // node after node
+)
+
+// CircuitSize is how the size of a circuit was given.
+type CircuitSize uint8
+
+// Kinds of size.
+const (
+	SizeSlots     CircuitSize = iota // a number of tributary slots
+	SizeContainer                    // a standard container
+	SizeChannel                      // a whole wavelength
+)
+
+// Carries is what a circuit carries.
+type Carries uint8
+
+// What a circuit carries.
+const (
+	CarriesRouted Carries = iota // a link of the packet layer
+	CarriesMoved                 // only what is moved onto it
+)
+
+// Recovery is what happens to a circuit when its route is cut.
+type Recovery uint8
+
+// Kinds of recovery.
+const (
+	RecoveryNone    Recovery = iota // it stays down until repaired
+	RecoveryOnePlus                 // 1+1: sent twice, apart, chosen at the end
+	RecoveryRestore                 // the controller finds another route
+)
+
+// WhenDown is what becomes of what was moved onto a circuit that is down.
+type WhenDown uint8
+
+// What becomes of it.
+const (
+	WhenDownReturn WhenDown = iota // it goes back to the routed network
+	WhenDownWait                   // it waits at the port
+	WhenDownDrop                   // it is dropped
+)
+
+// Framing is how packets are mapped into a circuit.
+type Framing uint8
+
+// Kinds of framing.
+const (
+	FramingGFP  Framing = iota // frames with mapping: 26 B more for each packet
+	FramingNone                // the bare packet
+)
+
+// Choose is how a route is chosen.
+type Choose uint8
+
+// Choices of route.
+const (
+	ChooseLeastDelay Choose = iota
+	ChooseFewestRouters
+	ChooseMostSpare
+	ChooseApart // apart from other circuits, then least delay
+)
+
+// Order is what a move does with the order of packets.
+type Order uint8
+
+// Orders.
+const (
+	OrderFree Order = iota // at once; packets may overtake
+	OrderKept              // packets are held until none can overtake
+)
+
+// FibreWays is which ways of a fibre pair an act is about.
+type FibreWays uint8
+
+// Ways of a fibre.
+const (
+	WaysBoth FibreWays = iota
+	WaysOut            // from A to B only
+	WaysBack           // from B to A only
+)
+
+// Verb is what an act does.
+type Verb uint8
+
+// Verbs.
+const (
+	VerbCut Verb = iota
+	VerbRepair
+	VerbSetUp
+	VerbTearDown
+	VerbResize
+	VerbMove
+	VerbReturn
+	VerbScale
+)
+
+var (
+	queueWords   = []string{"strict", "weight", "fifo"}
+	modelWords   = []string{"constant", "poisson", "voice", "video", "files"}
+	arrivalWords = []string{"none", "poisson", "regular"}
+	figureWords  = []string{
+		"delay-mean", "delay-p50", "delay-p95", "delay-p99", "delay-p99.9",
+		"pdv-p50", "pdv-p95", "pdv-p99", "pdv-p99.9", "ipdv-p99.9", "jitter", "loss", "out",
+	}
+	commandWords   = []string{"by-kind", "parallel", "sequence"}
+	sizeWords      = []string{"slots", "container", "channel"}
+	carriesWords   = []string{"routed", "moved"}
+	recoveryWords  = []string{"none", "1+1", "restore"}
+	whenDownWords  = []string{"return", "wait", "drop"}
+	framingWords   = []string{"gfp", "none"}
+	chooseWords    = []string{"least-delay", "fewest-routers", "most-spare", "apart-from"}
+	orderWords     = []string{"free", "kept"}
+	fibreWaysWords = []string{"both", "out", "back"}
+	verbWords      = []string{"cut", "repair", "set-up", "tear-down", "resize", "move", "return", "scale"}
+)
+
+// word returns the word of value i, which must be one of words.
+func word(words []string, i uint8) string {
+	if int(i) >= len(words) {
+		panic(fmt.Sprintf("scenarios: value %d is none of %q", i, words))
+	}
+	return words[i]
+}
+
+// String returns the word of the file.
+func (k QueueKind) String() string { return word(queueWords, uint8(k)) }
+
+// String returns the word of the file.
+func (m Model) String() string { return word(modelWords, uint8(m)) }
+
+// String returns the word of the file.
+func (a FlowArrival) String() string { return word(arrivalWords, uint8(a)) }
+
+// String returns the word of the file.
+func (f Figure) String() string { return word(figureWords, uint8(f)) }
+
+// String returns the word of the file.
+func (c CommandOrder) String() string { return word(commandWords, uint8(c)) }
+
+// String returns the word of the file.
+func (s CircuitSize) String() string { return word(sizeWords, uint8(s)) }
+
+// String returns the word of the file.
+func (c Carries) String() string { return word(carriesWords, uint8(c)) }
+
+// String returns the word of the file.
+func (r Recovery) String() string { return word(recoveryWords, uint8(r)) }
+
+// String returns the word of the file.
+func (w WhenDown) String() string { return word(whenDownWords, uint8(w)) }
+
+// String returns the word of the file.
+func (f Framing) String() string { return word(framingWords, uint8(f)) }
+
+// String returns the word of the file.
+func (c Choose) String() string { return word(chooseWords, uint8(c)) }
+
+// String returns the word of the file.
+func (o Order) String() string { return word(orderWords, uint8(o)) }
+
+// String returns the word of the file.
+func (w FibreWays) String() string { return word(fibreWaysWords, uint8(w)) }
+
+// String returns the word of the file.
+func (v Verb) String() string { return word(verbWords, uint8(v)) }

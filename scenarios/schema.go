@@ -1,0 +1,273 @@
+package scenarios
+
+import (
+	"ferrule/des"
+	"ferrule/des/random"
+	"ferrule/nodes"
+)
+
+// Pos is a place in a file. Line and Col count from 1; a Line of 0 means that
+// the place is the file as a whole, or that a default was applied.
+type Pos struct {
+	File      string
+	Line, Col int
+}
+
+// Scenario is one scenario file, resolved: defaults are applied, names are
+// turned into indices, quantities carry their types. It is plain data and is
+// never changed once loaded; many runs may read it at the same time.
+type Scenario struct {
+	Name  string
+	About string
+	File  string // as given to Load
+
+	Run        Run
+	Timing     Timing
+	Classes    []Class // index is nodes.ClassID; highest first
+	Traffic    []Traffic
+	Sites      []Site      // index is nodes.SiteID
+	Fibres     []Fibre     // index is nodes.FibreID
+	RiskGroups []RiskGroup // in order of first mention
+	Circuits   []Circuit   // index is nodes.CircuitID; what stands, then what the timeline sets up
+	Aggregates []Aggregate // index is nodes.AggID; those of the file, then those of its matrices
+	Requests   []Request
+	Controller Controller
+	Timeline   []Act  // under every plan, in order of the file
+	Plans      []Plan // Plans[0] is as-is; the others as written: see Scenario.Plan
+
+	// Defaults lists every default that was applied, as "key = value", in a
+	// fixed order, for the report.
+	Defaults []string
+
+	// Matrices lists the files of demand that were read, in order.
+	Matrices []string
+}
+
+// Run says how long a run is and with which seed.
+type Run struct {
+	Length     des.Time // after which nothing is sent
+	WarmUp     des.Time // not measured; less than Length; 0 if Auto
+	AutoWarmUp bool     // the end of the warm-up is found from the run itself
+	Seed       uint64
+}
+
+// Timing is how fast faults are seen and commands carried out.
+type Timing struct {
+	Detect         des.Time    // from dark to a defect declared
+	Command        random.Spec // picoseconds a node needs for one command
+	CommandsAtOnce int         // commands a node carries out at a time, at least 1
+	Commands       CommandOrder
+	WaitToRestore  des.Time // from repair to reversion
+	TrafficReady   des.Time // from the last command done to the circuit fit for traffic
+	Converge       des.Time // until the management way is known again after a cut
+	LossOfMessage  float64  // probability in [0, 1) that a control message is lost
+}
+
+// Class is a class of service.
+type Class struct {
+	Name        string
+	Pos         Pos
+	DSCP        uint8 // 0..63 (RFC 2474)
+	Queue       QueueKind
+	Weight      float64     // percent of what strict classes leave; 0 unless QueueWeight
+	BufferTime  des.Time    // buffer as time at the port's rate; 0 if BufferBytes is given
+	BufferBytes nodes.Bytes // buffer as data; 0 if BufferTime is given
+	Traffic     int         // index in Scenario.Traffic, or nodes.None
+	Objective   []Limit     // in the order of the Figure constants
+}
+
+// Limit is one objective of a class: a figure and what it must not exceed.
+type Limit struct {
+	Figure Figure
+	Time   des.Time // for every figure but FigureLoss
+	Ratio  float64  // for FigureLoss, in [0, 1]
+}
+
+// Traffic is a way of sending. What a model does not use is zero.
+type Traffic struct {
+	Name   string
+	Pos    Pos
+	Model  Model
+	Packet random.Spec // bytes of a packet at the IP layer
+	Rate   nodes.Rate  // of one flow, IP bits; 0 if the model or the codec says it
+	Codec  string      // voice
+
+	Frames          float64     // video: frames per second
+	GroupOfPictures int         // video: frames from one whole picture to the next
+	Size            random.Spec // files: bytes of a file
+	Pace            nodes.Rate  // files: the rate at which one file is sent
+
+	FlowsArrive FlowArrival
+	Hold        random.Spec // picoseconds a flow lasts; the zero Spec (constant 0) if it never ends
+	Start       des.Time
+	Stop        des.Time // des.Never if it goes on to the end
+}
+
+// Site is a router and a cross-connect at one place.
+type Site struct {
+	Name       string
+	Pos        Pos
+	Placed     bool         // whether X and Y were given
+	X, Y       nodes.Length // on a plane
+	Forwarding random.Spec  // picoseconds: constant, or lognormal with median and p99
+	Convert    bool         // whether wavelengths can be changed here
+}
+
+// Fibre is a pair of fibres between two sites.
+type Fibre struct {
+	Name        string
+	Pos         Pos
+	A, B        nodes.SiteID
+	Length      nodes.Length
+	Channels    int
+	ChannelRate nodes.Rate
+	Lit         int   // channels cut into slots, the lowest numbered ones
+	Slots       int   // slots of all lit channels together, per direction
+	RiskGroups  []int // indices in Scenario.RiskGroups, ascending
+}
+
+// RiskGroup names fibres that share a duct.
+type RiskGroup struct {
+	Name   string
+	Pos    Pos
+	Fibres []nodes.FibreID // ascending
+}
+
+// Circuit is a circuit that stands from the start or that an act sets up.
+type Circuit struct {
+	Name    string
+	Pos     Pos
+	InPlace bool // stands when the run starts; else an act sets it up
+	A, B    nodes.SiteID
+	Along   []nodes.FibreID // the route from A to B; nil if Choose finds it
+
+	Size      CircuitSize
+	Slots     int        // slots it takes on every fibre; 0 for a channel
+	Container string     // such as ODU2, if SizeContainer
+	Payload   nodes.Rate // what it carries at most
+	Rate      nodes.Rate // to which its ports are shaped; Payload if not given
+
+	Carries         Carries
+	Recovery        Recovery
+	Metric          int64 // at least 1; 0 means its light delay in microseconds
+	SetUpPriority   int   // 0 (highest) to 7; nodes.None: from the highest class it carries
+	HoldingPriority int   // likewise
+	HoldOff         des.Time
+	WhenDown        WhenDown
+	MTU             nodes.Bytes
+	Framing         Framing
+	Choose          Choose
+	ApartFrom       []nodes.CircuitID // if ChooseApart
+}
+
+// Aggregate is the traffic of one class between two sites: both ways, or only
+// from From to To.
+type Aggregate struct {
+	Name     string
+	Pos      Pos
+	From, To nodes.SiteID
+	BothWays bool // way Out runs From to To, way Back To to From
+	Class    nodes.ClassID
+	Traffic  int        // index in Scenario.Traffic
+	Load     nodes.Rate // each way, IP bits; 0 if Flows is given
+	Flows    int        // each way; 0 if Load is given
+	Start    des.Time
+	Stop     des.Time // des.Never if it goes on to the end
+}
+
+// Request is a stream of circuits that are asked for, held and given back.
+type Request struct {
+	Name            string
+	Pos             Pos
+	A, B            nodes.SiteID
+	Slots           int
+	PerSecond       float64     // Poisson arrivals
+	Hold            random.Spec // picoseconds
+	SetUpPriority   int         // 0..7
+	HoldingPriority int         // 0..7
+	Choose          Choose
+}
+
+// Controller is where the controller stands and how it works.
+type Controller struct {
+	Pos      Pos
+	At       nodes.SiteID
+	Compute  des.Time // for one decision, one at a time
+	Retry    des.Time // until a command without an answer is sent again
+	Poll     des.Time // between two readings of the ports
+	Attempts int      // at most, for one command or one set-up; at least 1
+}
+
+// Act is something done to the network or to the traffic. Which fields hold
+// depends on Verb; the others are zero.
+type Act struct {
+	Pos   Pos
+	Verb  Verb
+	At    des.Time // des.Never if After is used; 0 for what a plan has in place
+	After int      // index, in the same list, of the act that must be completed first, or nodes.None
+
+	Subject string // the name as written: a fibre, a risk group, a circuit, an aggregate or a pattern
+
+	// VerbCut, VerbRepair.
+	Fibres []nodes.FibreID
+	Where  nodes.Length // from end A of the fibre; the middle if not given; 0 if several fibres: use WhereOn
+	Ways   FibreWays
+
+	// VerbSetUp, VerbTearDown, VerbResize: the circuit, and for a resize its
+	// new size.
+	Circuit nodes.CircuitID
+	Slots   int
+	Payload nodes.Rate
+
+	// VerbMove, VerbReturn, VerbScale: the ways it is about, ascending, and
+	// for a move the chain of circuits.
+	Moved []MovedWay
+	Onto  []nodes.CircuitID
+	Order Order
+
+	Factor float64 // VerbScale: times the load of the file
+}
+
+// MovedWay is one way of one aggregate in a move, a return or a scaling.
+type MovedWay struct {
+	Way     uint16 // nodes.WayOf(aggregate, direction)
+	Reverse bool   // a move: it travels Onto from the last circuit to the first
+}
+
+// WhereOn is the place of a cut or repair on fibre f: Where, or the middle of
+// the fibre when the act is about several of them.
+func (a *Act) WhereOn(f *Fibre) nodes.Length {
+	if len(a.Fibres) > 1 {
+		return f.Length / 2
+	}
+	return a.Where
+}
+
+// Plan is a set of changes to the network. In Scenario.Plans it holds what was
+// written; Scenario.Plan returns it together with what it is built on.
+type Plan struct {
+	Name  string
+	Pos   Pos
+	About string
+	On    string // the plan it changes; empty for as-is
+
+	// Circuits are all circuits that exist at some time under the plan:
+	// Scenario.Circuits first, so that their ids stay, then those of the plans
+	// beneath, then its own. Ids in its acts index this slice. InPlace and the
+	// sizes are those at the start of the run, after what is in place.
+	Circuits []Circuit
+
+	InPlace []Act // done before the run starts: set-up, tear-down, resize, move, return
+	Steps   []Act // done by the controller during the run
+
+	// Moves is the outcome of InPlace: which ways are carried by which chain
+	// when the run starts, ascending by way.
+	Moves []Carriage
+}
+
+// Carriage says that a way is carried by a chain of circuits, in the order in
+// which its packets pass them.
+type Carriage struct {
+	Way   uint16
+	Chain []nodes.CircuitID
+}
