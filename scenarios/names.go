@@ -5,16 +5,6 @@ import "fmt"
 // The words that a scenario file uses, as types. Each has a String method that
 // gives the word of the file, and panics for a value that is none of them.
 
-// QueueKind is how a class is served.
-type QueueKind uint8
-
-// Kinds of queue.
-const (
-	QueueStrict QueueKind = iota // before every class below it
-	QueueWeight                  // a share of what strict classes leave
-	QueueFIFO                    // in order of arrival, one queue for all classes
-)
-
 // Model is what a traffic entry sends like.
 type Model uint8
 
@@ -77,35 +67,6 @@ const (
 	SizeChannel                      // a whole wavelength
 )
 
-// Carries is what a circuit carries.
-type Carries uint8
-
-// What a circuit carries.
-const (
-	CarriesRouted Carries = iota // a link of the packet layer
-	CarriesMoved                 // only what is moved onto it
-)
-
-// Recovery is what happens to a circuit when its route is cut.
-type Recovery uint8
-
-// Kinds of recovery.
-const (
-	RecoveryNone    Recovery = iota // it stays down until repaired
-	RecoveryOnePlus                 // 1+1: sent twice, apart, chosen at the end
-	RecoveryRestore                 // the controller finds another route
-)
-
-// WhenDown is what becomes of what was moved onto a circuit that is down.
-type WhenDown uint8
-
-// What becomes of it.
-const (
-	WhenDownReturn WhenDown = iota // it goes back to the routed network
-	WhenDownWait                   // it waits at the port
-	WhenDownDrop                   // it is dropped
-)
-
 // Framing is how packets are mapped into a circuit.
 type Framing uint8
 
@@ -113,17 +74,6 @@ type Framing uint8
 const (
 	FramingGFP  Framing = iota // frames with mapping: 26 B more for each packet
 	FramingNone                // the bare packet
-)
-
-// Choose is how a route is chosen.
-type Choose uint8
-
-// Choices of route.
-const (
-	ChooseLeastDelay Choose = iota
-	ChooseFewestRouters
-	ChooseMostSpare
-	ChooseApart // apart from other circuits, then least delay
 )
 
 // Order is what a move does with the order of packets.
@@ -189,9 +139,6 @@ func word(words []string, i uint8) string {
 }
 
 // String returns the word of the file.
-func (k QueueKind) String() string { return word(queueWords, uint8(k)) }
-
-// String returns the word of the file.
 func (m Model) String() string { return word(modelWords, uint8(m)) }
 
 // String returns the word of the file.
@@ -207,19 +154,7 @@ func (c CommandOrder) String() string { return word(commandWords, uint8(c)) }
 func (s CircuitSize) String() string { return word(sizeWords, uint8(s)) }
 
 // String returns the word of the file.
-func (c Carries) String() string { return word(carriesWords, uint8(c)) }
-
-// String returns the word of the file.
-func (r Recovery) String() string { return word(recoveryWords, uint8(r)) }
-
-// String returns the word of the file.
-func (w WhenDown) String() string { return word(whenDownWords, uint8(w)) }
-
-// String returns the word of the file.
 func (f Framing) String() string { return word(framingWords, uint8(f)) }
-
-// String returns the word of the file.
-func (c Choose) String() string { return word(chooseWords, uint8(c)) }
 
 // String returns the word of the file.
 func (o Order) String() string { return word(orderWords, uint8(o)) }

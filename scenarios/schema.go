@@ -68,8 +68,8 @@ type Class struct {
 	Name        string
 	Pos         Pos
 	DSCP        uint8 // 0..63 (RFC 2474)
-	Queue       QueueKind
-	Weight      float64     // percent of what strict classes leave; 0 unless QueueWeight
+	Queue       nodes.Queueing
+	Weight      int         // per cent of what strict classes leave; 0 unless nodes.QueueWeight
 	BufferTime  des.Time    // buffer as time at the port's rate; 0 if BufferBytes is given
 	BufferBytes nodes.Bytes // buffer as data; 0 if BufferTime is given
 	Traffic     int         // index in Scenario.Traffic, or nodes.None
@@ -147,17 +147,17 @@ type Circuit struct {
 	Payload   nodes.Rate // what it carries at most
 	Rate      nodes.Rate // to which its ports are shaped; Payload if not given
 
-	Carries         Carries
-	Recovery        Recovery
-	Metric          int64 // at least 1; 0 means its light delay in microseconds
+	Carries         nodes.Carriage
+	Recovery        nodes.Recovery
+	Metric          int64 // at least 1; 0 means the delay of its route in ps
 	SetUpPriority   int   // 0 (highest) to 7; nodes.None: from the highest class it carries
 	HoldingPriority int   // likewise
 	HoldOff         des.Time
-	WhenDown        WhenDown
+	WhenDown        nodes.WhenDown
 	MTU             nodes.Bytes
 	Framing         Framing
-	Choose          Choose
-	ApartFrom       []nodes.CircuitID // if ChooseApart
+	Choose          nodes.Choice
+	ApartFrom       []nodes.CircuitID // if nodes.ChooseApart
 }
 
 // Aggregate is the traffic of one class between two sites: both ways, or only
@@ -185,7 +185,7 @@ type Request struct {
 	Hold            random.Spec // picoseconds
 	SetUpPriority   int         // 0..7
 	HoldingPriority int         // 0..7
-	Choose          Choose
+	Choose          nodes.Choice
 }
 
 // Controller is where the controller stands and how it works.

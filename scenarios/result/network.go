@@ -1,0 +1,109 @@
+package result
+
+// A Circuit is how one circuit stood at the end of a run.
+type Circuit struct {
+	Name        string   `json:"name"`
+	Route       []string `json:"route"`             // sites in order, from its first end; empty when never set up
+	Fibres      []string `json:"fibres,omitempty"`  // in the order of Route
+	Carries     string   `json:"carries,omitempty"` // "routed" or "moved"
+	Recovery    string   `json:"recovery,omitempty"`
+	Slots       *int64   `json:"slots,omitempty"` // on each fibre; absent for a whole channel
+	PayloadBps  float64  `json:"payload_bps"`
+	State       string   `json:"state"`
+	Reason      string   `json:"reason,omitempty"`      // why it is in that state, such as "no free slot on holm-ness"
+	Utilisation *float64 `json:"utilisation,omitempty"` // share of PayloadBps, the busier direction
+	SetUpS      *float64 `json:"set_up_s,omitempty"`    // from the order to up; absent when in place from the start
+	DelayS      *float64 `json:"delay_s,omitempty"`     // light from end to end
+	Resizes     int64    `json:"resizes"`
+	DownS       float64  `json:"down_s"` // dark, in all, after the warm-up
+}
+
+// A Port is one output queue: one circuit, one direction.
+type Port struct {
+	Circuit        string   `json:"circuit"`
+	From           string   `json:"from"` // the site that sends
+	Utilisation    *float64 `json:"utilisation,omitempty"`
+	SentPackets    int64    `json:"sent_packets"`
+	LostPackets    Losses   `json:"lost_packets"`
+	MeanWaitS      *float64 `json:"mean_wait_s,omitempty"`
+	MeanQueueBytes *float64 `json:"mean_queue_bytes,omitempty"`
+	MaxQueueBytes  *int64   `json:"max_queue_bytes,omitempty"`
+}
+
+// A Fibre is how one fibre pair was used at the end of a run.
+type Fibre struct {
+	Name      string  `json:"name"`
+	LengthKm  float64 `json:"length_km"`
+	Slots     int64   `json:"slots"`      // lit, each direction
+	SlotsUsed int64   `json:"slots_used"` // the busier direction
+}
+
+// A Step is one act of the timeline or of the plan and what became of it.
+type Step struct {
+	Act      string   `json:"act"` // "cut", "set-up", "move", ...
+	Subject  string   `json:"subject"`
+	OrderedS *float64 `json:"ordered_s,omitempty"` // absent when it was never reached
+	DoneS    *float64 `json:"done_s,omitempty"`    // absent when it was not completed
+	State    string   `json:"state"`               // "done", "blocked", "waiting", ...
+	Detail   string   `json:"detail,omitempty"`
+}
+
+// An Event is one line of the log of a run.
+type Event struct {
+	AtS     float64 `json:"at_s"`
+	What    string  `json:"what"`
+	Subject string  `json:"subject"`
+	Detail  string  `json:"detail,omitempty"`
+}
+
+// Asked sets a value that the scenario asked for beside the one measured, as
+// for a forwarding latency's percentiles or an aggregate's load.
+type Asked struct {
+	Subject  string   `json:"subject"`
+	Figure   string   `json:"figure"`
+	Unit     string   `json:"unit"`
+	Asked    float64  `json:"asked"`
+	Measured *float64 `json:"measured,omitempty"`
+}
+
+// A SiteRate is a bit rate at a site.
+type SiteRate struct {
+	Site string  `json:"site"`
+	Bps  float64 `json:"bps"`
+}
+
+// A Price is what a plan holds of the network, at the end of the run.
+type Price struct {
+	Slots        int64      `json:"slots"`   // summed over circuits and fibres
+	SlotKm       float64    `json:"slot_km"` // slots times the length of their fibre
+	Ports        int64      `json:"ports"`   // router ports, both ends counted
+	TransitFreed []SiteRate `json:"transit_freed,omitempty"`
+	Tightest     *Tightest  `json:"tightest,omitempty"`
+}
+
+// Tightest names the fibre with the fewest free slots.
+type Tightest struct {
+	Fibre     string `json:"fibre"`
+	FreeSlots int64  `json:"free_slots"`
+}
+
+// An Audit is the account of every packet and every slot of a run:
+// offered + copies = delivered + discarded copies + duplicates + lost +
+// inside. OK is false when any identity fails; Failures then says which.
+type Audit struct {
+	OfferedPackets         int64    `json:"offered_packets"`
+	CopyPackets            int64    `json:"copy_packets"`      // made by 1+1 circuits
+	DeliveredPackets       int64    `json:"delivered_packets"` // first arrivals, duplicates not counted
+	DuplicatePackets       int64    `json:"duplicate_packets"`
+	DiscardedCopiesPackets int64    `json:"discarded_copies_packets"`
+	LostPackets            Losses   `json:"lost_packets"`
+	InsidePackets          int64    `json:"inside_packets"`
+	SlotsOwned             int64    `json:"slots_owned"` // by circuits, each direction of each fibre
+	SlotsUsed              int64    `json:"slots_used"`  // marked so by the fibres
+	LittlePorts            int64    `json:"little_ports"`
+	OK                     bool     `json:"ok"`
+	Failures               []string `json:"failures"`
+}
+
+// Lost sums the losses of all causes.
+func (a Audit) Lost() int64 { return a.LostPackets.Total() }
