@@ -31,7 +31,8 @@ func HeadOf(r Result) Head {
 
 // Encode writes r as indented JSON that ends in a newline. Equal results give
 // equal bytes; an empty list is written as [], never null. It fails, and names
-// the place, when any number is NaN or infinite.
+// the place, when any number is NaN or infinite. It sets Format and Kind in r,
+// makes nil lists empty and negative zeros zero, and changes nothing else.
 func Encode(r Result) ([]byte, error) {
 	h := r.head()
 	h.Format, h.Kind = Format, r.kind()
@@ -39,7 +40,7 @@ func Encode(r Result) ([]byte, error) {
 	if at := notFinite(v, ""); at != "" {
 		return nil, fmt.Errorf("result: %s is not a finite number", at)
 	}
-	fillLists(v)
+	normalise(v)
 	b, err := json.MarshalIndent(r, "", "  ")
 	if err != nil {
 		return nil, fmt.Errorf("result: %w", err)
@@ -132,16 +133,21 @@ func join(path string, f reflect.StructField) string {
 	return path + "." + key
 }
 
-// fillLists makes every nil list under v that is always written an empty one.
-func fillLists(v reflect.Value) {
+// normalise makes every nil list under v that is always written an empty one,
+// and every negative zero a zero.
+func normalise(v reflect.Value) {
 	switch v.Kind() {
+	case reflect.Float64:
+		if v.Float() == 0 {
+			v.SetFloat(0)
+		}
 	case reflect.Pointer:
 		if !v.IsNil() {
-			fillLists(v.Elem())
+			normalise(v.Elem())
 		}
 	case reflect.Slice:
 		for i := range v.Len() {
-			fillLists(v.Index(i))
+			normalise(v.Index(i))
 		}
 	case reflect.Struct:
 		for i := range v.NumField() {
@@ -150,7 +156,7 @@ func fillLists(v reflect.Value) {
 			if f.Kind() == reflect.Slice && f.IsNil() && !omitted {
 				f.Set(reflect.MakeSlice(f.Type(), 0, 0))
 			}
-			fillLists(f)
+			normalise(f)
 		}
 	}
 }
