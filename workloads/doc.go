@@ -1,0 +1,18 @@
+// Package workloads holds what sends: the packets of one way of one traffic
+// aggregate, and the circuits that clients ask for.
+//
+// Each model has a plain configuration (StreamConfig, VoiceConfig,
+// VideoConfig, FilesConfig, RequestsConfig) whose Check fills the defaults and
+// reports every fault, and a source that [New] or the model's own constructor
+// makes of it. A source follows the contract of nodes.Source. All sources are
+// open loop: what they send does not depend on what the network does with it,
+// so as-is and plan meet the same packets, born at the same instants.
+//
+// Every draw belongs to the source's name and the seed. Streams draw the gap
+// and the size of packet i, or the arrival and the length of flow i, in the
+// order of i, so a change of load moves the instants and keeps the draws: at
+// 130 % the packets are the same ones, closer together.
+//
+// A packet is born where it stands whole at the ingress router. Rates and
+// loads count IP bytes, headers included.
+package workloads

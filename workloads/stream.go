@@ -1,0 +1,155 @@
+package workloads
+
+import (
+	"errors"
+	"fmt"
+
+	"ferrule/des"
+	"ferrule/des/random"
+	"ferrule/nodes"
+)
+
+// StreamConfig describes a packet stream: one flow of packets whose gaps and
+// sizes are independent. A zero field takes the default written beside it.
+type StreamConfig struct {
+	Common
+	Gaps Gaps        // default Poisson
+	Size random.Spec // IP bytes of a packet; default constant 1000
+}
+
+// Check fills the defaults and reports every fault at once. A size is rounded
+// to the nearest whole byte and kept within 1 and 65535; the mean gap is the
+// mean of the size so rounded over the load.
+func (c StreamConfig) Check() (StreamConfig, error) {
+	faults := c.Common.check(nil)
+	if c.Gaps > Constant {
+		faults = append(faults, fmt.Errorf("gaps: no kind %d", c.Gaps))
+	}
+	if c.Size.Kind == random.Constant && c.Size.Mean == 0 {
+		c.Size.Mean = 1000
+	}
+	if _, err := newSizes(c.Size); err != nil {
+		faults = append(faults, fmt.Errorf("size: %w", err))
+	}
+	return c, errors.Join(faults...)
+}
+
+// A Stream sends packets with independent gaps and sizes. All belong to flow 0.
+type Stream struct {
+	gaps  clock
+	sizes sizes
+	draws random.Stream // of sizes and nothing else
+	ahead changes
+	stop  des.Time
+	mean  float64 // bit/s
+	seq   uint32
+	way   uint16
+}
+
+// NewStream returns a packet stream, or the faults of c.
+func NewStream(c StreamConfig) (*Stream, error) {
+	c, err := c.Check()
+	if err != nil {
+		return nil, err
+	}
+	sizes, err := newSizes(c.Size)
+	if err != nil {
+		return nil, err
+	}
+	s := &Stream{
+		gaps: clock{
+			kind:  c.Gaps,
+			mean:  sizes.mean * 8 / float64(c.Load) * float64(des.Second),
+			draws: random.NewStream(c.Seed, c.Name+"/gap"),
+		},
+		sizes: sizes,
+		draws: random.NewStream(c.Seed, c.Name+"/size"),
+		stop:  c.Stop,
+		mean:  float64(c.Load),
+		way:   c.Way,
+	}
+	if sizes.kind == fixedSize {
+		s.gaps.unit, s.gaps.rate = uint64(sizes.fixed)*8, c.Load
+	}
+	s.gaps.start(c.Start, 1)
+	return s, nil
+}
+
+// MeanRate implements [Source]. It is the load asked for.
+func (s *Stream) MeanRate() float64 { return s.mean }
+
+// Next implements nodes.Source.
+func (s *Stream) Next() des.Time {
+	if s.gaps.next >= s.stop {
+		return des.Never
+	}
+	return s.gaps.next
+}
+
+// Emit implements nodes.Source.
+func (s *Stream) Emit(end des.Time, buf []nodes.Packet) []nodes.Packet {
+	end = min(end, s.stop)
+	for s.gaps.next < end {
+		limit := min(end, s.ahead.until())
+		if s.gaps.kind == Poisson && s.sizes.kind != lawSize {
+			buf = s.bulk(limit, buf)
+		} else {
+			buf = s.any(limit, buf)
+		}
+		s.settle()
+	}
+	return buf
+}
+
+// bulk appends the packets born before limit of a Poisson stream whose sizes
+// need no law. The state of the generators stays on the stack.
+func (s *Stream) bulk(limit des.Time, buf []nodes.Packet) []nodes.Packet {
+	next, seq, gap, way := s.gaps.next, s.seq, s.gaps.gap, s.way
+	gaps, draws, sizes := s.gaps.draws, s.draws, s.sizes
+	for next < limit {
+		buf = append(buf, packet(next, seq, 0, way, sizes.draw(&draws)))
+		seq++
+		e := gaps.Exp()
+		x := float64(e*gap) + 0.5
+		if x >= longest {
+			s.gaps.since, s.gaps.rest = next, e*s.gaps.mean
+			next = des.Never
+			break
+		}
+		next = next.Plus(des.Time(x))
+	}
+	s.gaps.next, s.seq = next, seq
+	s.gaps.draws, s.draws = gaps, draws
+	return buf
+}
+
+// any appends the packets born before limit of any stream.
+func (s *Stream) any(limit des.Time, buf []nodes.Packet) []nodes.Packet {
+	for s.gaps.next < limit {
+		buf = append(buf, packet(s.gaps.next, s.seq, 0, s.way, s.sizes.drawLaw(&s.draws)))
+		s.seq++
+		s.gaps.advance()
+	}
+	return buf
+}
+
+// settle makes the changes of load that lie before the next packet.
+func (s *Stream) settle() {
+	for len(s.ahead.ahead) > 0 && s.ahead.until() <= s.gaps.next {
+		x := s.ahead.take()
+		s.gaps.retime(x.at, x.factor)
+	}
+}
+
+// Scale implements nodes.Source. It changes the rate of packets.
+func (s *Stream) Scale(at des.Time, factor float64) {
+	s.ahead.add(at, factor)
+	s.settle()
+}
+
+// Clone implements nodes.Source.
+func (s *Stream) Clone() nodes.Source {
+	c := *s
+	c.ahead = s.ahead.clone()
+	return &c
+}
