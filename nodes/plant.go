@@ -124,11 +124,12 @@ const (
 
 // Class is a class of traffic. Classes stand highest first.
 type Class struct {
-	Name        string
-	Queue       Queueing
-	Weight      int      // per cent, for QueueWeight
-	BufferTime  des.Time // buffer given as time at the port's rate, or 0
-	BufferBytes Bytes    // buffer given in bytes, or 0
+	Name          string
+	Queue         Queueing
+	Weight        int      // per cent, for QueueWeight
+	BufferTime    des.Time // buffer given as time at the port's rate, or 0
+	BufferBytes   Bytes    // buffer given in bytes, or 0
+	BufferPackets int      // buffer given as a number of waiting packets, or 0
 }
 
 // Aggregate is traffic of one class between two sites.
