@@ -33,8 +33,8 @@ const HistLimit = 1<<valueBits - 1
 // copied by assignment once it has been used: see [Hist.Clone].
 type Hist struct {
 	n       uint64
-	max     uint64
-	inv     uint64 // complement of the minimum, so that the zero value is right
+	min     uint64 // 0 when there is no value
+	span    uint64 // maximum less minimum: one comparison finds a new extreme
 	clipped uint64
 	counts  []uint32          // pages, in the order of their making
 	carries []carry           // what counters have passed on, by bucket
@@ -62,25 +62,40 @@ func boundsOf(i uint32) (low, high uint64) {
 
 // Add counts v. It allocates only when v falls on a page not yet made.
 func (h *Hist) Add(v uint64) {
+	if v-h.min > h.span {
+		h.widen(v)
+	}
 	h.n++
-	h.max = max(h.max, v)
-	h.inv = max(h.inv, ^v)
 	i := bucketOf(v)
 	if d := i >> pageBits; d < directory {
 		// Without a page the subtraction wraps, and the index is out of range.
 		if j := uint32(h.dir[d])<<pageBits - page + i%page; uint64(j) < uint64(len(h.counts)) {
-			c := h.counts[j] + 1
-			h.counts[j] = c
-			if c == 0 {
-				h.carry(i, 1)
+			if c := h.counts[j] + 1; c != 0 {
+				h.counts[j] = c
+				return
 			}
-			return
 		}
 	}
 	h.addSlow(i)
 }
 
-// addSlow counts one in bucket i, which may be past the last or on no page.
+// widen makes v an extreme. h.n does not count v yet.
+//
+//go:noinline
+func (h *Hist) widen(v uint64) {
+	if h.n == 0 {
+		h.min = v
+		return
+	}
+	greatest := max(h.min+h.span, v)
+	h.min = min(h.min, v)
+	h.span = greatest - h.min
+}
+
+// addSlow counts one in bucket i, which may be past the last, on no page, or
+// about to pass 2^32-1.
+//
+//go:noinline
 func (h *Hist) addSlow(i uint32) {
 	if i >= buckets {
 		i = buckets - 1
@@ -159,10 +174,11 @@ func (h *Hist) Merge(o *Hist) {
 			}
 		}
 	}
+	greatest := o.min + o.span
+	h.widen(o.min)
 	h.n += o.n
+	h.widen(greatest)
 	h.clipped += o.clipped
-	h.max = max(h.max, o.max)
-	h.inv = max(h.inv, o.inv)
 }
 
 // Clone returns a histogram that shares nothing with h.
@@ -180,10 +196,10 @@ func (h *Hist) Count() uint64 { return h.n }
 func (h *Hist) Clipped() uint64 { return h.clipped }
 
 // Min returns the least value added, exactly; ok is false when there is none.
-func (h *Hist) Min() (v uint64, ok bool) { return ^h.inv, h.n > 0 }
+func (h *Hist) Min() (v uint64, ok bool) { return h.min, h.n > 0 }
 
 // Max returns the greatest value added, exactly; ok is false when there is none.
-func (h *Hist) Max() (v uint64, ok bool) { return h.max, h.n > 0 }
+func (h *Hist) Max() (v uint64, ok bool) { return h.min + h.span, h.n > 0 }
 
 // Bytes returns the memory that h holds, in bytes, itself included.
 func (h *Hist) Bytes() int {
@@ -249,9 +265,9 @@ func (h *Hist) Ranked(rank uint64) (v float64, ok bool) {
 	case rank == 0 || rank > h.n:
 		return 0, false
 	case rank == 1:
-		return float64(^h.inv), true
+		return float64(h.min), true
 	case rank == h.n:
-		return float64(h.max), true
+		return float64(h.min+h.span), true
 	}
 	var below uint64
 	for d := range uint32(directory) {
@@ -262,7 +278,7 @@ func (h *Hist) Ranked(rank uint64) (v float64, ok bool) {
 			if below += h.at(i); below >= rank {
 				low, high := boundsOf(i)
 				mid := float64(low) + float64(0.5*float64(high-low))
-				return min(max(mid, float64(^h.inv)), float64(h.max)), true
+				return min(max(mid, float64(h.min)), float64(h.min+h.span)), true
 			}
 		}
 	}
@@ -289,7 +305,7 @@ func (h *Hist) MedianWithLost(lost uint64) (v float64, ok bool) {
 // exact for v below 256, for v at the end of a bucket, and for v outside
 // [Min, Max); elsewhere it leaves out the bucket that v cuts.
 func (h *Hist) AtMost(v uint64) uint64 {
-	if v >= h.max {
+	if v >= h.min+h.span {
 		return h.n
 	}
 	var below uint64

@@ -36,7 +36,7 @@ func bars(h *Hist) (b []bar) {
 }
 
 func same(a, b *Hist) bool {
-	return a.n == b.n && a.max == b.max && a.inv == b.inv && a.clipped == b.clipped && slices.Equal(bars(a), bars(b))
+	return a.n == b.n && a.min == b.min && a.span == b.span && a.clipped == b.clipped && slices.Equal(bars(a), bars(b))
 }
 
 func TestBucketsTile(t *testing.T) {
@@ -349,6 +349,13 @@ func BenchmarkHistAdd(b *testing.B) {
 	var h Hist
 	for i := 0; b.Loop(); i++ {
 		h.Add(values[i%4096])
+	}
+}
+
+func BenchmarkHistAddOneOctave(b *testing.B) {
+	var h Hist
+	for i := uint64(0); b.Loop(); i++ {
+		h.Add(1<<17 | i*2654435761&0x1ffff)
 	}
 }
 
