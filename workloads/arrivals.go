@@ -147,19 +147,25 @@ func (c *clock) advance() {
 			c.next = c.next.Plus(des.Time(x))
 			return
 		}
-		c.rest = e * c.mean
+		c.since, c.next, c.rest = c.next, des.Never, e*c.mean
 	case Constant:
-		if c.equal.of != 0 {
-			c.next = c.next.Plus(c.equal.whole)
-			if c.over += c.equal.part; c.over >= c.equal.of {
-				c.over -= c.equal.of
-				c.next = c.next.Plus(1)
-			}
-			return
-		}
-		c.rest = c.mean
+		c.step()
 	default:
 		panic(fmt.Sprintf("workloads: gaps %d", c.kind))
 	}
-	c.since, c.next = c.next, des.Never
+}
+
+// step is advance for equal gaps.
+func (c *clock) step() {
+	if c.equal.of == 0 {
+		c.since, c.next, c.rest = c.next, des.Never, c.mean
+		return
+	}
+	c.over += c.equal.part
+	whole := c.equal.whole
+	if c.over >= c.equal.of {
+		c.over -= c.equal.of
+		whole++
+	}
+	c.next = c.next.Plus(whole)
 }

@@ -107,7 +107,24 @@ func (c *changes) clone() changes {
 	return changes{append([]change(nil), c.ahead...), c.last}
 }
 
-// packet is a packet as it is born.
-func packet(at des.Time, seq, flow uint32, way, size uint16) nodes.Packet {
-	return nodes.Packet{Due: at, Born: at, Seq: seq, Flow: uint16(flow), Way: way, Size: size, TTL: nodes.InitialTTL}
+// birth writes a packet as it is born. It stores field by field: a composite
+// literal is put together on the stack and copied, which stalls on the copy.
+func birth(p *nodes.Packet, at des.Time, seq, flow uint32, way, size uint16) {
+	p.Due = at
+	p.Born = at
+	p.Word = 0
+	p.Seq = seq
+	p.Flow = uint16(flow)
+	p.Way = way
+	p.Size = size
+	p.TTL = nodes.InitialTTL
+	p.Bits = 0
+}
+
+// longer returns buf with one more packet, whose fields are undefined.
+func longer(buf []nodes.Packet) []nodes.Packet {
+	if n := len(buf); n < cap(buf) {
+		return buf[:n+1]
+	}
+	return append(buf, nodes.Packet{})
 }

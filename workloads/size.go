@@ -6,6 +6,7 @@ import (
 	"math"
 
 	"ferrule/des/random"
+	"ferrule/nodes"
 )
 
 // sizeKind says how the size of a packet is drawn.
@@ -93,24 +94,30 @@ func roundedMean(law random.Law) float64 {
 	return sum
 }
 
-// draw returns the next size of a kind other than lawSize.
-func (s *sizes) draw(r *random.Stream) uint16 {
+// fill draws the sizes of ps in order.
+func (s *sizes) fill(ps []nodes.Packet, r *random.Stream) {
+	draws := *r
 	switch s.kind {
 	case fixedSize:
-		return s.fixed
+		for i := range ps {
+			ps[i].Size = s.fixed
+		}
 	case exponentialSize:
-		return toSize(r.Exp() * s.scale)
+		for i := range ps {
+			ps[i].Size = toSize(draws.Exp() * s.scale)
+		}
 	case mixedSize:
-		return s.mix.Pick(r.Uint64())
+		mix := s.mix
+		for i := range ps {
+			ps[i].Size = mix.Pick(draws.Uint64())
+		}
+	case lawSize:
+		for i := range ps {
+			ps[i].Size = toSize(s.law.Draw(r))
+		}
+		return
 	default:
-		panic(fmt.Sprintf("workloads: sizes %d in bulk", s.kind))
+		panic(fmt.Sprintf("workloads: sizes %d", s.kind))
 	}
-}
-
-// drawLaw returns the next size of any kind.
-func (s *sizes) drawLaw(r *random.Stream) uint16 {
-	if s.kind == lawSize {
-		return toSize(s.law.Draw(r))
-	}
-	return s.draw(r)
+	*r = draws
 }

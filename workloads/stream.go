@@ -90,26 +90,29 @@ func (s *Stream) Next() des.Time {
 func (s *Stream) Emit(end des.Time, buf []nodes.Packet) []nodes.Packet {
 	end = min(end, s.stop)
 	for s.gaps.next < end {
+		first := len(buf)
 		limit := min(end, s.ahead.until())
-		if s.gaps.kind == Poisson && s.sizes.kind != lawSize {
-			buf = s.bulk(limit, buf)
+		if s.gaps.kind == Poisson {
+			buf = s.poisson(limit, buf)
 		} else {
-			buf = s.any(limit, buf)
+			buf = s.equal(limit, buf)
 		}
+		s.sizes.fill(buf[first:], &s.draws)
 		s.settle()
 	}
 	return buf
 }
 
-// bulk appends the packets born before limit of a Poisson stream whose sizes
-// need no law. The state of the generators stays on the stack.
-func (s *Stream) bulk(limit des.Time, buf []nodes.Packet) []nodes.Packet {
+// poisson appends the packets born before limit, their sizes still to come.
+// What changes from packet to packet is kept in local variables.
+func (s *Stream) poisson(limit des.Time, buf []nodes.Packet) []nodes.Packet {
 	next, seq, gap, way := s.gaps.next, s.seq, s.gaps.gap, s.way
-	gaps, draws, sizes := s.gaps.draws, s.draws, s.sizes
+	draws := s.gaps.draws
 	for next < limit {
-		buf = append(buf, packet(next, seq, 0, way, sizes.draw(&draws)))
+		buf = longer(buf)
+		birth(&buf[len(buf)-1], next, seq, 0, way, 0)
 		seq++
-		e := gaps.Exp()
+		e := draws.Exp()
 		x := float64(e*gap) + 0.5
 		if x >= longest {
 			s.gaps.since, s.gaps.rest = next, e*s.gaps.mean
@@ -118,18 +121,20 @@ func (s *Stream) bulk(limit des.Time, buf []nodes.Packet) []nodes.Packet {
 		}
 		next = next.Plus(des.Time(x))
 	}
-	s.gaps.next, s.seq = next, seq
-	s.gaps.draws, s.draws = gaps, draws
+	s.gaps.next, s.gaps.draws, s.seq = next, draws, seq
 	return buf
 }
 
-// any appends the packets born before limit of any stream.
-func (s *Stream) any(limit des.Time, buf []nodes.Packet) []nodes.Packet {
-	for s.gaps.next < limit {
-		buf = append(buf, packet(s.gaps.next, s.seq, 0, s.way, s.sizes.drawLaw(&s.draws)))
-		s.seq++
-		s.gaps.advance()
+// equal does for equal gaps what poisson does for exponential ones.
+func (s *Stream) equal(limit des.Time, buf []nodes.Packet) []nodes.Packet {
+	c, seq, way := s.gaps, s.seq, s.way
+	for c.next < limit {
+		buf = longer(buf)
+		birth(&buf[len(buf)-1], c.next, seq, 0, way, 0)
+		seq++
+		c.step()
 	}
+	s.gaps, s.seq = c, seq
 	return buf
 }
 
