@@ -178,3 +178,13 @@ type Distribution struct {
 	P999 *float64 `json:"p999,omitempty"`
 	Max  *float64 `json:"max,omitempty"`
 }
+
+// StandingCautions are true of every result, whatever was run. Reports print
+// them at their end; a study adds its own in Cautions.
+func StandingCautions() []string {
+	return []string{
+		"A model's figure is no acceptance test: measure the real service before relying on it.",
+		"Aggregates that carry emergency calls follow local rules and licensed practice, whatever the figures say.",
+		"Work on fibre follows laser-safety practice.",
+	}
+}
