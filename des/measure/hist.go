@@ -267,7 +267,7 @@ func (h *Hist) Ranked(rank uint64) (v float64, ok bool) {
 	case rank == 1:
 		return float64(h.min), true
 	case rank == h.n:
-		return float64(h.min+h.span), true
+		return float64(h.min + h.span), true
 	}
 	var below uint64
 	for d := range uint32(directory) {
