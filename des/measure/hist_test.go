@@ -102,6 +102,17 @@ func TestQuantileWorked(t *testing.T) {
 	}
 }
 
+// The distribution of RFC 2330, section 11.3, shifted by 8 to be non-negative:
+// F(-8) 0, F(-5) 1/6, F(-4.999) 1/6, F(7) 5/6, F(18) 1, F(239) 1.
+func TestDistributionWorked(t *testing.T) {
+	h := histOf(6, 15, 15, 12, 26, 3)
+	for v, want := range map[uint64]uint64{0: 0, 2: 0, 3: 1, 4: 1, 15: 5, 26: 6, 247: 6} {
+		if got := h.AtMost(v); got != want {
+			t.Errorf("%d values at most %d, want %d", got, v, want)
+		}
+	}
+}
+
 func TestQuantileUndefined(t *testing.T) {
 	var empty Hist
 	if _, ok := empty.Quantile(1, 2); ok {
