@@ -14,6 +14,7 @@ const (
 	OpFibreDark    // the receive side of an adjacent fibre went dark: Fibre
 	OpFibreLit     // light came back on it: Fibre
 	OpOrder        // an order from outside: Ref
+	OpRelease      // a hold at the ingress ends; no agent sees it
 	OpFirstAgent
 )
 

@@ -1,0 +1,230 @@
+package packet
+
+import (
+	"fmt"
+
+	"ferrule/des"
+	"ferrule/nodes"
+)
+
+// Totals are the books of a run: offered = delivered + lost by cause + inside.
+type Totals struct {
+	Offered   uint64
+	Delivered uint64
+	Lost      [Causes]uint64
+	Inside    uint64
+	Hops      uint64 // packets put on a line
+	Messages  MessageCount
+	Ports     int // ports whose queues were checked against Little's law
+}
+
+// Inside calls f for every packet still under way or waiting.
+func (n *Network) Inside(f func(p *nodes.Packet)) {
+	for _, s := range n.sites {
+		for i := range s.inputs {
+			p := s.inputs[i].pipe
+			for j := p.head; j != p.tail; j++ {
+				f(&p.buf[j&uint64(len(p.buf)-1)])
+			}
+		}
+		for i := range s.ports {
+			s.ports[i].disc.Clone().Drain(f)
+		}
+		for i := range s.held {
+			for j := range s.held[i].buf {
+				f(&s.held[i].buf[j])
+			}
+		}
+	}
+}
+
+// Audit closes the books: every packet of every way is accounted for once, and
+// at every queue the area under the number waiting equals the time waited. It
+// reports what does not hold, one line each.
+func (n *Network) Audit() (t Totals, failures []string) {
+	ways := len(n.meters)
+	offered, fates := make([]uint64, ways), make([]uint64, ways)
+	for _, s := range n.sites {
+		for i := range s.sources {
+			offered[s.sources[i].way] += s.sources[i].packets
+			t.Offered += s.sources[i].packets
+		}
+		for i := range s.losses {
+			l := &s.losses[i]
+			for _, k := range l.Count {
+				for c, v := range k {
+					t.Lost[c] += v
+					fates[l.Way] += v
+				}
+			}
+		}
+		t.Messages.Sent += s.messages.Sent
+		t.Messages.Arrived += s.messages.Arrived
+		t.Messages.Lost += s.messages.Lost
+	}
+	for w := range n.meters {
+		for _, c := range n.meters[w].Cells {
+			if c != nil {
+				t.Delivered += c.Exact.N
+				fates[w] += c.Exact.N
+				if c.Exact.N != c.Delay.Count() {
+					failures = append(failures, fmt.Sprintf("way %d: %d delays in the histogram of %d packets", w, c.Delay.Count(), c.Exact.N))
+				}
+			}
+		}
+	}
+	n.Inside(func(p *nodes.Packet) {
+		t.Inside++
+		fates[p.Way]++
+	})
+	for w := range offered {
+		if offered[w] != fates[w] {
+			a, d := nodes.AggOf(uint16(w))
+			failures = append(failures, fmt.Sprintf("aggregate %s direction %d: offered %d packets, accounted for %d", n.plant.Aggregates[a].Name, d, offered[w], fates[w]))
+		}
+	}
+	var seen uint64
+	for _, s := range n.sites {
+		seen += s.delivered
+	}
+	if seen != t.Delivered {
+		failures = append(failures, fmt.Sprintf("%d packets left the network, %d were metered", seen, t.Delivered))
+	}
+	failures = append(failures, n.auditQueues(&t)...)
+	return t, failures
+}
+
+// auditQueues holds every queue to Little's law in integers.
+func (n *Network) auditQueues(t *Totals) (failures []string) {
+	for _, s := range n.sites {
+		for i := range s.ports {
+			q := &s.ports[i]
+			t.Ports++
+			t.Hops += q.count.sent
+			now := max(n.now, q.changed)
+			c := q.counters(now)
+			waited, count := c.waits, 0
+			q.disc.Clone().Drain(func(p *nodes.Packet) {
+				waited.Add(uint64(now - p.Due))
+				count++
+			})
+			name := n.plant.Circuits[q.circuit].Name + " at " + n.plant.Sites[s.id].Name
+			if waited != c.area {
+				failures = append(failures, fmt.Sprintf("port %s: area under its queue %.6g ps, time waited in it %.6g ps", name, c.area.Float(), waited.Float()))
+			}
+			if count != q.waiting || q.disc.Len() != q.waiting {
+				failures = append(failures, fmt.Sprintf("port %s: counts %d waiting, holds %d", name, q.waiting, count))
+			}
+		}
+	}
+	return failures
+}
+
+// PortReport is what a port did from the end of the warm-up until the horizon.
+type PortReport struct {
+	Circuit     nodes.CircuitID
+	From        nodes.SiteID
+	Rate        nodes.Rate
+	Sent, Lost  uint64
+	LineBytes   uint64
+	IPBytes     uint64
+	Delayed     uint64
+	Arrived     uint64
+	MeanWait    float64 // ps, over packets sent or flushed
+	MeanQueue   float64 // packets waiting, time average
+	MaxBytes    nodes.Bytes
+	Utilisation float64 // share of the time its line was busy
+	Service     float64 // ps: mean line time
+	ServiceCoV2 float64 // squared coefficient of variation of line times
+}
+
+// PortReports lists the ports that sent or lost anything, by site and circuit.
+func (n *Network) PortReports() []PortReport {
+	var out []PortReport
+	from := n.cfg.WarmUp
+	if !n.mark {
+		from = 0
+	}
+	until := min(n.now, n.cfg.Length+n.cfg.Grace)
+	for _, s := range n.sites {
+		for i := range s.ports {
+			q := &s.ports[i]
+			c, m := q.counters(max(until, q.changed)), q.mark
+			r := PortReport{
+				Circuit: q.circuit, From: s.id, Rate: q.line.Rate(), Sent: c.sent - m.sent, Lost: c.lost - m.lost,
+				LineBytes: c.lineBytes - m.lineBytes, IPBytes: c.ipBytes - m.ipBytes, Delayed: c.delayed - m.delayed,
+				Arrived: c.packetsIn - m.packetsIn, MaxBytes: c.maxBytes,
+			}
+			if r.Sent == 0 && r.Lost == 0 {
+				continue
+			}
+			c.area.Sub(m.area)
+			c.waits.Sub(m.waits)
+			c.service.Sub(m.service)
+			span := float64(max(until-from, 1))
+			r.MeanQueue = c.area.Float() / span
+			if r.Sent > 0 {
+				sent := float64(r.Sent)
+				r.MeanWait = c.waits.Float() / sent
+				r.Service = c.service.Float() / sent
+				if mean2 := float64(r.Service * r.Service); mean2 > 0 {
+					r.ServiceCoV2 = max(0, (c.service2-m.service2)/sent/mean2-1)
+				}
+			}
+			r.Utilisation = c.service.Float() / float64(max(min(until, n.cfg.Length)-from, 1))
+			out = append(out, r)
+		}
+	}
+	return out
+}
+
+// Offered is what a way's source sent.
+type Offered struct {
+	Packets, Bytes uint64 // since the end of the warm-up
+	All            uint64 // packets since the start
+}
+
+// Offered reports what each way's source sent; ways without one have zeros.
+func (n *Network) Offered() []Offered {
+	out := make([]Offered, len(n.meters))
+	for _, s := range n.sites {
+		for i := range s.sources {
+			x := &s.sources[i]
+			out[x.way] = Offered{Packets: x.packets - x.markP, Bytes: x.bytes - x.markB, All: x.packets}
+		}
+	}
+	return out
+}
+
+// Meters gives read access to the meters by way.
+func (n *Network) Meters() []Meter { return n.meters }
+
+// Losses calls f for every site's count of every way, by site and first loss.
+func (n *Network) Losses(f func(site nodes.SiteID, l *Loss)) {
+	for _, s := range n.sites {
+		for i := range s.losses {
+			f(s.id, &s.losses[i])
+		}
+	}
+}
+
+// Stretches lists the stretches begun so far; the last ends at Now.
+func (n *Network) Stretches() []Stretch { return n.history.s }
+
+// KindOf reports the kind of stretch to which a packet counts that was sent at
+// born and met its fate at fate.
+func (n *Network) KindOf(born, fate des.Time) Kind { return n.history.find(born, fate).Kind }
+
+// Now is the instant up to which everything has been done.
+func (n *Network) Now() des.Time { return n.now }
+
+// Events merges the event logs of the sites and of the acts, by time, then
+// acts first, then by site.
+func (n *Network) Events() []nodes.Event {
+	all := append([]nodes.Event(nil), n.log...)
+	for _, s := range n.sites {
+		all = append(all, s.events...)
+	}
+	sortEvents(all)
+	return all
+}

@@ -1,0 +1,170 @@
+package packet
+
+import (
+	"ferrule/des"
+	"ferrule/des/measure"
+	"ferrule/nodes"
+)
+
+// Cause says why a packet was lost. Every loss has exactly one.
+type Cause uint8
+
+// Causes of loss.
+const (
+	LostQueue    Cause = iota // no room in a buffer
+	LostCut                   // met a dark place of a fibre
+	LostFlushed               // waited in a port that went down
+	LostNoRoute               // no way to its target was known
+	LostTTL                   // crossed too many routers
+	LostTornDown              // its circuit was taken down under it
+	Causes
+)
+
+// String is the cause's name in results.
+func (c Cause) String() string {
+	return [Causes]string{"queue", "cut", "flushed", "no-route", "ttl", "torn-down"}[c]
+}
+
+// byFault reports whether the cause counts towards the outage of a fault.
+func (c Cause) byFault() bool { return c != LostQueue && c != LostTTL }
+
+// Cell holds the figures of one way in one kind of stretch.
+type Cell struct {
+	Delay     measure.Hist    // ns above Floor
+	Exact     measure.Moments // ps, whole delay
+	Variation measure.Hist    // ns, absolute difference of consecutive delays (RFC 3393)
+	Queueing  uint64          // ns waited in queues, over all packets
+	Bytes     uint64
+	Reordered uint64  // RFC 4737
+	Jitter    float64 // ps: RFC 3550 estimate, averaged over packets
+	Jitters   uint64
+}
+
+// Outage is the longest run of packets lost after a fault, in sending time.
+type Outage struct {
+	Fault    int32
+	From, To des.Time // sent: last delivered before the run, first delivered after it
+}
+
+// Meter judges what arrives of one way.
+type Meter struct {
+	Floor   des.Time // light delay between the ends; delays are counted above it
+	Cells   [Kinds]*Cell
+	Outages []Outage
+	jitter  measure.Jitter
+	pairs   measure.Consecutive
+	order   measure.Order
+	next    uint32   // sequence number after the last delivered in order
+	last    des.Time // when that one was sent
+}
+
+// add counts a packet that left its egress router at p.Due.
+func (m *Meter) add(p *nodes.Packet, kind Kind, fault int32) {
+	c := m.Cells[kind]
+	if c == nil {
+		c = m.cell(kind)
+	}
+	delay := int64(p.Due - p.Born)
+	above := delay - int64(m.Floor)
+	if above < 0 {
+		above = 0
+	}
+	c.Delay.Add(uint64(above) / 1000)
+	c.Exact.Add(delay)
+	c.Queueing += uint64(p.Word)
+	c.Bytes += uint64(p.Size)
+	m.jitter.Add(delay)
+	if j, ok := m.jitter.Value(); ok {
+		c.Jitter += j
+		c.Jitters++
+	}
+	late := m.order.Add(p.Seq)
+	if late {
+		c.Reordered++
+		m.overtaken(c, p.Seq, delay)
+		return
+	}
+	if d, ok := m.pairs.Next(p.Seq, delay); ok {
+		c.Variation.Add(uint64(max(d, -d)) / 1000)
+	}
+	if p.Seq != m.next && fault >= 0 {
+		m.gap(p.Born, fault)
+	}
+	m.next, m.last = p.Seq+1, p.Born
+}
+
+//go:noinline
+func (m *Meter) cell(kind Kind) *Cell {
+	m.Cells[kind] = &Cell{}
+	return m.Cells[kind]
+}
+
+//go:noinline
+func (m *Meter) overtaken(c *Cell, seq uint32, delay int64) {
+	d, later, ok, laterOK := m.pairs.Overtaken(seq, delay)
+	if ok {
+		c.Variation.Add(uint64(max(d, -d)) / 1000)
+	}
+	if laterOK {
+		c.Variation.Add(uint64(max(later, -later)) / 1000)
+	}
+}
+
+// gap notes that packets sent after m.last and before born are missing.
+//
+//go:noinline
+func (m *Meter) gap(born des.Time, fault int32) {
+	for i := range m.Outages {
+		if o := &m.Outages[i]; o.Fault == fault {
+			if born-m.last > o.To-o.From {
+				o.From, o.To = m.last, born
+			}
+			return
+		}
+	}
+	m.Outages = append(m.Outages, Outage{Fault: fault, From: m.last, To: born})
+}
+
+func (m *Meter) clone() Meter {
+	c := *m
+	for k, x := range m.Cells {
+		if x != nil {
+			y := *x
+			y.Delay, y.Variation = x.Delay.Clone(), x.Variation.Clone()
+			c.Cells[k] = &y
+		}
+	}
+	c.Outages = append([]Outage(nil), m.Outages...)
+	return c
+}
+
+// Loss counts what one site lost of one way.
+type Loss struct {
+	Way    uint16
+	Count  [Kinds][Causes]uint64
+	Bytes  uint64
+	Faults []FaultLoss
+}
+
+// FaultLoss is what one site lost of one way to one fault.
+type FaultLoss struct {
+	Fault       int32
+	Packets     uint64
+	First, Last des.Time // sent
+}
+
+func (l *Loss) add(p *nodes.Packet, st *view, cause Cause) {
+	l.Count[st.kind][cause]++
+	l.Bytes += uint64(p.Size)
+	if st.fault < 0 || !cause.byFault() {
+		return
+	}
+	n := len(l.Faults)
+	if n == 0 || l.Faults[n-1].Fault != st.fault {
+		l.Faults = append(l.Faults, FaultLoss{Fault: st.fault, First: p.Born, Last: p.Born})
+		n++
+	}
+	f := &l.Faults[n-1]
+	f.Packets++
+	f.First, f.Last = min(f.First, p.Born), max(f.Last, p.Born)
+}
