@@ -49,16 +49,22 @@ func (l uniform) Quantile(p float64) float64 {
 func (l uniform) Draw(s *Stream) float64 { return l.Quantile(s.Float64()) }
 func (l uniform) At(u float64) float64   { return l.Quantile(u) }
 
-type exponential struct{ distuv.Exponential }
+type exponential struct {
+	distuv.Exponential
+	mean float64
+}
 
 func newExponential(mean float64) exponential {
-	return exponential{distuv.Exponential{Rate: 1 / mean}}
+	return exponential{distuv.Exponential{Rate: 1 / mean}, mean}
 }
 
 // Quantile uses log1p, which keeps its digits when p is small.
-func (l exponential) Quantile(p float64) float64 { return -math.Log1p(-checked(p)) / l.Rate }
-func (l exponential) Draw(s *Stream) float64     { return s.Exp() / l.Rate }
-func (l exponential) At(u float64) float64       { return l.Quantile(u) }
+func (l exponential) Quantile(p float64) float64 { return -math.Log1p(-checked(p)) * l.mean }
+func (l exponential) Draw(s *Stream) float64     { return s.Exp() * l.mean }
+
+// Mean is as given; distuv would round the reciprocal of a reciprocal.
+func (l exponential) Mean() float64        { return l.mean }
+func (l exponential) At(u float64) float64 { return l.Quantile(u) }
 
 type lognormal struct{ distuv.LogNormal }
 
