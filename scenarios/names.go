@@ -111,7 +111,6 @@ const (
 )
 
 var (
-	queueWords   = []string{"strict", "weight", "fifo"}
 	modelWords   = []string{"constant", "poisson", "voice", "video", "files"}
 	arrivalWords = []string{"none", "poisson", "regular"}
 	figureWords  = []string{
@@ -120,11 +119,7 @@ var (
 	}
 	commandWords   = []string{"by-kind", "parallel", "sequence"}
 	sizeWords      = []string{"slots", "container", "channel"}
-	carriesWords   = []string{"routed", "moved"}
-	recoveryWords  = []string{"none", "1+1", "restore"}
-	whenDownWords  = []string{"return", "wait", "drop"}
 	framingWords   = []string{"gfp", "none"}
-	chooseWords    = []string{"least-delay", "fewest-routers", "most-spare", "apart-from"}
 	orderWords     = []string{"free", "kept"}
 	fibreWaysWords = []string{"both", "out", "back"}
 	verbWords      = []string{"cut", "repair", "set-up", "tear-down", "resize", "move", "return", "scale"}

@@ -20,6 +20,7 @@ type Scenario struct {
 	Name  string
 	About string
 	File  string // as given to Load
+	Hash  string // of what it was made of: see Hash
 
 	Run        Run
 	Timing     Timing
@@ -33,7 +34,7 @@ type Scenario struct {
 	Requests   []Request
 	Controller Controller
 	Timeline   []Act  // under every plan, in order of the file
-	Plans      []Plan // Plans[0] is as-is; the others as written: see Scenario.Plan
+	Plans      []Plan // Plans[0] is as-is; each with all that it is built on
 
 	// Defaults lists every default that was applied, as "key = value", in a
 	// fixed order, for the report.
@@ -243,13 +244,13 @@ func (a *Act) WhereOn(f *Fibre) nodes.Length {
 	return a.Where
 }
 
-// Plan is a set of changes to the network. In Scenario.Plans it holds what was
-// written; Scenario.Plan returns it together with what it is built on.
+// Plan is a set of changes to the network, together with those of the plans
+// that it is built on, which come first in every list.
 type Plan struct {
 	Name  string
 	Pos   Pos
 	About string
-	On    string // the plan it changes; empty for as-is
+	On    string // the plan it is built on; empty for as-is
 
 	// Circuits are all circuits that exist at some time under the plan:
 	// Scenario.Circuits first, so that their ids stay, then those of the plans

@@ -97,6 +97,9 @@ func TestQuantileWorked(t *testing.T) {
 	if r := Rank(999, 1000, 1000); r != 999 { // ceil(99.9/100·1000) is 1000 in floating point
 		t.Errorf("Rank(999, 1000, 1000) = %d, want 999", r)
 	}
+	if r := Rank(1, 3, 4); r != 2 {
+		t.Errorf("Rank(1, 3, 4) = %d, want 2", r)
+	}
 	if r := Rank(math.MaxUint64-1, math.MaxUint64, math.MaxUint64); r != math.MaxUint64-1 {
 		t.Errorf("Rank of a product of 128 bits = %d", r)
 	}
@@ -220,14 +223,16 @@ func TestCounterPasses32Bits(t *testing.T) {
 	if b := bars(h); !slices.Equal(b, want) {
 		t.Fatalf("bars %v, want %v", b, want)
 	}
+	h.addMany(7, math.MaxUint32)
+	h.n += math.MaxUint32
 	o := h.Clone()
 	h.Merge(&o)
-	want = []bar{{7, 7, 2}, {300, 301, 1<<33 + 4}}
-	if b := bars(h); !slices.Equal(b, want) || h.Count() != 1<<33+6 {
+	want = []bar{{7, 7, 1 << 33}, {300, 301, 1<<33 + 4}}
+	if b := bars(h); !slices.Equal(b, want) || h.Count() != 1<<34+4 {
 		t.Errorf("after the merge %v of %d, want %v", b, h.Count(), want)
 	}
-	if v, ok := h.Quantile(1, 2); !ok || v != 300.0 && v != 300.5 {
-		t.Errorf("median %v, %v", v, ok)
+	if v, ok := h.Quantile(3, 4); !ok || v != 300.5 {
+		t.Errorf("quantile 3/4 = %v, %v; want 300.5", v, ok)
 	}
 	if h.Bytes() <= o.Bytes()-1000 || h.Bytes() > 2000 {
 		t.Errorf("holds %d bytes", h.Bytes())

@@ -152,6 +152,7 @@ func TestVerdict(t *testing.T) {
 		{Interval{2, 1, 5}, Worse, Better},
 		{Interval{1, 2, 5}, NoEvidence, NoEvidence},
 		{Interval{1, 1, 5}, NoEvidence, NoEvidence}, // zero is in the interval
+		{Interval{-1, 1, 5}, NoEvidence, NoEvidence},
 		{Interval{0, 0, 5}, Identical, Identical},
 		{Interval{3, 0, 5}, Worse, Better},
 		{Interval{0, 0, 1}, NoEvidence, NoEvidence},

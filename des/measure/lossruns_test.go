@@ -81,15 +81,31 @@ func TestLossOutsideTheWindow(t *testing.T) {
 	if l.Report() != slowLoss(all, 0) {
 		t.Errorf("more runs than the window, in order: %+v", l.Report())
 	}
+	settled := all[9*lossWindow-1]
 	l.Lost(105) // below what is settled
-	l.Lost(100)
+	l.Lost(settled)
 	l.Lost(all[len(all)-1]) // twice
 	if r := l.Report(); r.Unplaced != 3 || r.Lost != uint64(len(all))+3 || r.Periods != uint64(len(all)) {
 		t.Errorf("unplaced %d of %d in %d periods", r.Unplaced, r.Lost, r.Periods)
 	}
-	settled := all[9*lossWindow-1]
 	l.Lost(settled + 1) // goes on where the last settled run ended
 	if r := l.Report(); r.Lengths[2] != 1 || r.Periods != uint64(len(all)) || r.Longest != 2 {
 		t.Errorf("a run that goes on past the settled: %+v", r)
+	}
+}
+
+func TestLongRunsTakeOnePlace(t *testing.T) {
+	up, down := LossRuns{}, LossRuns{}
+	for i := range uint32(5 * lossWindow) {
+		up.Lost(1000 + i)
+		down.Lost(5000 - i)
+	}
+	up.Lost(500)
+	down.Lost(500)
+	if r := up.Report(); r.Unplaced != 0 || r.Periods != 2 || r.Longest != 5*lossWindow {
+		t.Errorf("a run that grows upwards: %+v", r)
+	}
+	if r := down.Report(); r.Unplaced != 0 || r.Periods != 2 || r.Longest != 5*lossWindow {
+		t.Errorf("a run that grows downwards: %+v", r)
 	}
 }

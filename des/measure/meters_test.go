@@ -83,6 +83,8 @@ func TestConsecutiveWorked(t *testing.T) {
 			map[uint32]int64{2: 0, 3: 0, 4: 82, 5: -82, 6: 0, 7: 0, 8: 0, 9: 0, 10: 0}},
 		{"RFC 4737, table 2", []arrival{{1, 68}, {2, 68}, {3, 68}, {4, 68}, {7, 68}, {5, 109}, {6, 90}, {8, 68}, {9, 68}, {10, 68}},
 			map[uint32]int64{2: 0, 3: 0, 4: 0, 5: 41, 6: -19, 7: -22, 8: 0, 9: 0, 10: 0}},
+		{"by hand: a gap filled from within", []arrival{{0, 1}, {7, 0}, {3, 30}, {5, 50}, {4, 4}, {6, 6}, {1, 2}, {2, 20}},
+			map[uint32]int64{1: 1, 2: 18, 3: 10, 4: -26, 5: 46, 6: -44, 7: -6}},
 		{"by hand: backwards from 2 to 0", []arrival{{2, 9}, {1, 5}, {0, 2}}, map[uint32]int64{1: 3, 2: 4}},
 	} {
 		if slow := slowConsecutive(c.in); fmt.Sprint(slow) != fmt.Sprint(c.want) {

@@ -22,10 +22,12 @@ func TestMoments(t *testing.T) {
 	if m.Mean() != 134.3 || math.Abs(m.Variance()-1675.122222) > 1e-6 || m.Min != 50 || m.Max != 189 {
 		t.Errorf("mean %v, variance %v, in [%d, %d]", m.Mean(), m.Variance(), m.Min, m.Max)
 	}
-	second.Merge(first)
-	second.Merge(Moments{})
-	if second != m {
-		t.Errorf("merged %+v, want %+v", second, m)
+	forward, backward := first, second
+	forward.Merge(second)
+	backward.Merge(first)
+	backward.Merge(Moments{})
+	if forward != m || backward != m {
+		t.Errorf("merged %+v and %+v, want %+v", forward, backward, m)
 	}
 	// ITU-T Y.1541 bounds the mean: 1990 delays of 10 ms and ten more, by hand.
 	var y Moments

@@ -28,6 +28,8 @@ func TestOrderWorked(t *testing.T) {
 			[]behind{{4, 4, 62, 400, 4}, {5, 5, 64, 400, 0}, {6, 6, 68, 400, 0}}, 1},
 		{"section 5.4", []uint32{1, 2, 3, 7, 8, 9, 4, 5, 6}, []des.Time{1, 2, 3, 4, 5, 6, 7, 8, 9},
 			[]behind{{4, 3, 3, 300, 3}, {5, 4, 4, 300, 0}, {6, 5, 5, 300, 0}}, 1},
+		{"by hand: as early as can be", []uint32{2, 3, 4, 1}, []des.Time{1, 2, 3, 4}, []behind{{1, 3, 3, 300, 3}}, 1},
+		{"by hand: one too early", []uint32{2, 3, 1}, []des.Time{1, 2, 3}, []behind{{1, 2, 2, 200, 2}}, 0},
 	} {
 		if slow := slowOrder(c.seqs, c.times, 100); !slices.Equal(slow, c.want) {
 			t.Errorf("%s: the definition gives %+v, want %+v", c.source, slow, c.want)
@@ -71,6 +73,10 @@ func TestFreeRunsWorked(t *testing.T) {
 	byRun, byPacket := o.MeanRun()
 	if o.Received != 36 || o.Reordered != 3 || o.Runs != 3 || o.InRuns != 33 || o.Squares != 363 || byRun != 11 || byPacket != 11 {
 		t.Errorf("%+v, mean runs %v and %v; want 3 runs, 33, 363, 11, 11", o, byRun, byPacket)
+	}
+	q := o
+	if q.Add(1); q.Runs != 3 {
+		t.Errorf("an empty run counts: %d, want 3", q.Runs)
 	}
 	p := o
 	p.Merge(o)

@@ -125,6 +125,15 @@ func TestQuantileRanks(t *testing.T) {
 	}
 }
 
+// Of 100 values none need lie above the quantile 0.999, nor below 0.001.
+func TestQuantileRanksBeyondTheSample(t *testing.T) {
+	for _, p := range []float64{0.999, 0.001} {
+		if j, k, _, ok := QuantileRanks(100, p, 0.95); ok {
+			t.Errorf("100 values give ranks %d and %d for the quantile %v", j, k, p)
+		}
+	}
+}
+
 // Wilks (1941); the formula with the least number that meets it.
 func TestWilksSizes(t *testing.T) {
 	for level, want := range map[float64][3]int{0.90: {45, 230, 2302}, 0.95: {59, 299, 2995}, 0.99: {90, 459, 4603}} {

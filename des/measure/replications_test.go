@@ -96,6 +96,9 @@ func TestMSERWorked(t *testing.T) {
 	if d, v, settled := MSER(nil); d != 0 || !math.IsNaN(v) || settled {
 		t.Errorf("no block: %d, %v, %v", d, v, settled)
 	}
+	if d, _, settled := MSER([]float64{2, 2, 2}); d != 0 || settled {
+		t.Errorf("three blocks: %d, %v; want 0, unsettled", d, settled)
+	}
 	if d, v, settled := MSER([]float64{2, 2, 2, 2, 2}); d != 0 || v != 0 || !settled {
 		t.Errorf("a constant: %d, %v, %v", d, v, settled)
 	}

@@ -16,9 +16,9 @@ type Stream struct{ s0, s1, s2, s3 uint64 }
 const streamQuantity = 0x73747265616d2073
 
 // NewStream returns the stream that belongs to (seed, name). Streams of
-// different names or seeds start at points of the period that look unrelated;
-// with 2^20 streams of 2^50 words each, the chance that any two overlap is
-// below 2^-160.
+// different names or seeds start at points of the period that look unrelated.
+// The start depends on the name through its 64-bit [Hash]: among 2^20 names the
+// chance that any two share a stream is below 2^-24.
 func NewStream(seed uint64, name string) Stream {
 	h := Hash(name)
 	return Stream{
@@ -29,15 +29,11 @@ func NewStream(seed uint64, name string) Stream {
 
 // Uint64 returns the next 64 random bits.
 func (s *Stream) Uint64() uint64 {
-	r := bits.RotateLeft64(s.s0+s.s3, 23) + s.s0
-	t := s.s1 << 17
-	s.s2 ^= s.s0
-	s.s3 ^= s.s1
-	s.s1 ^= s.s2
-	s.s0 ^= s.s3
-	s.s2 ^= t
-	s.s3 = bits.RotateLeft64(s.s3, 45)
-	return r
+	// Locals keep the state in registers between one load and one store.
+	a, b, c, d := s.s0, s.s1, s.s2^s.s0, s.s3^s.s1
+	s.s0, s.s1 = a^d, b^c
+	s.s2, s.s3 = c^b<<17, bits.RotateLeft64(d, 45)
+	return bits.RotateLeft64(a+(d^b), 23) + a
 }
 
 // Float64 returns a uniform variate in the open interval (0, 1); see [Unit].

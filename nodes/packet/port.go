@@ -222,10 +222,9 @@ func (q *port) arrive(s *Site, p *nodes.Packet, next des.Time) {
 
 // catch takes every decision due before end.
 func (q *port) catch(end des.Time) {
-	var p nodes.Packet
 	for q.waiting > 0 && q.free < end {
 		t := q.free
-		q.disc.Dequeue(t, &p)
+		p := q.disc.Dequeue(t)
 		q.area.AddProduct(uint64(q.waiting), uint64(t-q.changed))
 		q.changed = t
 		q.waiting--
@@ -235,7 +234,7 @@ func (q *port) catch(end des.Time) {
 			q.count.delayed++
 			p.Word += uint32(wait / des.Nanosecond)
 		}
-		q.send(&p, t)
+		q.send(p, t)
 	}
 }
 

@@ -22,17 +22,15 @@ func TestDeficitRoundRobinTrace(t *testing.T) {
 		}
 	}
 	var got []uint16
-	var p nodes.Packet
 	for range 4 {
-		d.Dequeue(0, &p)
-		got = append(got, p.Size)
+		got = append(got, d.Dequeue(0).Size)
 	}
 	// The deficits that remain after the first round; a queue's turn ends when
 	// its front no longer fits, which the next Dequeue finds out.
 	if def := []nodes.Bytes{d.q[0].deficit, d.q[1].deficit, d.q[2].deficit, d.q[3].deficit}; !slices.Equal(def, []nodes.Bytes{300, 0, 400, 320}) {
 		t.Errorf("deficits after round 1: %v, want 300 0 400 320", def)
 	}
-	for d.Dequeue(0, &p) {
+	for p := d.Dequeue(0); p != nil; p = d.Dequeue(0) {
 		got = append(got, p.Size)
 	}
 	want := []uint16{200, 500, 100, 180, 750, 20, 500, 600, 200, 700, 50}

@@ -27,9 +27,10 @@ type Discipline interface {
 	// kept, the discipline has its own copy.
 	Enqueue(now des.Time, p *nodes.Packet) Verdict
 
-	// Dequeue writes the packet that leaves at now to *p and reports true, or
-	// reports false when none waits. It serves whenever something waits.
-	Dequeue(now des.Time, p *nodes.Packet) bool
+	// Dequeue returns the packet that leaves at now, or nil when none waits. It
+	// serves whenever something waits. What it returns is valid, and the
+	// caller's to change, until the next call of Enqueue or Drain.
+	Dequeue(now des.Time) *nodes.Packet
 
 	// Len is the number of packets waiting.
 	Len() int

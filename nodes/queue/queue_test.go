@@ -83,9 +83,8 @@ func TestWeightedShare(t *testing.T) {
 		d.Enqueue(0, &p)
 	}
 	var sent [2]float64
-	var p nodes.Packet
 	for range 15_000 {
-		d.Dequeue(0, &p)
+		p := d.Dequeue(0)
 		sent[p.Way] += float64(p.Size)
 		if diff := sent[0]/1.5 - sent[1]; diff > 2*1500+1600 || diff < -2*1500-1600 {
 			t.Fatalf("normalised service differs by %.0f B", diff)

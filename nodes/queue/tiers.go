@@ -139,16 +139,15 @@ func (t *Tiers) Enqueue(_ des.Time, p *nodes.Packet) Verdict {
 }
 
 // Dequeue implements Discipline.
-func (t *Tiers) Dequeue(_ des.Time, p *nodes.Packet) bool {
+func (t *Tiers) Dequeue(des.Time) *nodes.Packet {
 	if t.nonEmpty == 0 {
-		return false
+		return nil
 	}
 	q := uint8(bits.TrailingZeros64(t.nonEmpty))
 	if t.wrr&(1<<q) != 0 {
 		q = t.robin()
 	}
-	t.take(q, p)
-	return true
+	return t.take(q)
 }
 
 // robin moves the turn of the weighted tier, which is not empty, to the queue
@@ -182,9 +181,9 @@ func (t *Tiers) pass() {
 }
 
 // take removes the front of queue q.
-func (t *Tiers) take(q uint8, p *nodes.Packet) {
+func (t *Tiers) take(q uint8) *nodes.Packet {
 	l := &t.q[q]
-	*p = *l.ring.front()
+	p := l.ring.front()
 	l.ring.head++
 	if l.ring.head == l.ring.tail {
 		l.ring.head, l.ring.tail = 0, 0
@@ -199,6 +198,7 @@ func (t *Tiers) take(q uint8, p *nodes.Packet) {
 	b.count--
 	t.bytes -= size
 	t.n--
+	return p
 }
 
 // Len implements Discipline.
@@ -209,11 +209,9 @@ func (t *Tiers) Backlog() nodes.Bytes { return t.bytes }
 
 // Drain implements Discipline.
 func (t *Tiers) Drain(lost func(p *nodes.Packet)) {
-	var p nodes.Packet
 	for q := range t.q {
 		for t.q[q].ring.len() > 0 {
-			t.take(uint8(q), &p)
-			lost(&p)
+			lost(t.take(uint8(q)))
 		}
 	}
 }

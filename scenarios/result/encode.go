@@ -160,3 +160,6 @@ func normalise(v reflect.Value) {
 		}
 	}
 }
+
+// Stamp writes into r which program made it.
+func Stamp(r Result, t Tool) { r.head().Tool = t }
