@@ -1,0 +1,270 @@
+package scenarios
+
+import (
+	"fmt"
+	"math"
+	"reflect"
+	"slices"
+	"strconv"
+	"strings"
+
+	"ferrule/des"
+	"ferrule/des/random"
+	"ferrule/nodes"
+)
+
+// codecs are the voice codecs that can be named (ITU-T G.711, G.722, G.723.1,
+// G.726, G.729; RFC 6716).
+var codecs = []string{"G.711", "G.722", "G.723.1", "G.726", "G.729", "Opus"}
+
+// codePoints are the names of code points (RFC 2474, 2597, 3246, 5865, 8622).
+// AFxy is 8x + 2y and CSx is 8x.
+var codePoints = map[string]uint8{"BE": 0, "DF": 0, "LE": 1, "EF": 46, "VA": 44}
+
+// decodeCodePoint reads a code point by name or number.
+func decodeCodePoint(data any) (codePoint, *fault) {
+	odd := &fault{msg: fmt.Sprintf("\"%v\" is not a code point", data), hint: "write EF, BE, LE, VA, CS0 to CS7, AF11 to AF43, or a number from 0 to 63"}
+	s, ok := data.(string)
+	if !ok {
+		n, f := decodeWhole(data)
+		if f != nil || n < 0 || n > 63 {
+			return 0, odd
+		}
+		return codePoint(n), nil
+	}
+	if c, ok := codePoints[s]; ok {
+		return codePoint(c), nil
+	}
+	digits := strings.TrimLeft(s, "ACFS")
+	n, err := strconv.Atoi(digits)
+	switch {
+	case err != nil:
+		return 0, odd
+	case s == "CS"+digits && len(digits) == 1 && n <= 7:
+		return codePoint(8 * n), nil
+	case s == "AF"+digits && len(digits) == 2 && n/10 >= 1 && n/10 <= 4 && n%10 >= 1 && n%10 <= 3:
+		return codePoint(8*(n/10) + 2*(n%10)), nil
+	}
+	return 0, odd
+}
+
+// resolveClasses reads the classes, which are those of the traffic's names.
+func (r *resolver) resolveClasses() {
+	list := r.t.top().field("classes")
+	if !list.given() || len(r.raw.Classes) == 0 {
+		r.missing(r.t.top(), "classes", "write at least one class of service")
+	}
+	if len(r.raw.Classes) > 64 {
+		list.fault("write 64 at most", "%d classes are too many", len(r.raw.Classes))
+	}
+	total := 0
+	for i := range r.raw.Classes {
+		raw, p := &r.raw.Classes[i], list.item(i)
+		c := Class{Name: raw.Name, Pos: p.pos(), DSCP: uint8(value(raw.DSCP, 0)), Traffic: nodes.None}
+		r.classes.add(r, p, raw.Name)
+		c.Queue, c.Weight = r.queue(p.field("queue"), raw.Queue)
+		total += c.Weight
+		c.BufferTime, c.BufferBytes = defaultBuffer, 0
+		if raw.Buffer != nil {
+			c.BufferTime, c.BufferBytes = raw.Buffer.Time, raw.Buffer.Bytes
+			if c.BufferTime == 0 && c.BufferBytes == 0 || c.BufferTime > des.Hour {
+				p.field("buffer").fault("write for instance 50ms or 64kB", "a buffer holds something, and an hour at most")
+			}
+		} else {
+			r.unless(p, "buffer", FormatTime(defaultBuffer))
+		}
+		r.unless(p, "queue", "fifo")
+		r.unless(p, "dscp", "BE")
+		if q := p.field("traffic"); q.given() {
+			c.Traffic = r.traffic.find(q, raw.Traffic)
+		}
+		c.Objective = objective(p.field("objective"), &raw.Objective)
+		r.s.Classes = append(r.s.Classes, c)
+		r.queueOrder(p, i)
+	}
+	if total > 100 {
+		list.fault("lower the weights to 100% together", "the weights of all classes make %d%%", total)
+	}
+}
+
+// queue reads "strict", "fifo" or "weight 60%".
+func (r *resolver) queue(p *place, text string) (nodes.Queueing, int) {
+	const hint = "write strict, fifo, or weight and a percentage, such as weight 60%"
+	if text == "" {
+		if p.given() && p.node.Value == "" {
+			p.fault(hint, "is empty")
+		}
+		return nodes.QueueFIFO, 0
+	}
+	switch word, rest, _ := strings.Cut(text, " "); {
+	case text == "strict":
+		return nodes.QueueStrict, 0
+	case text == "fifo":
+		return nodes.QueueFIFO, 0
+	case word == "weight":
+		w, f := suffixed(strings.TrimSpace(rest), "%", "a percentage")
+		if f != nil || w != math.Trunc(w) || w < 1 || w > 100 {
+			p.fault("write a whole percentage from 1% to 100%", "%q is not a weight", rest)
+			return nodes.QueueWeight, 1
+		}
+		return nodes.QueueWeight, int(w)
+	}
+	p.fault(hint, "%q is not a kind of queue", text)
+	return nodes.QueueFIFO, 0
+}
+
+// queueOrder checks class i against those above it.
+func (r *resolver) queueOrder(p *place, i int) {
+	if i == 0 {
+		return
+	}
+	q, above, here := p.field("queue"), &r.s.Classes[i-1], &r.s.Classes[i]
+	switch {
+	case (here.Queue == nodes.QueueFIFO) != (above.Queue == nodes.QueueFIFO):
+		q.fault("make all classes fifo, or none", "fifo does not go together with strict or weight")
+	case here.Queue == nodes.QueueStrict && above.Queue == nodes.QueueWeight:
+		q.fault("move it above them", "a strict class stands below classes with a weight")
+	}
+}
+
+// objective lists the limits that are given, in the order of the figures.
+func objective(p *place, raw *rawObjective) []Limit {
+	var out []Limit
+	v := reflect.ValueOf(raw).Elem()
+	for i, key := range figureWords {
+		switch x := v.Field(i).Interface().(type) {
+		case *des.Time:
+			if x != nil {
+				out = append(out, Limit{Figure: Figure(i), Time: within(p.field(key), x, 0, maxSpan, 0, FormatTime)})
+			}
+		case *ratio:
+			if x != nil {
+				out = append(out, Limit{Figure: Figure(i), Ratio: float64(*x)})
+			}
+		}
+	}
+	return out
+}
+
+// modelKeys are the keys that each model uses, beside those of every model.
+var modelKeys = [][]string{
+	ModelConstant: {"packet", "rate"},
+	ModelPoisson:  {"packet", "rate"},
+	ModelVoice:    {"codec"},
+	ModelVideo:    {"packet", "rate", "frames", "group-of-pictures"},
+	ModelFiles:    {"packet", "size", "pace"},
+}
+
+// resolveTraffic reads the ways of sending.
+func (r *resolver) resolveTraffic() {
+	list := r.t.top().field("traffic")
+	for i := range r.raw.Traffic {
+		raw, p := &r.raw.Traffic[i], list.item(i)
+		t := Traffic{Name: raw.Name, Pos: p.pos(), Start: value(raw.Start, 0), Stop: value(raw.Stop, des.Never)}
+		r.traffic.add(r, p, raw.Name)
+		model := r.choice(p.field("model"), raw.Model, modelWords, -1)
+		if !p.field("model").given() {
+			r.missing(p, "model", oneOf(modelWords))
+		}
+		r.interval(p, t.Start, t.Stop)
+		if model >= 0 {
+			t.Model = Model(model)
+			r.modelUses(p, t.Model)
+			r.model(p, raw, &t)
+		}
+		r.flows(p, raw, &t)
+		r.s.Traffic = append(r.s.Traffic, t)
+	}
+}
+
+// modelUses finds keys that the model has no use for.
+func (r *resolver) modelUses(p *place, m Model) {
+	for _, key := range []string{"packet", "rate", "codec", "frames", "group-of-pictures", "size", "pace"} {
+		if q := p.field(key); q.given() && !slices.Contains(modelKeys[m], key) {
+			q.fault("the model uses "+strings.Join(modelKeys[m], ", "), "the model %s does not use it", m)
+		}
+	}
+}
+
+// model reads what the model needs.
+func (r *resolver) model(p *place, raw *rawTraffic, t *Traffic) {
+	need := func(key, hint string) {
+		if !p.field(key).given() {
+			r.missing(p, key, hint)
+		}
+	}
+	rate := func(key string, v *nodes.Rate) nodes.Rate {
+		return within(p.field(key), v, 1, maxRate, 0, FormatRate)
+	}
+	t.Packet = r.packet(p.field("packet"), raw.Packet)
+	switch t.Model {
+	case ModelConstant, ModelPoisson:
+		need("packet", "write for instance packet: 1500B")
+		t.Rate = rate("rate", raw.Rate)
+	case ModelVoice:
+		t.Codec = codecs[r.choice(p.field("codec"), raw.Codec, codecs, 0)]
+		r.unless(p, "codec", defaultCodec)
+	case ModelVideo:
+		need("rate", "write the mean rate of one flow, such as 8Mbps")
+		t.Rate = rate("rate", raw.Rate)
+		t.Frames = within(p.field("frames"), (*float64)(raw.Frames), 1, 1000, defaultFrames, perSecond)
+		r.unless(p, "frames", perSecond(defaultFrames))
+		t.GroupOfPictures = within(p.field("group-of-pictures"), raw.GroupOfPictures, 1, 10000, defaultPictures, plain)
+		r.unless(p, "group-of-pictures", plain(defaultPictures))
+	case ModelFiles:
+		need("size", "write for instance size: 80kB")
+		need("pace", "write the rate at which a file is sent, such as 100Mbps")
+		t.Size = random.Spec(value(raw.Size, byteLaw{}))
+		if raw.Size != nil && t.Size.Kind == random.Constant && t.Size.Mean < 1 {
+			p.field("size").fault("write 1B or more", "a file holds something")
+		}
+		t.Pace = rate("pace", raw.Pace)
+	default:
+		panic("scenarios: unknown model " + t.Model.String())
+	}
+}
+
+// packet reads the size of a packet; 0 is none.
+func (r *resolver) packet(p *place, raw *byteLaw) random.Spec {
+	if raw == nil {
+		return random.Spec{}
+	}
+	s := random.Spec(*raw)
+	least, most := s.Mean, s.Mean
+	if s.Kind == random.Mix {
+		least, most = slices.Min(s.Values), slices.Max(s.Values)
+	} else if s.Kind != random.Constant {
+		least, most = 1, 1
+	}
+	if least < 1 || most > float64(maxPacket) {
+		p.fault("write 1B to 65535B (RFC 791)", "a packet of that size is out of range")
+	}
+	return s
+}
+
+// flows reads how flows come and go.
+func (r *resolver) flows(p *place, raw *rawTraffic, t *Traffic) {
+	t.FlowsArrive = FlowArrival(r.choice(p.field("flows-arrive"), raw.FlowsArrive, arrivalWords, int(FlowsNone)))
+	r.unless(p, "flows-arrive", "none")
+	hold := p.field("hold")
+	switch {
+	case t.FlowsArrive == FlowsNone && hold.given() && !p.field("flows-arrive").given():
+		hold.fault("write flows-arrive: poisson as well", "flows that do not arrive do not end either")
+	case t.FlowsArrive != FlowsNone && !hold.given():
+		r.missing(p, "hold", "write how long a flow lasts, such as 180s")
+	}
+	t.Hold = random.Spec(value(raw.Hold, timeLaw{}))
+}
+
+// interval checks a start and a stop.
+func (r *resolver) interval(p *place, start, stop des.Time) {
+	if start >= stop {
+		p.field("stop").fault("write a later one", "stops at %s, before it starts at %s", FormatTime(stop), FormatTime(start))
+	} else if start >= r.s.Run.Length && p.field("start").given() && r.raw.Run.Length != nil {
+		p.field("start").fault("write an earlier one, or a longer run", "starts at %s, and the run ends at %s",
+			FormatTime(start), FormatTime(r.s.Run.Length))
+	}
+}
+
+// perSecond writes a frequency.
+func perSecond(x float64) string { return strconv.FormatFloat(x, 'g', -1, 64) + "/s" }
