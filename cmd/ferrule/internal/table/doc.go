@@ -91,11 +91,13 @@ const (
 )
 
 // A column of a grid. Columns marked wrap or cut give way when a grid is too
-// wide: the first breaks at spaces, the second ends in an ellipsis.
+// wide, down to least columns or the width of their heads: the first breaks
+// at spaces, the second ends in an ellipsis.
 type column struct {
 	head  string
 	right bool
 	give  give
+	least int
 }
 
 type give uint8
@@ -161,9 +163,13 @@ func join(sep string, cells ...cell) cell {
 	return out
 }
 
+// figures is the column of figure names; the names of classes stand in it too
+// and give way, the names of figures do not.
+func figures() column { return column{head: "figure", give: cut, least: 14} }
+
 func left(head string) column        { return column{head: head} }
 func right(head string) column       { return column{head: head, right: true} }
-func wrapped(head string) column     { return column{head: head, give: wrap} }
-func abbreviated(head string) column { return column{head: head, give: cut} }
+func wrapped(head string) column     { return column{head: head, give: wrap, least: 8} }
+func abbreviated(head string) column { return column{head: head, give: cut, least: 8} }
 func columns(cols ...column) *grid   { return &grid{cols: cols} }
 func toned(c cell, t tone) cell      { c.tone = t; return c }

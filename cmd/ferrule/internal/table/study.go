@@ -27,7 +27,7 @@ func (d *doc) batch(b *result.Batch) {
 	d.line(word("seeds: "), seeds(b.Seeds), word("; intervals of "), limit(b.Confidence, result.UnitRatio), word(" confidence"))
 	for _, p := range periodsOf(b.Periods, means(b.Figures)) {
 		d.heading(p.heading...)
-		g := meanGrid(left("figure"))
+		g := meanGrid(figures())
 		class := ""
 		for _, m := range b.Figures {
 			if m.Period != p.name {
@@ -174,7 +174,7 @@ func (d *doc) compared(base string, p result.Compared) {
 	d.priceChange(base, p.Price)
 	for _, s := range periodsOf(p.Periods, differences(p.Figures)) {
 		d.heading(s.heading...)
-		g := differenceGrid(left("figure"), base)
+		g := differenceGrid(figures(), base)
 		class := ""
 		for _, f := range p.Figures {
 			if f.Period != s.name {

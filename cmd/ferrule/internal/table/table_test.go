@@ -302,3 +302,29 @@ func TestEmptyAndPartialResults(t *testing.T) {
 		}
 	}
 }
+
+// Names as long as a scenario allows, and figures as large as a run can give,
+// still fit.
+func TestWidthWithLongNames(t *testing.T) {
+	long := func(s string) string { return s + strings.Repeat("x", 64-len(s)) }
+	words := strings.NewReplacer(`"voice"`, `"`+long("voice")+`"`, `"web"`, `"`+long("web")+`"`, `"video"`, `"`+long("video")+`"`,
+		`"th"`, `"`+long("th")+`"`, `"tarn"`, `"`+long("tarn")+`"`, `"holm"`, `"`+long("holm")+`"`,
+		"voice-tn.out", long("voice-tn.out"), "video-tn.out", long("video-tn.out"), "holm-ness", long("holm-ness"),
+		"th from tarn", long("th")+" from "+long("tarn"), `"as-is"`, `"`+long("as-is")+`"`,
+		"1234567,", "123456789012,", "1234550,", "123456789012,")
+	for name, r := range samples() {
+		data, err := result.Encode(r)
+		if err != nil {
+			t.Fatal(err)
+		}
+		stretched, err := result.Decode([]byte(words.Replace(string(data))))
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, l := range strings.Split(text(t, stretched, Options{}), "\n") {
+			if n := utf8.RuneCountInString(l); n > Width {
+				t.Errorf("%s: %d columns, at most %d:\n%s", name, n, Width, l)
+			}
+		}
+	}
+}

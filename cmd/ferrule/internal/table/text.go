@@ -134,7 +134,7 @@ func (g *grid) widths() []int {
 	for total > Width {
 		widest := -1
 		for i, c := range g.cols {
-			if c.give != fixed && widths[i] > max(8, utf8.RuneCountInString(c.head)) && (widest < 0 || widths[i] > widths[widest]) {
+			if c.give != fixed && widths[i] > max(c.least, utf8.RuneCountInString(c.head)) && (widest < 0 || widths[i] > widths[widest]) {
 				widest = i
 			}
 		}
