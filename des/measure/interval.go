@@ -93,10 +93,10 @@ func MeanInterval(x []float64, level float64) Interval {
 	if n < 2 {
 		return Interval{mean, math.Inf(1), n}
 	}
-	half := TQuantile(q, float64(n-1)) * math.Sqrt(variance/float64(n))
-	if same := allEqual(x); same {
+	if allEqual(x) {
 		return Interval{x[0], 0, n} // free of what the sum rounds away
 	}
+	half := float64(TQuantile(q, float64(n-1)) * math.Sqrt(variance/float64(n)))
 	return Interval{mean, half, n}
 }
 
@@ -204,7 +204,7 @@ func Welch(x, y []float64, level float64) Unpaired {
 	under := float64(a*a/float64(len(x)-1)) + float64(b*b/float64(len(y)-1))
 	r.DF = (a + b) * (a + b) / under
 	se := math.Sqrt(a + b)
-	r.Diff.Half = TQuantile(q, r.DF) * se
+	r.Diff.Half = float64(TQuantile(q, r.DF) * se)
 	r.P = twoSided(r.Diff.Mean/se, r.DF)
 	return r
 }

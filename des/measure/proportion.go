@@ -23,7 +23,7 @@ func Wilson(hits, trials uint64, level float64) (low, high float64) {
 	p, q := float64(hits)/n, float64(trials-hits)/n
 	zz := z * z
 	mid := p + float64(zz/(2*n))
-	half := z * math.Sqrt(float64(p*q/n)+float64(zz/(4*n*n)))
+	half := float64(z * math.Sqrt(float64(p*q/n)+float64(zz/(4*n*n))))
 	under := 1 + float64(zz/n)
 	low, high = (mid-half)/under, (mid+half)/under
 	if hits == 0 {

@@ -45,7 +45,9 @@ func Replications(x []float64, half, level float64) (n int, ok bool) {
 //
 // Source: A. M. Law and W. D. Kelton, sequential procedure for a relative
 // error.
-func RelativeHalf(mean, gamma float64) float64 { return math.Abs(mean) * (gamma / (1 + gamma)) }
+func RelativeHalf(mean, gamma float64) float64 {
+	return float64(math.Abs(mean) * (gamma / (1 + gamma)))
+}
 
 // SequentialSize returns the mean number of values, for many of them, at which
 // a fixed half-width is reached with standard deviation s: (z·s/half)².
@@ -54,7 +56,7 @@ func RelativeHalf(mean, gamma float64) float64 { return math.Abs(mean) * (gamma 
 // sequential confidence intervals for the mean", Ann. Math. Statist. 36, 1965.
 func SequentialSize(s, half, level float64) float64 {
 	r := NormalQuantile(upperTail(level)) * s / half
-	return r * r
+	return float64(r * r)
 }
 
 // Batches is a mean from one long run cut into batches of equal size.
@@ -134,9 +136,9 @@ func MSER5(x []float64) (drop int, settled bool) {
 //
 // least, the fewest if several do, and that least value; NaN if z is empty.
 // settled is as for [MSER5]. The time complexity is O(n).
-func MSER(z []float64) (d int, least float64, settled bool) {
+func MSER(z []float64) (d int, lowest float64, settled bool) {
 	n := len(z)
-	least = math.NaN()
+	lowest = math.NaN()
 	var mean, squares float64 // of the values from i on, by Welford's update
 	for i := n - 1; i >= 0; i-- {
 		kept := float64(n - i)
@@ -146,11 +148,11 @@ func MSER(z []float64) (d int, least float64, settled bool) {
 		if i > n/2 {
 			continue
 		}
-		if v := squares / (kept * kept); i == n/2 || v <= least {
-			d, least = i, v
+		if v := squares / (kept * kept); i == n/2 || v <= lowest {
+			d, lowest = i, v
 		}
 	}
-	return d, least, n >= 4 && d < n/2
+	return d, lowest, n >= 4 && d < n/2
 }
 
 // MovingAverage smooths x, an average over replications, for the eye to find
