@@ -31,6 +31,16 @@ func BenchmarkExp(b *testing.B) {
 	}
 }
 
+// BenchmarkFillExp reports the time of one variate, not of the whole slice.
+func BenchmarkFillExp(b *testing.B) {
+	s := NewStream(1, "bench")
+	var dst [256]float64
+	for b.Loop() {
+		s.FillExp(dst[:])
+	}
+	b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(b.N)/float64(len(dst)), "ns/variate")
+}
+
 func BenchmarkExpRandV2PCG(b *testing.B) {
 	r := rand.New(rand.NewPCG(1, 2))
 	for b.Loop() {

@@ -188,6 +188,43 @@ func TestZigguratTables(t *testing.T) {
 		math.Sqrt(math.Pi/2)*math.Erfc(normX[1]/math.Sqrt2))
 }
 
+// A point at x of layer i beside the sure part must be kept with probability
+// (f(x) - f(lower edge)) / (f(upper) - f(lower)), by the definition of the
+// method; the share of 20000 trials is within four standard deviations.
+func TestZigguratEdges(t *testing.T) {
+	const n = 20_000
+	s := NewStream(4, "edges")
+	check := func(name string, l *[layers]layer, y *[layers + 1]float64, f func(float64) float64, slow func(uint64) float64) {
+		for _, i := range []uint64{1, 2, 60, 128, 200, 254, 255} {
+			for _, at := range []float64{0.1, 0.5, 0.9} {
+				m := l[i].sure + uint64(at*float64(1<<53-l[i].sure)) | 1
+				x := float64(m) * l[i].width
+				kept := 0.0
+				for range n {
+					if math.Abs(slow(m<<11|i)) == x {
+						kept++
+					}
+				}
+				p := (f(x) - y[i]) / (y[i+1] - y[i])
+				if d, limit := math.Abs(kept/n-p), 4*math.Sqrt(p*(1-p)/n); d > limit {
+					t.Errorf("%s: layer %d at %v keeps %v, want %v within %v", name, i, at, kept/n, p, limit)
+				}
+			}
+		}
+	}
+	check("exp", &expLayers, &expY, func(x float64) float64 { return math.Exp(-x) }, s.expSlow)
+	check("norm", &normLayers, &normY, func(x float64) float64 { return math.Exp(-x * x / 2) }, s.normSlow)
+
+	// Beyond the last edge the law is what it is given that it lies there.
+	e, z := make([]float64, n), make([]float64, n)
+	for i := range n {
+		e[i], z[i] = s.expSlow(1<<64-layers), s.normTail() // the last point of layer 0
+	}
+	r := normX[1]
+	ksTest(t, "exp tail", e, func(x float64) float64 { return -math.Expm1(expX[1] - x) })
+	ksTest(t, "norm tail", z, func(x float64) float64 { return 1 - math.Erfc(x/math.Sqrt2)/math.Erfc(r/math.Sqrt2) })
+}
+
 func TestExpAndNorm(t *testing.T) {
 	const n = 1_000_000
 	for _, seed := range []uint64{1, 2, 3} {
@@ -202,6 +239,23 @@ func TestExpAndNorm(t *testing.T) {
 		// Each end of the ziggurat: the top layers, the tail, and its tail.
 		tails(t, "Exp", e, distuv.Exponential{Rate: 1}.CDF, 0.001, 0.01, expX[1], 10)
 		tails(t, "Norm", z, distuv.UnitNormal.CDF, -4, -normX[1], -0.01, 0, 0.01, normX[1], 4)
+	}
+}
+
+func TestFillExp(t *testing.T) {
+	a := NewStream(1, "fill")
+	b := a
+	got := make([]float64, 100_000)
+	for _, n := range []int{0, 1, 7, len(got)} {
+		a.FillExp(got[:n])
+		for i := range n {
+			if want := b.Exp(); got[i] != want {
+				t.Fatalf("element %d of %d is %v, want %v", i, n, got[i], want)
+			}
+		}
+		if a != b {
+			t.Fatalf("after %d elements the streams differ", n)
+		}
 	}
 }
 
