@@ -1,0 +1,79 @@
+package main
+
+import (
+	"fmt"
+	"slices"
+	"time"
+
+	"github.com/spf13/cobra"
+
+	"ferrule/scenarios/result"
+)
+
+// leastCompare is the fewest seeds whose paired differences are given a
+// verdict.
+const leastCompare = 8
+
+func newCompare(env Env) *cobra.Command {
+	c := &call{env: env}
+	base, n := asIs, leastCompare
+	var only []string
+	cmd := &cobra.Command{
+		Use:     "compare [FILE]",
+		Short:   "Set each plan beside the network as it is, on the same seeds",
+		Example: "  ferrule compare coast.yaml --seeds 16 --cut tarn-holm@6s",
+		Args:    atMostOne,
+		RunE: func(cmd *cobra.Command, args []string) error {
+			if n < leastCompare || n > maxSeeds {
+				return fmt.Errorf("--seeds: %d is out of range; write %d to %d", n, leastCompare, maxSeeds)
+			}
+			sc, opt, err := c.begin(cmd, args)
+			if err != nil {
+				return err
+			}
+			plans, err := plansAgainst(sc, base, only)
+			if err != nil {
+				return err
+			}
+			started := time.Now()
+			r, err := sc.Compare(cmd.Context(), opt, base, plans, seedsFrom(opt.seed, n))
+			var audit *result.Audit
+			if r != nil {
+				audit = &r.Audit
+			}
+			return finish(cmd.Context(), c, started, r, audit, err)
+		},
+	}
+	c.flags(cmd)
+	c.seedFlag(cmd, "first seed; the others follow it")
+	cmd.Flags().StringVar(&base, "base", base, "plan the others are compared with")
+	cmd.Flags().StringArrayVar(&only, "plan", nil, "compare this plan only; may be repeated (default all)")
+	cmd.Flags().IntVar(&n, "seeds", n, "number of seeds, the same under every plan")
+	return cmd
+}
+
+// plansAgainst lists the plans to set beside base: those of only, or all.
+func plansAgainst(sc scenario, base string, only []string) ([]string, error) {
+	if err := planOf(sc, "base", base); err != nil {
+		return nil, err
+	}
+	for i, p := range only {
+		if err := planOf(sc, "plan", p); err != nil {
+			return nil, err
+		}
+		if p == base {
+			return nil, fmt.Errorf("--plan: %q is the base itself", p)
+		}
+		if slices.Contains(only[:i], p) {
+			return nil, fmt.Errorf("--plan: %q is given twice", p)
+		}
+	}
+	if only != nil {
+		return only, nil
+	}
+	plans := slices.DeleteFunc(slices.Clone(sc.Plans()), func(p string) bool { return p == base })
+	if len(plans) == 0 {
+		return nil, fmt.Errorf("the scenario has no plan to set beside %q; write one under plans:", base)
+	}
+	return plans, nil
+}

@@ -1,0 +1,117 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"io/fs"
+	"math"
+	"strings"
+	"testing/fstest"
+
+	"ferrule/scenarios/result"
+)
+
+// fakeStudio stands for the packages below. The first word of a scenario's
+// text says what its studies do; nothing is computed.
+type fakeStudio struct{}
+
+var fakeLibrary = fstest.MapFS{
+	"demo":       {Data: []byte("sound demo\n")},
+	"second":     {Data: []byte("sound second\n")},
+	"demand.csv": {Data: []byte("from,to,class,rate\n")},
+}
+
+func (fakeStudio) Library() []entry { return []entry{{"demo", "What it shows."}, {"second", "More."}} }
+
+func (fakeStudio) Open(name string) (input, error) {
+	if name == "" {
+		name = "demo"
+	}
+	data, err := fs.ReadFile(fakeLibrary, name)
+	return input{name: name, data: data, files: fakeLibrary}, err
+}
+
+func (fakeStudio) Load(in input) (scenario, error) {
+	kind, _, _ := strings.Cut(strings.TrimSpace(string(in.data)), " ")
+	if kind == "unsound" {
+		return nil, errors.New(in.name + `:3:9: sites[1].name: "x y" is not a name; use letters`)
+	}
+	if len(in.cuts) > 0 && in.cuts[0] == "nowhere" {
+		return nil, errors.New(`--cut nowhere: has no time; write NAME@6s`)
+	}
+	return &fakeScenario{kind: kind, in: in}, nil
+}
+
+type fakeScenario struct {
+	kind string
+	in   input
+}
+
+func (s *fakeScenario) Seed() uint64       { return 7 }
+func (s *fakeScenario) Matrices() []string { return []string{"demand.csv"} }
+
+func (s *fakeScenario) Plans() []string {
+	if s.kind == "planless" {
+		return []string{"as-is"}
+	}
+	return []string{"as-is", "express", "express-live"}
+}
+
+// outcome waits, fails, or returns the head and the audit of a study.
+func (s *fakeScenario) outcome(ctx context.Context) (result.Head, result.Audit, error) {
+	h := result.Head{Scenario: s.in.name + " " + strings.Join(append(s.in.sets, s.in.cuts...), " "), LengthS: 10}
+	a := result.Audit{OfferedPackets: 12345678, OK: true}
+	switch s.kind {
+	case "waits":
+		<-ctx.Done()
+		h.Partial = true
+		return h, a, ctx.Err()
+	case "fails":
+		return h, a, errors.New("calendar ran dry")
+	case "unaccounted":
+		a.OK, a.Failures = false, []string{"offered 3, accounted for 2"}
+	case "nan":
+		h.WarmUpS = math.NaN()
+	}
+	return h, a, nil
+}
+
+func (s *fakeScenario) Run(ctx context.Context, opt options) (*result.Run, error) {
+	if s.kind == "fails" || s.kind == "nothing" {
+		<-ctxOr(ctx, s.kind == "fails")
+		return nil, errors.Join(errors.New("calendar ran dry"), ctx.Err())
+	}
+	opt.progress(1, 2)
+	opt.log.Info("running")
+	h, a, err := s.outcome(ctx)
+	return &result.Run{Head: h, Plan: opt.plan, Seed: opt.seed, Audit: a}, err
+}
+
+// ctxOr is a channel that is closed now, or when ctx ends.
+func ctxOr(ctx context.Context, now bool) <-chan struct{} {
+	if !now {
+		return ctx.Done()
+	}
+	c := make(chan struct{})
+	close(c)
+	return c
+}
+
+func (s *fakeScenario) Batch(ctx context.Context, opt options, seeds []uint64) (*result.Batch, error) {
+	h, a, err := s.outcome(ctx)
+	return &result.Batch{Head: h, Plan: opt.plan, Seeds: seeds, Audit: a}, err
+}
+
+func (s *fakeScenario) Compare(ctx context.Context, opt options, base string, plans []string, seeds []uint64) (*result.Comparison, error) {
+	h, a, err := s.outcome(ctx)
+	c := &result.Comparison{Head: h, Base: base, Seeds: seeds, Audit: a}
+	for _, p := range plans {
+		c.Plans = append(c.Plans, result.Compared{Plan: p})
+	}
+	return c, err
+}
+
+func (s *fakeScenario) Check(ctx context.Context, opt options) (*result.Check, error) {
+	h, _, err := s.outcome(ctx)
+	return &result.Check{Head: h, Plan: opt.plan}, err
+}

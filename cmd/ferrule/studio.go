@@ -1,0 +1,59 @@
+package main
+
+import (
+	"context"
+	"io/fs"
+
+	"go.uber.org/zap"
+
+	"ferrule/scenarios/result"
+)
+
+// A studio is what the commands need of the packages below: it loads scenarios
+// and keeps a library of them. Tests put one in its place that computes
+// nothing.
+type studio interface {
+	// Load reads a scenario, lays sets over it and adds cuts to its timeline.
+	Load(in input) (scenario, error)
+
+	// Library lists the embedded scenarios.
+	Library() []entry
+
+	// Open returns an embedded scenario and the files beside it; "" names the
+	// demo.
+	Open(name string) (in input, err error)
+}
+
+// An entry is one embedded scenario.
+type entry struct{ name, about string }
+
+// An input is a scenario as text, with what the command line adds.
+type input struct {
+	name  string // stands for it in messages
+	data  []byte
+	files fs.FS    // read for matrices
+	sets  []string // path=value
+	cuts  []string // NAME[:120km]@6s[..9s]
+}
+
+// Options say how to study a scenario.
+type options struct {
+	plan     string
+	seed     uint64
+	cores    int // at least 1
+	log      *zap.Logger
+	progress func(done, total float64) // may be called from any goroutine
+}
+
+// A scenario is loaded and can be studied. When ctx ends first, a study
+// returns what is known, marked partial, or nil, and an error that is
+// ctx.Err().
+type scenario interface {
+	Seed() uint64       // as the file has it
+	Plans() []string    // as-is first
+	Matrices() []string // the files of demand it reads
+	Run(ctx context.Context, opt options) (*result.Run, error)
+	Batch(ctx context.Context, opt options, seeds []uint64) (*result.Batch, error)
+	Compare(ctx context.Context, opt options, base string, plans []string, seeds []uint64) (*result.Comparison, error)
+	Check(ctx context.Context, opt options) (*result.Check, error)
+}
