@@ -8,6 +8,10 @@
 // not depend on the network, such as the gaps of an open-loop source. It is a
 // plain value: copying it clones it, and two copies go on identically.
 //
+// The bits of draws and streams are the same on every platform. Laws also use
+// the exponential and logarithm of package math, and [Gamma] the methods of
+// distuv, whose last digit may differ between processor architectures.
+//
 // Nothing here is global, starts a goroutine or reads a clock. Draws allocate
 // nothing.
 package random

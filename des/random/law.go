@@ -28,8 +28,8 @@ type Law interface {
 // Kind says which family a law belongs to.
 type Kind uint8
 
-// The kinds of law and the parameters each takes; Check of a parameter's range
-// is part of [Spec.Law].
+// The kinds of law and the parameters each takes; [Spec.Law] checks their
+// ranges.
 const (
 	Constant    Kind = iota // Mean
 	Uniform                 // From, To

@@ -42,7 +42,7 @@ func TwoMomentWait(lambda, scvGap, meanService, scvService float64) float64 {
 // Source: K. Marshall, Oper. Res. 16 (1968).
 func DepartureSCV(rho, scvGap, scvService float64) float64 {
 	need(rho >= 0 && rho <= 1, "a load must lie in [0, 1]")
-	return float64((1-rho*rho)*scvGap) + float64(rho*rho*scvService)
+	return float64((1-float64(rho*rho))*scvGap) + float64(rho*rho*scvService)
 }
 
 // A GIM1 is a solved queue with independent gaps of any law and exponential

@@ -119,7 +119,7 @@ func RoundedExponential(mean float64) (m1, m2, m3 float64) {
 	s0 := half * q / r                   // sum over n >= 1 of q^(n+1/2)
 	s1 := s0 / r                         // of n q^(n+1/2)
 	s2 := half * q * (1 + q) / r / r / r // of n^2 q^(n+1/2)
-	return 1 + s0, 1 + 2*s1 + s0, 1 + 3*s2 + 3*s1 + s0
+	return 1 + s0, 1 + 2*s1 + s0, 1 + float64(3*s2) + float64(3*s1) + s0
 }
 
 // Scaled returns the moments of c times a quantity: a service time from a
