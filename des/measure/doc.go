@@ -8,4 +8,8 @@
 // assignment; [Hist] has a Clone method. Meters that count are integers, so
 // merging them is exact and does not depend on the order. Nothing here draws
 // random numbers, and nothing may be shared between goroutines.
+//
+// Quantiles of distributions come from gonum, whose products are not pinned
+// against fused multiply-add: the last digits of half-widths and p values may
+// differ between processor architectures, those of the meters do not.
 package measure
