@@ -163,6 +163,8 @@ func finish[T any, R interface {
 		return &failure{statusInterrupted, errors.New("interrupted before there was a result")}
 	case err != nil:
 		return failed(err)
+	case r == nil:
+		return failed(errors.New("the study gave no result"))
 	case audit != nil && !audit.OK:
 		return failed(fmt.Errorf("the audit failed:\n%s", strings.Join(audit.Failures, "\n")))
 	default:

@@ -81,6 +81,9 @@ func (s *fakeScenario) Run(ctx context.Context, opt options) (*result.Run, error
 		<-ctxOr(ctx, s.kind == "fails")
 		return nil, errors.Join(errors.New("calendar ran dry"), ctx.Err())
 	}
+	if s.kind == "empty" {
+		return nil, nil
+	}
 	opt.progress(1, 2)
 	opt.log.Info("running")
 	h, a, err := s.outcome(ctx)

@@ -28,6 +28,9 @@ func (d *doc) run(r *result.Run) {
 }
 
 func (d *doc) periods(ps []result.Period) {
+	if len(ps) == 0 {
+		return
+	}
 	d.heading(word("PERIODS"))
 	g := columns(abbreviated("period"), left("kind"), right("from"), right("to"), wrapped("opened by"), left("settled"))
 	for _, p := range ps {
