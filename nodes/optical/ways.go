@@ -60,6 +60,9 @@ func (w *Ways) Passes(l *Light, e int32, a, b nodes.SiteID, sent des.Time) bool 
 		}
 		fibre := &w.plant.Fibres[f]
 		for _, s := range l.Spans(int(f)) {
+			if !s.Dirs.Has(fibre.From(a)) {
+				continue
+			}
 			place := s.Place
 			if fibre.From(a) == nodes.Back {
 				place = fibre.Delay - place

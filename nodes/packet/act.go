@@ -5,6 +5,7 @@ import (
 
 	"ferrule/des"
 	"ferrule/nodes"
+	"ferrule/nodes/optical"
 )
 
 // ActKind is what an outside act does.
@@ -27,11 +28,13 @@ type Act struct {
 	Name   string        // for the log and the periods; may be empty
 	Fibre  nodes.FibreID // cut, repair
 	Where  des.Time      // cut: light from the fibre's first end to the place
-	Ways   []uint16      // scale
-	Factor float64       // scale
-	Site   nodes.SiteID  // order: where the controller stands
-	Ref    any           // order: what it is told
-	where  des.Time      // settled: the quiet since
+	OneWay bool          // cut: only direction Dir goes dark
+	Dir    nodes.Direction
+	Ways   []uint16     // scale
+	Factor float64      // scale
+	Site   nodes.SiteID // order: where the controller stands
+	Ref    any          // order: what it is told
+	where  des.Time     // settled: the quiet since
 }
 
 // dated is an act in the agenda of acts.
@@ -173,10 +176,17 @@ func (n *Network) cut(now des.Time, a *Act) {
 	if !n.light.Dark(int(f), now) {
 		n.broken++
 	}
-	span := n.light.Cut(int(f), a.Where, now)
+	dirs := optical.DirBoth
+	if a.OneWay {
+		dirs = 1 << a.Dir
+	}
+	span := n.light.Cut(int(f), a.Where, now, dirs)
 	n.ways.Changed(now, func(g nodes.FibreID) bool { return n.light.Dark(int(g), now) })
 	n.log = append(n.log, nodes.Event{At: now, Site: nodes.None, What: "cut", Subject: fibre.Name, Detail: fmt.Sprintf("at %v of light from %s", a.Where, n.plant.Sites[fibre.Ends[0]].Name)})
 	for i, end := range fibre.Ends {
+		if !dirs.Has(fibre.From(fibre.Other(end))) {
+			continue
+		}
 		gone := a.Where
 		if i == 1 {
 			gone = fibre.Delay - a.Where
@@ -184,6 +194,9 @@ func (n *Network) cut(now des.Time, a *Act) {
 		n.sites[end].book(nodes.Message{At: now + gone + n.cfg.Detect, From: end, To: end, Op: nodes.OpFibreDark, Fibre: f, N: int32(span), Settles: true})
 	}
 	n.eachPipe(f, func(to *Site, p *pipe, before des.Time, dir nodes.Direction) {
+		if !dirs.Has(dir) {
+			return
+		}
 		place := a.Where
 		if dir == nodes.Back {
 			place = fibre.Delay - place
@@ -210,6 +223,9 @@ func (n *Network) repair(now des.Time, a *Act) {
 	n.log = append(n.log, nodes.Event{At: now, Site: nodes.None, What: "repair", Subject: fibre.Name})
 	last := n.light.Spans(int(f))[spans[len(spans)-1]]
 	for i, end := range fibre.Ends {
+		if !last.Dirs.Has(fibre.From(fibre.Other(end))) {
+			continue
+		}
 		gone := last.Place
 		if i == 1 {
 			gone = fibre.Delay - gone
@@ -222,7 +238,7 @@ func (n *Network) repair(now des.Time, a *Act) {
 			place = fibre.Delay - place
 		}
 		p.lighten(f, now)
-		if p.open {
+		if p.open && last.Dirs.Has(dir) {
 			to.book(nodes.Message{At: now + p.delay - before - place + n.cfg.Detect, From: to.id, To: to.id, Op: nodes.OpLightBack, Circuit: p.circuit, N: p.incarnation, Settles: true})
 		}
 	})

@@ -252,6 +252,9 @@ func (n *Network) register(p *pipe, now des.Time) {
 	for _, f := range p.fibres {
 		fibre := &n.plant.Fibres[f]
 		for i, sp := range n.light.Spans(int(f)) {
+			if !sp.Dirs.Has(fibre.From(at)) {
+				continue
+			}
 			place := sp.Place
 			if fibre.From(at) == nodes.Back {
 				place = fibre.Delay - place

@@ -198,7 +198,7 @@ func (s *Site) handle(now des.Time, m nodes.Message) {
 			return
 		}
 	case m.Op == nodes.OpFibreLit:
-		if n.light.Dark(int(m.Fibre), now-des.Time(m.A)) {
+		if n.light.DarkTowards(int(m.Fibre), now-des.Time(m.A), n.plant.Fibres[m.Fibre].From(n.plant.Fibres[m.Fibre].Other(s.id))) {
 			return
 		}
 	}

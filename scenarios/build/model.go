@@ -1,0 +1,135 @@
+package build
+
+import (
+	"fmt"
+
+	"ferrule/controller"
+	"ferrule/controller/central"
+	"ferrule/des"
+	"ferrule/nodes"
+	"ferrule/nodes/packet"
+	"ferrule/scenarios"
+	"ferrule/workloads"
+)
+
+// Model is one replication, ready to run.
+type Model struct {
+	Scenario *scenarios.Scenario
+	Plan     *scenarios.Plan
+	Plant    *nodes.Plant
+	Network  *packet.Network
+	Control  *central.Net
+	Steps    []Step
+	Asked    []float64 // by way: the load its source means to send, bit/s of IP bytes
+	Seed     uint64
+}
+
+// New builds a replication of sc under plan. Which fits and which does not is
+// found here: an error says what, by name, as a user can mend it.
+func New(sc *scenarios.Scenario, plan *scenarios.Plan, seed uint64) (*Model, error) {
+	m := &Model{Scenario: sc, Plan: plan, Seed: seed}
+	var err error
+	if m.Plant, err = Plant(sc, plan); err != nil {
+		return nil, err
+	}
+	cfg := packet.Config{
+		Plant: m.Plant, Seed: seed, WarmUp: sc.Run.WarmUp, Length: sc.Run.Length,
+		Detect: sc.Timing.Detect, Converge: sc.Timing.Converge, MessageLoss: sc.Timing.LossOfMessage,
+	}
+	for i := range sc.Sites {
+		f, err := forwarding(&sc.Sites[i])
+		if err != nil {
+			return nil, err
+		}
+		cfg.Forwarding = append(cfg.Forwarding, f)
+	}
+	m.Asked = make([]float64, 2*len(sc.Aggregates))
+	for i := range sc.Aggregates {
+		for d := range nodes.Direction(2) {
+			if d == nodes.Back && !sc.Aggregates[i].BothWays {
+				continue
+			}
+			s, err := source(sc, nodes.AggID(i), d, seed)
+			if err != nil {
+				return nil, err
+			}
+			way := nodes.WayOf(nodes.AggID(i), d)
+			m.Asked[way] = s.MeanRate()
+			cfg.Sources = append(cfg.Sources, packet.Source{Way: way, Source: s})
+		}
+	}
+	if m.Network, err = packet.New(cfg); err != nil {
+		return nil, err
+	}
+	return m, m.control()
+}
+
+// control starts the controller and books the acts.
+func (m *Model) control() error {
+	sc := m.Scenario
+	steps, outside, orders, err := acts(sc, m.Plan, m.Plant)
+	if err != nil {
+		return err
+	}
+	m.Steps = steps
+	command, err := sc.Timing.Command.Law()
+	if err != nil {
+		return fmt.Errorf("command: %w", err)
+	}
+	cfg := central.Config{
+		Site: sc.Controller.At, Seed: m.Seed, Compute: sc.Controller.Compute, Retry: sc.Controller.Retry, Attempts: sc.Controller.Attempts,
+		Command: command, CommandsAtOnce: sc.Timing.CommandsAtOnce, Sequence: sc.Timing.Commands == scenarios.CommandsSequence,
+		TrafficReady: sc.Timing.TrafficReady, WaitToRestore: sc.Timing.WaitToRestore,
+	}
+	for i := range sc.Requests {
+		s, err := m.stream(&sc.Requests[i])
+		if err != nil {
+			return err
+		}
+		cfg.Streams = append(cfg.Streams, s)
+	}
+	m.Control = central.New(m.Plant, cfg, orders)
+	m.Network.SetAgents(m.Control.Agents)
+	locals := make([]nodes.Local, len(m.Plant.Sites))
+	for i := range locals {
+		locals[i] = m.Network.Local(nodes.SiteID(i))
+	}
+	var moves []controller.Order
+	for _, c := range m.Plan.Moves {
+		agg, d := nodes.AggOf(c.Way)
+		moves = append(moves, controller.Order{Kind: controller.Move, Name: WayName(&sc.Aggregates[agg], d), Ways: []uint16{c.Way}, Circuits: c.Chain})
+	}
+	if err := m.Control.Start(locals, moves); err != nil {
+		return fmt.Errorf("%s: plan %s: %w", sc.File, m.Plan.Name, err)
+	}
+	m.Network.Begin()
+	for _, a := range outside {
+		m.Network.Schedule(a)
+	}
+	for i := range orders {
+		name := ""
+		for _, s := range steps {
+			if s.Order == i {
+				name = fmt.Sprintf("%s %s", s.Act.Verb, s.Act.Subject)
+			}
+		}
+		m.Network.Schedule(packet.Act{At: orders[i].At, Kind: packet.ActOrder, Name: name, Site: cfg.Site, Ref: &orders[i]})
+	}
+	return nil
+}
+
+func (m *Model) stream(r *scenarios.Request) (central.Stream, error) {
+	req, err := workloads.NewRequests(workloads.RequestsConfig{
+		Name: r.Name, Seed: m.Seed, Stop: m.Scenario.Run.Length, Rate: r.PerSecond, Hold: inSeconds(r.Hold),
+	})
+	if err != nil {
+		return central.Stream{}, fmt.Errorf("%s:%d: requests %s: %w", r.Pos.File, r.Pos.Line, r.Name, err)
+	}
+	return central.Stream{Name: r.Name, Ends: [2]nodes.SiteID{r.A, r.B}, Slots: r.Slots, Choose: r.Choose, Demand: demand{req}}, nil
+}
+
+// Clone implements central.Demand.
+func (d demand) Clone() central.Demand { return demand{d.Requests.Clone()} }
+
+// Kernel prepares to run the model on exec.
+func (m *Model) Kernel(exec des.Executor) *des.Kernel { return des.NewKernel(m.Network, exec) }

@@ -1,0 +1,139 @@
+package build
+
+import (
+	"fmt"
+	"math"
+
+	"ferrule/des"
+	"ferrule/des/random"
+	"ferrule/nodes"
+	"ferrule/scenarios"
+	"ferrule/workloads"
+)
+
+func psTime(ps float64) des.Time { return des.Time(math.Round(ps)) }
+
+// inSeconds converts a law of times from picoseconds to seconds.
+func inSeconds(s random.Spec) random.Spec {
+	const ps = float64(des.Second)
+	s.Mean /= ps
+	s.Median /= ps
+	s.P95 /= ps
+	s.P99 /= ps
+	s.Scale /= ps
+	s.From /= ps
+	s.To /= ps
+	s.Min /= ps
+	s.AtMost /= ps
+	values := make([]float64, len(s.Values))
+	for i, v := range s.Values {
+		values[i] = v / ps
+	}
+	if s.Values != nil {
+		s.Values = values
+	}
+	return s
+}
+
+// A constructor makes the source of one way from what the file says of it.
+type constructor func(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error)
+
+// constructors is the one table from the models of files to sources.
+var constructors = [...]constructor{
+	scenarios.ModelConstant: func(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+		return workloads.NewStream(workloads.StreamConfig{Common: c, Gaps: workloads.Constant, Size: t.Packet})
+	},
+	scenarios.ModelPoisson: func(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+		return workloads.NewStream(workloads.StreamConfig{Common: c, Gaps: workloads.Poisson, Size: t.Packet})
+	},
+	scenarios.ModelVoice: voice,
+	scenarios.ModelVideo: video,
+	scenarios.ModelFiles: func(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+		return workloads.NewFiles(workloads.FilesConfig{Common: c, Size: t.Size, Pace: t.Pace})
+	},
+}
+
+func voice(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+	v := workloads.VoiceConfig{Common: c, Codec: workloads.G711}
+	if t.Codec == "G.729" {
+		v.Codec = workloads.G729
+	}
+	switch t.FlowsArrive {
+	case scenarios.FlowsNone:
+		v.Pattern = workloads.Standing
+	case scenarios.FlowsPoisson:
+		v.Pattern = workloads.Random
+	case scenarios.FlowsRegular:
+		v.Pattern = workloads.Regular
+	default:
+		panic(fmt.Sprintf("build: unknown arrival of flows %d", t.FlowsArrive))
+	}
+	if v.Pattern != workloads.Standing {
+		v.Hold = inSeconds(t.Hold)
+	}
+	if a.Flows > 0 {
+		if v.Pattern == workloads.Standing {
+			v.Load, v.Calls = 0, a.Flows
+		} else {
+			v.Load = nodes.Rate(math.Round(float64(a.Flows) * v.CallRate()))
+		}
+	}
+	return workloads.NewVoice(v)
+}
+
+func video(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+	v := workloads.VideoConfig{Common: c, Rate: t.Rate, Frames: t.Frames}
+	if t.GroupOfPictures > 0 {
+		v.Pattern = pictures(t.GroupOfPictures)
+	}
+	return workloads.NewVideo(v)
+}
+
+// pictures is a group of n frames: an I frame, then every third a P frame and
+// the others B frames.
+func pictures(n int) string {
+	b := make([]byte, n)
+	for i := range b {
+		switch {
+		case i == 0:
+			b[i] = 'I'
+		case i%3 == 0:
+			b[i] = 'P'
+		default:
+			b[i] = 'B'
+		}
+	}
+	return string(b)
+}
+
+// WayName names one way of an aggregate, as results do.
+func WayName(a *scenarios.Aggregate, d nodes.Direction) string {
+	switch {
+	case !a.BothWays:
+		return a.Name
+	case d == nodes.Out:
+		return a.Name + ".out"
+	}
+	return a.Name + ".back"
+}
+
+// source makes the source of one way of an aggregate.
+func source(sc *scenarios.Scenario, id nodes.AggID, d nodes.Direction, seed uint64) (workloads.Source, error) {
+	a := &sc.Aggregates[id]
+	t := &sc.Traffic[a.Traffic]
+	c := workloads.Common{
+		Name: WayName(a, d), Way: nodes.WayOf(id, d), Seed: seed,
+		Start: max(a.Start, t.Start), Stop: min(a.Stop, t.Stop), Load: a.Load,
+	}
+	if a.Flows > 0 {
+		c.Load = nodes.Rate(a.Flows) * t.Rate
+	}
+	s, err := constructors[t.Model](c, a, t)
+	if err != nil {
+		return nil, fmt.Errorf("%s:%d: aggregate %s: %w", a.Pos.File, a.Pos.Line, a.Name, err)
+	}
+	return s, nil
+}
+
+// demand makes a workload of requests what the controller takes.
+type demand struct{ *workloads.Requests }
