@@ -66,8 +66,8 @@ func (r *resolver) resolveClasses() {
 		total += c.Weight
 		c.BufferTime, c.BufferBytes = defaultBuffer, 0
 		if raw.Buffer != nil {
-			c.BufferTime, c.BufferBytes = raw.Buffer.Time, raw.Buffer.Bytes
-			if c.BufferTime == 0 && c.BufferBytes == 0 || c.BufferTime > des.Hour {
+			c.BufferTime, c.BufferBytes, c.BufferPackets = raw.Buffer.Time, raw.Buffer.Bytes, raw.Buffer.Packets
+			if c.BufferTime == 0 && c.BufferBytes == 0 && c.BufferPackets == 0 || c.BufferTime > des.Hour {
 				p.field("buffer").fault("write for instance 50ms or 64kB", "a buffer holds something, and an hour at most")
 			}
 		} else {

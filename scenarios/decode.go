@@ -77,7 +77,12 @@ func (t *tree) decodeLeaf(d *mapstructure.DecodeError) bool {
 	var f *fault
 	if errors.As(d, &f) {
 		for _, key := range f.under {
-			p = p.field(key)
+			var i int
+			if _, err := fmt.Sscanf(key, "[%d]", &i); err == nil {
+				p = p.item(i)
+			} else {
+				p = p.field(key)
+			}
 		}
 		pos := p.pos()
 		if f.onKey {
@@ -174,8 +179,8 @@ func decodeValue(data any, typ reflect.Type) (out any, f *fault, done bool) {
 		v, f := decodeRatio(data)
 		return ratio(v), f, true
 	case reflect.TypeFor[percent]():
-		v, f := suffixed(fmt.Sprint(data), "%", "a percentage")
-		return percent(v / 100), f, true
+		v, f := decodePercent(data)
+		return v, f, true
 	case reflect.TypeFor[frequency]():
 		v, f := suffixed(fmt.Sprint(data), "/s", "a number per second")
 		return frequency(v), f, true
@@ -248,10 +253,17 @@ func (m *measure) positive(data any) (int64, *fault) {
 	return v, f
 }
 
-// decodeBuffer reads a buffer as time or as data.
+// decodeBuffer reads a buffer as time, as data, or as a number of packets.
 func decodeBuffer(data any) (buffer, *fault) {
 	if s, ok := data.(string); ok {
-		if _, name := splitNumber(s); name != "" {
+		if num, name := splitNumber(s); name != "" {
+			if name == "packets" || name == "packet" {
+				n, err := strconv.Atoi(num)
+				if err != nil || n < 1 || n > 1e9 {
+					return buffer{}, &fault{msg: fmt.Sprintf("%q is not a number of packets", s), hint: "write a whole number from 1, such as 9 packets"}
+				}
+				return buffer{Packets: n}, nil
+			}
 			if _, ok := bytesMeasure.find(name); ok {
 				v, f := bytesMeasure.positive(data)
 				return buffer{Bytes: nodes.Bytes(v)}, f
@@ -260,9 +272,20 @@ func decodeBuffer(data any) (buffer, *fault) {
 	}
 	v, f := timeMeasure.positive(data)
 	if f != nil && f.hint != "" {
-		f.hint += "; or an amount of data, such as 64kB"
+		f.hint += "; an amount of data, such as 64kB; or 9 packets"
 	}
 	return buffer{Time: des.Time(v)}, f
+}
+
+// decodePercent reads a percentage; a small number without its sign was most
+// likely meant as a factor.
+func decodePercent(data any) (percent, *fault) {
+	const factor = 10
+	v, f := suffixed(fmt.Sprint(data), "%", "a percentage")
+	if x, bad := plainNumber(data); bad == nil && f != nil && x > 0 && x <= factor {
+		f.hint = fmt.Sprintf("write %g%%", x*100)
+	}
+	return percent(v / 100), f
 }
 
 // decodeRatio reads a number in [0, 1], or a percentage.

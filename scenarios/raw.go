@@ -235,8 +235,9 @@ type (
 		Auto   bool
 	}
 	buffer struct {
-		Time  des.Time
-		Bytes nodes.Bytes
+		Time    des.Time
+		Bytes   nodes.Bytes
+		Packets int
 	}
 	anything struct{ given bool } // is not read yet
 )

@@ -66,15 +66,16 @@ type Timing struct {
 
 // Class is a class of service.
 type Class struct {
-	Name        string
-	Pos         Pos
-	DSCP        uint8 // 0..63 (RFC 2474)
-	Queue       nodes.Queueing
-	Weight      int         // per cent of what strict classes leave; 0 unless nodes.QueueWeight
-	BufferTime  des.Time    // buffer as time at the port's rate; 0 if BufferBytes is given
-	BufferBytes nodes.Bytes // buffer as data; 0 if BufferTime is given
-	Traffic     int         // index in Scenario.Traffic, or nodes.None
-	Objective   []Limit     // in the order of the Figure constants
+	Name          string
+	Pos           Pos
+	DSCP          uint8 // 0..63 (RFC 2474)
+	Queue         nodes.Queueing
+	Weight        int         // per cent of what strict classes leave; 0 unless nodes.QueueWeight
+	BufferTime    des.Time    // buffer as time at the port's rate; 0 if BufferBytes is given
+	BufferBytes   nodes.Bytes // buffer as data; 0 if BufferTime is given
+	BufferPackets int         // buffer as a number of waiting packets; 0 if another is given
+	Traffic       int         // index in Scenario.Traffic, or nodes.None
+	Objective     []Limit     // in the order of the Figure constants
 }
 
 // Limit is one objective of a class: a figure and what it must not exceed.
