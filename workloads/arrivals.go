@@ -47,7 +47,7 @@ func spacingOf(gap float64) spacing {
 		return spacing{}
 	}
 	whole := math.Floor(gap)
-	return spacing{des.Time(whole), uint64((gap - whole) * (1 << 32)), 1 << 32}
+	return spacing{des.Time(whole), uint64(float64((gap-whole)*(1<<32)) + 0.5), 1 << 32}
 }
 
 // exactSpacing returns the gap of units of n bits at r, without error. n is

@@ -3,8 +3,9 @@
 //
 // Each model has a plain configuration (StreamConfig, VoiceConfig,
 // VideoConfig, FilesConfig, RequestsConfig) whose Check fills the defaults and
-// reports every fault, and a source that [New] or the model's own constructor
-// makes of it. A source follows the contract of nodes.Source. All sources are
+// reports every fault, and a constructor that makes a source of it. A source
+// of packets follows the contract of nodes.Source; calls of Scale must come in
+// order of their instants, else it panics. All sources are
 // open loop: what they send does not depend on what the network does with it,
 // so as-is and plan meet the same packets, born at the same instants.
 //

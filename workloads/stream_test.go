@@ -205,7 +205,7 @@ func TestMeanSizes(t *testing.T) {
 }
 
 func TestStreamOffersWhatIsAsked(t *testing.T) {
-	for _, size := range []random.Spec{imix, {Kind: random.Exponential, Mean: 3}, {Mean: 900}} {
+	for _, size := range []random.Spec{imix, {Kind: random.Exponential, Mean: 30}, {Mean: 900}} {
 		for _, gaps := range []Gaps{Poisson, Constant} {
 			c := StreamConfig{Common: Common{Load: 80 * nodes.Mbps}, Gaps: gaps, Size: size}
 			mean, half := replicate(30, func(seed uint64) float64 {

@@ -156,7 +156,7 @@ func (t *train) earlier() []flow {
 	var flows []flow
 	gone, looked := 0.0, int64(0) // draws up to gone have ended when looked packets are sent
 	for i := uint64(0); ; i++ {
-		age := float64(i+1)*t.arrivals.gap - float64(t.arrivals.next-t.start)
+		age := float64(float64(i+1)*t.arrivals.gap) - float64(t.arrivals.next-t.start)
 		sent := int64(math.Ceil(age / float64(t.interval)))
 		if sent > t.flows.most() {
 			return flows
@@ -170,7 +170,7 @@ func (t *train) earlier() []flow {
 		}
 		x := t.flows.law.At(u)
 		if left := t.flows.count(x) - sent; left > 0 {
-			due := t.start + des.Time(float64(sent)*float64(t.interval)-age)
+			due := t.start + des.Time(float64(float64(sent)*float64(t.interval))-age)
 			flows = append(flows, flow{due, left, uint32(i), t.lastOf(x)})
 		}
 	}
