@@ -57,9 +57,7 @@ func (r *resolver) circuit(p *place, raw *rawCircuit) Circuit {
 		c.Metric = int64(within(p.field("metric"), raw.Metric, 1, 1<<40, 1, plain))
 	}
 	c.SetUpPriority, c.HoldingPriority = r.priorities(p, raw.SetUpPriority, raw.HoldingPriority, nodes.None)
-	if c.Size == SizeChannel && raw.Channel != nil {
-		r.channelFits(p, &c, *raw.Channel)
-	}
+	r.fits(p, &c, value(raw.Channel, 0))
 	return c
 }
 
@@ -175,12 +173,17 @@ func (r *resolver) walk(p *place, ids []nodes.FibreID, a, b nodes.SiteID) []node
 	return ids
 }
 
-// channelFits checks a wavelength circuit against the fibres of its route.
-func (r *resolver) channelFits(p *place, c *Circuit, rate nodes.Rate) {
+// fits checks the size of a circuit against the channels of its route; channel
+// is the rate of a whole wavelength.
+func (r *resolver) fits(p *place, c *Circuit, channel nodes.Rate) {
 	for i, id := range c.Along {
-		if f := &r.s.Fibres[id]; f.ChannelRate != rate {
-			p.field("along").item(i).fault("write channel: "+FormatRate(f.ChannelRate),
-				"the channels of %s have %s, not %s", f.Name, FormatRate(f.ChannelRate), FormatRate(rate))
+		f, q := &r.s.Fibres[id], p.field("along").item(i)
+		switch n, _ := channelSlots(f.ChannelRate); {
+		case c.Size == SizeChannel && f.ChannelRate != channel:
+			q.fault("write channel: "+FormatRate(f.ChannelRate),
+				"the channels of %s have %s, not %s", f.Name, FormatRate(f.ChannelRate), FormatRate(channel))
+		case c.Slots > n:
+			q.fault("ask for fewer slots", "a channel of %s has %d slots, and the circuit needs %d of one channel", f.Name, n, c.Slots)
 		}
 	}
 }
@@ -204,8 +207,11 @@ func (r *resolver) apart(p *place, text string, c *Circuit, all *index) {
 		}
 		if name == c.Name {
 			q.fault("name another", "a circuit cannot be apart from itself")
-		} else if id := all.find(q, name); id >= 0 {
+		} else if id, ok := all.ids[name]; ok {
 			c.ApartFrom = append(c.ApartFrom, nodes.CircuitID(id))
+		} else {
+			others := slices.DeleteFunc(slices.Clone(all.names[:min(len(all.names), 2000)]), func(n string) bool { return n == c.Name })
+			q.fault(didYouMean(name, others), "no circuit is called %q", name)
 		}
 	}
 }

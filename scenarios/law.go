@@ -155,6 +155,7 @@ func list(data any, one func(any) (float64, *fault)) ([]float64, *fault) {
 	for i, x := range xs {
 		v, f := one(x)
 		if f != nil {
+			f.under = []string{fmt.Sprintf("[%d]", i)}
 			return nil, f
 		}
 		out[i] = v

@@ -167,9 +167,11 @@ func (x *index) find(p *place, name string) int {
 // hint suggests a name.
 func (x *index) hint(name string) string {
 	const few = 2000 // for the sake of time
-	names := x.names[:min(len(x.names), few)]
-	if len(names) == 0 {
-		return ""
+	var names []string
+	for i, n := range x.names[:min(len(x.names), few)] {
+		if x.ids[n] == i && n != "" { // the first of that name
+			names = append(names, n)
+		}
 	}
 	return didYouMean(name, names)
 }
@@ -201,7 +203,11 @@ func goodName(name string) bool {
 // missing notes that a key of the mapping at p is not given, unless something
 // was wrong in that mapping anyway.
 func (r *resolver) missing(p *place, key, hint string) {
-	if p.node != nil && r.spoilt[p.node] {
+	near := p
+	for near.node == nil && near.up != nil {
+		near = near.up
+	}
+	if r.spoilt[near.node] {
 		return
 	}
 	r.t.faults.add(p.pos(), join(p.key(), key), "is missing", hint)

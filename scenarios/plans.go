@@ -182,7 +182,6 @@ func oriented(chain []nodes.CircuitID, reverse bool) []nodes.CircuitID {
 func (r *resolver) capacity(circuits []Circuit, plan *Plan) {
 	type use struct {
 		slots, channels int
-		last            *Circuit
 	}
 	used := make([]use, len(r.s.Fibres))
 	for i := range circuits {
@@ -192,7 +191,6 @@ func (r *resolver) capacity(circuits []Circuit, plan *Plan) {
 		}
 		for _, id := range c.Along {
 			u := &used[id]
-			u.last = c
 			if c.Size == SizeChannel {
 				u.channels++
 			} else {
@@ -211,12 +209,12 @@ func (r *resolver) capacity(circuits []Circuit, plan *Plan) {
 		}
 		if u.slots > f.Slots {
 			r.overfull(plan == nil, i)
-			r.t.faults.add(pos, key, fmt.Sprintf("circuits in place take %d slots of %s, and its %d lit channels have %d", u.slots, f.Name, f.Lit, f.Slots),
+			r.t.faults.add(pos, key, fmt.Sprintf("circuits in place take %d slots of %s, whose lit channels have %d", u.slots, f.Name, f.Slots),
 				"light more channels, or ask for fewer slots")
 		}
 		if free := f.Channels - f.Lit; u.channels > free {
 			r.overfull(plan == nil, i)
-			r.t.faults.add(pos, key, fmt.Sprintf("circuits in place take %d whole channels of %s, and %d are not lit", u.channels, f.Name, free),
+			r.t.faults.add(pos, key, fmt.Sprintf("circuits in place take %d whole channels of %s, which has %d that are not lit", u.channels, f.Name, free),
 				"have more channels, or light fewer")
 		}
 	}

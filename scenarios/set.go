@@ -142,7 +142,7 @@ func (o *option) key(n *yaml.Node, typ reflect.Type, path, rest string) bool {
 func (o *option) element(n *yaml.Node, typ reflect.Type, path, rest string) bool {
 	names := make([]string, len(n.Content))
 	for i, c := range n.Content {
-		if names[i] = elementName(c); names[i] == "" {
+		if names[i] = elementName(c, typ == reflect.TypeFor[rawFibre]()); names[i] == "" {
 			names[i] = fmt.Sprint(i)
 		}
 	}
@@ -165,8 +165,8 @@ func (o *option) element(n *yaml.Node, typ reflect.Type, path, rest string) bool
 
 // elementName is what an element of a list is called: its name, or for a fibre
 // without one its ends.
-func elementName(n *yaml.Node) string {
-	if name := nameOf(n); name != "" || n == nil || n.Kind != yaml.MappingNode {
+func elementName(n *yaml.Node, fibre bool) string {
+	if name := nameOf(n); name != "" || !fibre || n == nil || n.Kind != yaml.MappingNode {
 		return name
 	}
 	if i := find(n, "between"); i >= 0 && len(n.Content[i+1].Content) == 2 {

@@ -91,24 +91,27 @@ func marks(data []byte) int {
 	return n
 }
 
-// nested is the greatest number of brackets open at once, and of marks of
-// lists within lists on one line.
+// nested is the greatest number of brackets open at once, of marks of lists
+// within lists on one line, and of spaces before a line.
 func nested(data []byte) int {
-	most, open, dashes := 0, 0, 0
+	most, open, dashes, indent, begins := 0, 0, 0, 0, true
 	for i, c := range data {
+		if begins = begins && c == ' '; begins {
+			indent++
+		}
 		switch c {
 		case '[', '{':
 			open++
 		case ']', '}':
 			open = max(0, open-1)
 		case '\n':
-			dashes = 0
+			dashes, indent, begins = 0, 0, true
 		case '-', '?':
 			if i+1 < len(data) && data[i+1] == ' ' {
 				dashes++
 			}
 		}
-		most = max(most, open, dashes)
+		most = max(most, open, dashes, indent)
 	}
 	return most
 }
@@ -216,7 +219,7 @@ func (p *place) key() string {
 	}
 	up := p.up.key()
 	if p.name == "" {
-		if name := elementName(p.node); name != "" {
+		if name := elementName(p.node, p.up.name == "fibres"); name != "" {
 			return up + "." + name
 		}
 		return fmt.Sprintf("%s[%d]", up, p.idx)

@@ -146,7 +146,7 @@ func (l *actList) move(p, q *place, raw *rawAct, a *Act) {
 	if !sound || len(a.Onto) == 0 || len(a.Onto) != len(onto.node.Content) {
 		return
 	}
-	misfits, first := 0, ""
+	misfits, first, last := 0, "", nodes.AggID(nodes.None)
 	for i := range a.Moved {
 		m := &a.Moved[i]
 		agg, dir := nodes.AggOf(m.Way)
@@ -161,6 +161,10 @@ func (l *actList) move(p, q *place, raw *rawAct, a *Act) {
 		if m.Reverse = l.leads(a.Onto, to, from); m.Reverse {
 			continue
 		}
+		if agg == last {
+			continue
+		}
+		last = agg
 		if misfits++; first == "" {
 			first = fmt.Sprintf("%s goes from %s to %s", g.Name, r.s.Sites[from].Name, r.s.Sites[to].Name)
 		}
@@ -168,7 +172,7 @@ func (l *actList) move(p, q *place, raw *rawAct, a *Act) {
 	if misfits == 1 {
 		onto.fault("name circuits that join these sites", "%s, and the circuits do not", first)
 	} else if misfits > 1 {
-		onto.fault("name circuits that join these sites", "%s, and the circuits do not; nor for %d other ways", first, misfits-1)
+		onto.fault("name circuits that join these sites", "%s, and the circuits do not; nor do they suit %d more aggregates", first, misfits-1)
 	}
 }
 
