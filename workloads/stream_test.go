@@ -68,17 +68,19 @@ func BenchmarkStream(b *testing.B) {
 // The k-th packet of a constant stream of whole sizes is born exactly
 // floor(k·size·8/rate) after the first, however uneven the rate.
 func TestConstantGapsAreExact(t *testing.T) {
-	const rate, size, n = 999_999_937, 777, 200_000
-	s := streamOf(t, StreamConfig{Common: Common{Load: rate}, Gaps: Constant, Size: random.Spec{Mean: size}})
-	ps := s.Emit(des.Time(n)*8*size*1000, nil) // 1 ns a bit and a little
-	if len(ps) < n-5 {
-		t.Fatalf("%d packets", len(ps))
-	}
-	for k, p := range ps {
-		hi, lo := bits.Mul64(uint64(k)*size*8, uint64(des.Second))
-		q, _ := bits.Div64(hi, lo, rate)
-		if want := ps[0].Born + des.Time(q); p.Born != want {
-			t.Fatalf("packet %d is born at %v, want %v", k, p.Born, want)
+	const n = 100_000
+	for _, x := range []struct{ rate, size uint64 }{{999_999_937, 777}, {3 * 1e9, 1}, {7 * 1e9, 1500}} {
+		s := streamOf(t, StreamConfig{Common: Common{Load: nodes.Rate(x.rate)}, Gaps: Constant, Size: random.Spec{Mean: float64(x.size)}})
+		ps := s.Emit(des.Time(n*8e12/float64(x.rate)*float64(x.size)), nil)
+		if len(ps) < n-1 {
+			t.Fatalf("%d packets", len(ps))
+		}
+		for k, p := range ps {
+			hi, lo := bits.Mul64(uint64(k)*x.size*8, uint64(des.Second))
+			q, _ := bits.Div64(hi, lo, x.rate)
+			if want := ps[0].Born + des.Time(q); p.Born != want {
+				t.Fatalf("packet %d of %d B at %d bit/s is born at %v, want %v", k, x.size, x.rate, p.Born, want)
+			}
 		}
 	}
 }

@@ -236,7 +236,7 @@ func (t *train) Emit(end des.Time, buf []nodes.Packet) []nodes.Packet {
 	for t.due() < end {
 		limit := min(end, t.ahead.until())
 		for t.due() < limit {
-			buf = t.run(min(limit, t.arrivals.next.Plus(1)), buf)
+			buf = t.run(min(limit, t.arrivals.next), buf)
 			if t.arrivals.next < limit {
 				buf = t.admit(buf)
 			}

@@ -182,6 +182,21 @@ func TestCallsAreStationary(t *testing.T) {
 	}
 }
 
+// A change of load before the start is in full force at the start, also for
+// calls that last hundreds of times longer than the test.
+func TestScaleBeforeStart(t *testing.T) {
+	for _, pattern := range []CallPattern{Standing, Random, Regular} {
+		mean, half := replicate(30, func(seed uint64) float64 {
+			v := voiceOf(t, VoiceConfig{Common: Common{Load: 16 * nodes.Mbps, Seed: seed, Start: des.Second}, Pattern: pattern})
+			v.Scale(des.Second/2, 1.5)
+			return float64(len(v.Emit(des.Second+20*des.Millisecond, nil)))
+		})
+		if math.Abs(mean-300) > half || half > 15 {
+			t.Errorf("pattern %d: %.1f ± %.1f calls at 150 %%, want 300", pattern, mean, half)
+		}
+	}
+}
+
 // The residual holding time of an exponential call is exponential again, so
 // calls met at the start thin out by 1/e in a mean holding time.
 func TestResidualHolding(t *testing.T) {
