@@ -1,0 +1,215 @@
+package central
+
+import (
+	"ferrule/des"
+	"ferrule/nodes"
+)
+
+// end is the sending end of a circuit at this site, and the light it receives.
+type end struct {
+	circuit     nodes.CircuitID
+	dir         nodes.Direction
+	incarnation int32 // of the route that is open; 0: none
+	state       nodes.PortState
+	dark        bool  // no light on that route
+	told        bool  // the controller has been told of it
+	opening     bool  // traffic is not ready yet
+	timer       int64 // of the hold-off that runs; 0: none
+	draining    int64 // command to drain; 0: none
+}
+
+// alarm is what the controller has not yet confirmed to have heard.
+type alarm struct {
+	serial int64
+	tries  int
+	m      nodes.Message
+}
+
+// end finds the end of c at this site. It panics when c does not end here.
+func (e *Element) end(c nodes.CircuitID) *end {
+	i := 0
+	if e.k.plant.Circuits[c].Ends[0] != e.site {
+		i = 1
+	}
+	n := &e.ends[e.k.endIndex[c][i]]
+	if n.circuit != c {
+		panic("central: circuit " + e.k.circuitName(c) + " does not end at " + e.k.siteName(e.site))
+	}
+	return n
+}
+
+// setPort changes the state of the port if it differs.
+func (e *Element) setPort(n *end, s nodes.PortState) {
+	if n.state != s {
+		n.state = s
+		e.x.SetPort(n.circuit, s)
+	}
+}
+
+// activate opens a route; its port goes up when traffic is ready.
+func (e *Element) activate(m *nodes.Message) {
+	n := e.end(m.Circuit)
+	if m.N < n.incarnation {
+		return // of the past
+	}
+	if m.N == n.incarnation {
+		if !n.opening {
+			e.answer(m, answerDone)
+		}
+		return
+	}
+	e.open(n, m.Ref.(*nodes.Trail))
+	if d := e.k.cfg.TrafficReady; d > 0 {
+		n.opening = true
+		r := *m
+		r.Op = opReady
+		later(e.x, e.now+d, r)
+		return
+	}
+	e.setPort(n, nodes.PortUp)
+	e.answer(m, answerDone)
+}
+
+// open makes t the route of n. Its light is taken for granted until the
+// network says otherwise, and a hold-off that runs for an earlier one ends.
+func (e *Element) open(n *end, t *nodes.Trail) {
+	n.incarnation = t.Incarnation
+	n.dark, n.told, n.timer, n.draining = false, false, 0, 0
+	e.x.OpenTrail(*t)
+}
+
+// ready puts the port up after an activation, unless the light is gone again.
+func (e *Element) ready(m *nodes.Message) {
+	n := e.end(m.Circuit)
+	if m.N != n.incarnation || !n.opening {
+		return
+	}
+	n.opening = false
+	if !n.dark {
+		e.setPort(n, nodes.PortUp)
+	}
+	e.answer(m, answerDone)
+}
+
+// portUp puts the port up on a route whose light came back.
+func (e *Element) portUp(m *nodes.Message) {
+	n := e.end(m.Circuit)
+	if m.N != n.incarnation || n.dark {
+		n.told = true // the return of its light will be news
+		e.answer(m, answerRefused)
+		return
+	}
+	e.setPort(n, nodes.PortUp)
+	e.answer(m, answerDone)
+}
+
+// drain closes the port to new packets and answers when none waits any more.
+func (e *Element) drain(m *nodes.Message) {
+	n := e.end(m.Circuit)
+	switch {
+	case n.draining == m.A:
+		return // the same command again
+	case n.state == nodes.PortDown:
+		e.answer(m, answerDone)
+		return
+	}
+	n.draining = m.A
+	e.setPort(n, nodes.PortDraining)
+	e.drained(m)
+}
+
+// drained closes the port when nothing waits, or looks again when what waits
+// must have been sent.
+func (e *Element) drained(m *nodes.Message) {
+	n := e.end(m.Circuit)
+	if n.draining != m.A {
+		return
+	}
+	c := e.x.Counters(m.Circuit)
+	if n.state == nodes.PortDraining && c.QueueBytes > 0 && c.Rate > 0 {
+		again := *m
+		again.Op = opDrained
+		later(e.x, e.now+c.Rate.TxTime(c.QueueBytes)+des.Microsecond, again)
+		return
+	}
+	n.draining = 0
+	e.setPort(n, nodes.PortDown)
+	e.answer(m, answerDone)
+}
+
+// light notes that the light of a route went or came back. The packet layer
+// and the controller are told of a loss when the hold-off is over.
+func (e *Element) light(m *nodes.Message) {
+	n := e.end(m.Circuit)
+	if m.N != n.incarnation {
+		return
+	}
+	if m.Op == nodes.OpLightBack {
+		n.dark, n.timer = false, 0
+		if n.told {
+			n.told = false
+			e.raise(nodes.Message{Op: opAlarm, Circuit: m.Circuit, N: m.N, B: alarmBack})
+		}
+		return
+	}
+	if n.dark {
+		return
+	}
+	n.dark = true
+	e.serial++
+	n.timer = e.serial
+	t := nodes.Message{Op: opHoldOff, Settles: true, Circuit: m.Circuit, A: n.timer}
+	if d := e.k.plant.Circuits[m.Circuit].HoldOff; d > 0 {
+		later(e.x, e.now+d, t)
+		return
+	}
+	e.heldOff(&t)
+}
+
+// heldOff stops the port when the light is still gone.
+func (e *Element) heldOff(m *nodes.Message) {
+	n := e.end(m.Circuit)
+	if n.timer != m.A {
+		return
+	}
+	n.timer, n.told = 0, true
+	e.setPort(n, nodes.PortDown)
+	e.raise(nodes.Message{Op: opAlarm, Circuit: m.Circuit, N: n.incarnation, B: alarmLost})
+}
+
+// raise sends an alarm and sees to it that it is heard.
+func (e *Element) raise(m nodes.Message) {
+	e.serial++
+	m.From, m.A, m.Settles = e.site, e.serial, true
+	e.alarms = append(e.alarms, alarm{serial: m.A, m: m})
+	e.alarmAgain(m.A)
+}
+
+// alarmAgain sends an unheard alarm, until it has been sent often enough.
+func (e *Element) alarmAgain(serial int64) {
+	for i := range e.alarms {
+		a := &e.alarms[i]
+		if a.serial != serial {
+			continue
+		}
+		if a.tries == e.k.cfg.Attempts {
+			e.heard(serial)
+			e.x.Note("alarm unheard", e.k.siteName(e.site), "no answer from the controller")
+			return
+		}
+		a.tries++
+		e.x.Send(e.k.cfg.Site, a.m)
+		later(e.x, e.now+e.k.cfg.Retry, nodes.Message{Op: opAlarmAgain, Settles: true, A: serial})
+		return
+	}
+}
+
+// heard forgets an alarm.
+func (e *Element) heard(serial int64) {
+	for i := range e.alarms {
+		if e.alarms[i].serial == serial {
+			e.alarms = append(e.alarms[:i], e.alarms[i+1:]...)
+			return
+		}
+	}
+}

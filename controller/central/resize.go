@@ -1,0 +1,112 @@
+package central
+
+import (
+	"fmt"
+
+	"ferrule/controller"
+	"ferrule/nodes"
+)
+
+// resize decides whether a circuit can have the slots asked for on the route
+// it has. What it gains is reserved everywhere before its ports send faster;
+// they send slower before what it loses is released.
+func (c *Controller) resize(id int32) {
+	t := c.tasks[id]
+	k := &c.circuits[t.circuit]
+	name := c.k.circuitName(t.circuit)
+	if !carries(k.state) {
+		c.end(id, "the circuit is "+k.state.String())
+		return
+	}
+	more := t.slots - k.held.slots
+	for _, f := range k.held.route {
+		if int64(more) > c.free[f] {
+			why := fmt.Sprintf("fibre %s has %d free slots, not %d", c.k.fibreName(f), c.free[f], more)
+			c.x.Note("resize blocked", name, why)
+			c.end(id, why)
+			return
+		}
+	}
+	c.enter(t.circuit, controller.Resizing)
+	c.x.Note("resize", name, fmt.Sprintf("%d to %d slots, %d to %d bit/s", k.held.slots, t.slots, k.rate, t.rate))
+	if more > 0 {
+		grown := k.held
+		grown.slots = more
+		c.reserve(&grown)
+		c.assignSlots(id)
+		return
+	}
+	t.phase = phaseDrain
+	c.sendRate(id)
+}
+
+// assignSlots has every site of the route hold what was asked for.
+func (c *Controller) assignSlots(id int32) {
+	t := c.tasks[id]
+	h := c.circuits[t.circuit].held
+	h.slots = t.slots
+	t.phase, t.waiting = phaseConnect, len(h.sites)
+	for i, s := range h.sites {
+		c.command(s, h.assignmentAt(i).message(t.circuit, h.incarnation, true), ownerTask, id)
+	}
+}
+
+// sendRate has both ends send at the new rate.
+func (c *Controller) sendRate(id int32) {
+	t := c.tasks[id]
+	t.waiting = 2
+	for _, s := range c.k.plant.Circuits[t.circuit].Ends {
+		c.command(s, nodes.Message{Op: opRate, Settles: true, Circuit: t.circuit, B: int64(t.rate)}, ownerTask, id)
+	}
+}
+
+// resizeGoesOn takes the next step of a resize when the last is done.
+func (c *Controller) resizeGoesOn(id int32) {
+	t := c.tasks[id]
+	k := &c.circuits[t.circuit]
+	switch {
+	case t.phase == phaseDrain && t.slots < k.held.slots:
+		k.rate = t.rate
+		c.assignSlots(id)
+	case t.phase == phaseConnect && t.slots > k.held.slots:
+		k.held.slots, k.slots = t.slots, t.slots
+		t.phase = phaseActivate
+		c.sendRate(id)
+	default:
+		if less := k.held.slots - t.slots; less > 0 {
+			gone := k.held
+			gone.slots = less
+			c.unreserve(&gone)
+		}
+		k.held.slots, k.slots, k.rate = t.slots, t.slots, t.rate
+		k.resizes++
+		c.enter(t.circuit, controller.Up)
+		c.x.Note("resized", c.k.circuitName(t.circuit), fmt.Sprintf("%d slots after %v", t.slots, c.now-t.begun))
+		c.end(id, "")
+	}
+}
+
+// resizeFails leaves every site with the smaller of what the circuit had and
+// what it was to have, or with what it has gained already.
+func (c *Controller) resizeFails(id int32, why string) {
+	t := c.tasks[id]
+	k := &c.circuits[t.circuit]
+	c.withdraw(ownerTask, id)
+	if t.phase == phaseConnect {
+		differ := k.held
+		differ.slots = max(t.slots, k.held.slots) - min(t.slots, k.held.slots)
+		c.unreserve(&differ)
+		k.held.slots = min(t.slots, k.held.slots)
+		k.slots = k.held.slots
+		for i, s := range k.held.sites {
+			a := k.held.assignmentAt(i)
+			a.flags |= atOnce
+			c.command(s, a.message(t.circuit, k.held.incarnation, true), ownerNone, 0)
+		}
+	}
+	if k.state == controller.Resizing {
+		c.enter(t.circuit, controller.Up)
+	}
+	c.x.Note("resize failed", c.k.circuitName(t.circuit), why)
+	c.end(id, why)
+}
