@@ -53,8 +53,27 @@ func (c *Calendar) Min() (Time, int) {
 	if len(c.at) == 0 || c.tree[1] == noAppointment {
 		return Never, -1
 	}
+	if c.tree[1]>>c.shift == c.farthest() {
+		return c.scan()
+	}
 	slot := int(c.tree[1] & (1<<c.shift - 1))
 	return c.at[slot], slot
+}
+
+// farthest is the packed time of everything beyond the range.
+func (c *Calendar) farthest() uint64 { return noAppointment>>c.shift - 1 }
+
+// scan finds the earliest appointment when all are beyond the packed range.
+//
+//go:noinline
+func (c *Calendar) scan() (t Time, slot int) {
+	t, slot = Never, -1
+	for s, at := range c.at {
+		if at < t {
+			t, slot = at, s
+		}
+	}
+	return t, slot
 }
 
 // Set gives slot the appointment t; Never takes it away. t must not be before
@@ -71,17 +90,14 @@ func (c *Calendar) Set(slot int, t Time) {
 	}
 }
 
-// pack puts times too far from the epoch at the end of the range, in an order
-// that MoveEpoch restores before they can win wrongly.
+// pack puts times too far from the epoch at the end of the range, where Min
+// tells them apart by their exact times.
 func (c *Calendar) pack(slot int, t Time) uint64 {
 	if t == Never {
 		return noAppointment
 	}
 	d := uint64(t - c.epoch)
-	if most := noAppointment>>c.shift - 1; d > most {
-		d = most
-	}
-	return d<<c.shift | uint64(slot)
+	return min(d, c.farthest())<<c.shift | uint64(slot)
 }
 
 // MoveEpoch makes now the instant from which times are counted and rebuilds

@@ -37,9 +37,10 @@ type Model interface {
 	// never felt by another before t + Lookahead. It is positive.
 	Lookahead() Time
 
-	// Edge is called alone at the end of each window, once every region has
-	// done all that was due before now: it hands over what is under way. It
-	// calls touched for each region whose next work may have changed.
+	// Edge is called alone at the end of each window, and where Advance ends in
+	// quiet, once every region has done all that was due before now: it hands
+	// over what is under way. It calls touched for each region whose next work
+	// may have changed.
 	Edge(now Time, touched func(region int))
 
 	// NextAct reports the instant of the earliest outside act, or Never.
@@ -128,7 +129,10 @@ func (k *Kernel) Advance(to Time, stop func() bool) {
 		next, _ := k.cal.Min()
 		act := k.model.NextAct()
 		if min(next, act) >= to {
-			k.now = max(k.now, to)
+			if k.now < to {
+				k.now = to
+				k.model.Edge(to, k.touched)
+			}
 			return
 		}
 		if act <= next {

@@ -15,6 +15,7 @@ type ActKind uint8
 const (
 	actSettled ActKind = iota // ends a stretch; its own
 	actMeasure                // ends the warm-up; its own
+	actEnd                    // the sources have ended; its own
 	ActRepair
 	ActCut
 	ActScale
@@ -33,7 +34,7 @@ type Act struct {
 	Ways   []uint16     // scale
 	Factor float64      // scale
 	Site   nodes.SiteID // order: where the controller stands
-	Ref    any          // order: what it is told
+	Ref    any          // order: what it is told; nil if it knows already
 	where  des.Time     // settled: the quiet since
 }
 
@@ -59,7 +60,9 @@ func (n *Network) Schedule(a Act) {
 	if a.At < n.now {
 		panic(fmt.Sprintf("packet: act at %v, now %v", a.At, n.now))
 	}
-	n.actNo++
+	if a.Kind > actEnd { // how often the network looks whether it is settled must not show
+		n.actNo++
+	}
 	n.acts.Put(dated{a, n.actNo})
 }
 
@@ -71,7 +74,7 @@ func (n *Network) Act(now des.Time) {
 	n.now = now
 	for n.acts.Next() == now {
 		a := n.acts.Take()
-		n.act(now, &a.Act)
+		n.act(now, &a)
 	}
 	for _, s := range n.sites {
 		s.now = now
@@ -83,19 +86,21 @@ func (n *Network) Act(now des.Time) {
 	n.Edge(now, func(int) {})
 }
 
-func (n *Network) act(now des.Time, a *Act) {
+func (n *Network) act(now des.Time, a *dated) {
 	switch a.Kind {
 	case actSettled:
 		n.settled(now, a.where)
 	case actMeasure:
 		n.measure(now)
+	case actEnd:
+		n.end(now)
 	case ActCut:
 		n.faults++
 		n.open(now, Hit, a.Name)
-		n.cut(now, a)
+		n.cut(now, &a.Act)
 	case ActRepair:
 		n.open(now, Mend, a.Name)
-		n.repair(now, a)
+		n.repair(now, &a.Act)
 	case ActScale:
 		n.open(now, Change, a.Name)
 		for _, w := range a.Ways {
@@ -104,7 +109,9 @@ func (n *Network) act(now des.Time, a *Act) {
 		n.log = append(n.log, nodes.Event{At: now, Site: nodes.None, What: "scale", Subject: a.Name, Detail: fmt.Sprintf("to %g %%", a.Factor*100)})
 	case ActOrder:
 		n.open(now, Change, a.Name)
-		n.sites[a.Site].book(nodes.Message{At: now, From: a.Site, To: a.Site, Op: nodes.OpOrder, Ref: a.Ref, Settles: true, N: int32(n.actNo)})
+		if a.Ref != nil {
+			n.sites[a.Site].book(nodes.Message{At: now, From: a.Site, To: a.Site, Op: nodes.OpOrder, Ref: a.Ref, Settles: true, N: int32(a.no)})
+		}
 	default:
 		panic(fmt.Sprintf("packet: unknown act %d", a.Kind))
 	}
@@ -144,11 +151,22 @@ func (n *Network) settled(now, quiet des.Time) {
 func (n *Network) measure(now des.Time) {
 	n.mark = true
 	for _, s := range n.sites {
+		s.markT = s.transit
 		for i := range s.ports {
 			s.ports[i].mark = s.ports[i].counters(now)
 		}
 		for i := range s.sources {
 			s.sources[i].markP, s.sources[i].markB = s.sources[i].packets, s.sources[i].bytes
+		}
+	}
+}
+
+// end notes what ports did until the sources ended.
+func (n *Network) end(now des.Time) {
+	n.ended = true
+	for _, s := range n.sites {
+		for i := range s.ports {
+			s.ports[i].final = s.ports[i].counters(now)
 		}
 	}
 }
@@ -221,25 +239,28 @@ func (n *Network) repair(now des.Time, a *Act) {
 	n.broken--
 	n.ways.Changed(now, func(g nodes.FibreID) bool { return n.light.Dark(int(g), now) })
 	n.log = append(n.log, nodes.Event{At: now, Site: nodes.None, What: "repair", Subject: fibre.Name})
-	last := n.light.Spans(int(f))[spans[len(spans)-1]]
 	for i, end := range fibre.Ends {
-		if !last.Dirs.Has(fibre.From(fibre.Other(end))) {
-			continue
+		gone, noticed := des.Time(0), false // light from the farthest dark place
+		for _, j := range spans {
+			sp := &n.light.Spans(int(f))[j]
+			if !sp.Dirs.Has(fibre.From(fibre.Other(end))) {
+				continue
+			}
+			far := sp.Place
+			if i == 1 {
+				far = fibre.Delay - far
+			}
+			gone = max(gone, far)
+			noticed = noticed || now > sp.From+n.cfg.Detect
 		}
-		gone := last.Place
-		if i == 1 {
-			gone = fibre.Delay - gone
+		if noticed {
+			n.sites[end].book(nodes.Message{At: now + gone + n.cfg.Detect, From: end, To: end, Op: nodes.OpFibreLit, Fibre: f, A: int64(gone), Settles: true})
 		}
-		n.sites[end].book(nodes.Message{At: now + gone + n.cfg.Detect, From: end, To: end, Op: nodes.OpFibreLit, Fibre: f, A: int64(gone), Settles: true})
 	}
 	n.eachPipe(f, func(to *Site, p *pipe, before des.Time, dir nodes.Direction) {
-		place := last.Place
-		if dir == nodes.Back {
-			place = fibre.Delay - place
-		}
-		p.lighten(f, now)
-		if p.open && last.Dirs.Has(dir) {
-			to.book(nodes.Message{At: now + p.delay - before - place + n.cfg.Detect, From: to.id, To: to.id, Op: nodes.OpLightBack, Circuit: p.circuit, N: p.incarnation, Settles: true})
+		gone, lit := p.lighten(f, now)
+		if p.open && lit {
+			to.book(nodes.Message{At: now + gone + n.cfg.Detect, From: to.id, To: to.id, Op: nodes.OpLightBack, Circuit: p.circuit, N: p.incarnation, Settles: true})
 		}
 	})
 }

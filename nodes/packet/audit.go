@@ -4,6 +4,7 @@ import (
 	"fmt"
 
 	"ferrule/des"
+	"ferrule/des/measure"
 	"ferrule/nodes"
 )
 
@@ -120,7 +121,8 @@ func (n *Network) auditQueues(t *Totals) (failures []string) {
 	return failures
 }
 
-// PortReport is what a port did from the end of the warm-up until the horizon.
+// PortReport is what a port did from the end of the warm-up until the sources
+// ended; MaxBytes is from the start.
 type PortReport struct {
 	Circuit     nodes.CircuitID
 	From        nodes.SiteID
@@ -145,14 +147,17 @@ func (n *Network) PortReports() []PortReport {
 	if !n.mark {
 		from = 0
 	}
-	until := min(n.now, n.cfg.Length+n.cfg.Grace)
+	until := min(n.now, n.cfg.Length)
 	for _, s := range n.sites {
 		for i := range s.ports {
 			q := &s.ports[i]
 			c, m := q.counters(max(until, q.changed)), q.mark
+			if n.ended {
+				c = q.final
+			}
 			r := PortReport{
 				Circuit: q.circuit, From: s.id, Rate: q.line.Rate(), Sent: c.sent - m.sent, Lost: c.lost - m.lost,
-				LineBytes: c.lineBytes - m.lineBytes, IPBytes: c.ipBytes - m.ipBytes, Delayed: c.delayed - m.delayed,
+				LineBytes: q.lineBytes(c.sent-m.sent, c.ipBytes-m.ipBytes), IPBytes: c.ipBytes - m.ipBytes, Delayed: c.delayed - m.delayed,
 				Arrived: c.packetsIn - m.packetsIn, MaxBytes: c.maxBytes,
 			}
 			if r.Sent == 0 && r.Lost == 0 {
@@ -160,18 +165,17 @@ func (n *Network) PortReports() []PortReport {
 			}
 			c.area.Sub(m.area)
 			c.waits.Sub(m.waits)
-			c.service.Sub(m.service)
 			span := float64(max(until-from, 1))
 			r.MeanQueue = c.area.Float() / span
 			if r.Sent > 0 {
 				sent := float64(r.Sent)
 				r.MeanWait = c.waits.Float() / sent
-				r.Service = c.service.Float() / sent
+				r.Service = float64(c.service-m.service) / sent
 				if mean2 := float64(r.Service * r.Service); mean2 > 0 {
 					r.ServiceCoV2 = max(0, (c.service2-m.service2)/sent/mean2-1)
 				}
 			}
-			r.Utilisation = c.service.Float() / float64(max(min(until, n.cfg.Length)-from, 1))
+			r.Utilisation = float64(c.service-m.service) / span
 			out = append(out, r)
 		}
 	}
@@ -199,11 +203,14 @@ func (n *Network) Offered() []Offered {
 // Meters gives read access to the meters by way.
 func (n *Network) Meters() []Meter { return n.meters }
 
-// Losses calls f for every site's count of every way, by site and first loss.
+// Losses calls f for every site's count of every way it lost packets of, by
+// site and way.
 func (n *Network) Losses(f func(site nodes.SiteID, l *Loss)) {
 	for _, s := range n.sites {
-		for i := range s.losses {
-			f(s.id, &s.losses[i])
+		for _, i := range s.lossOf {
+			if i > 0 {
+				f(s.id, &s.losses[i-1])
+			}
 		}
 	}
 }
@@ -211,9 +218,12 @@ func (n *Network) Losses(f func(site nodes.SiteID, l *Loss)) {
 // Stretches lists the stretches begun so far; the last ends at Now.
 func (n *Network) Stretches() []Stretch { return n.history.s }
 
-// KindOf reports the kind of stretch to which a packet counts that was sent at
-// born and met its fate at fate.
-func (n *Network) KindOf(born, fate des.Time) Kind { return n.history.find(born, fate).Kind }
+// StretchOf reports the stretch to which a packet counts that was sent at born
+// and met its fate at fate.
+func (n *Network) StretchOf(born, fate des.Time) int {
+	stretch, _ := n.history.find(born, fate)
+	return int(stretch)
+}
 
 // Now is the instant up to which everything has been done.
 func (n *Network) Now() des.Time { return n.now }
@@ -228,3 +238,20 @@ func (n *Network) Events() []nodes.Event {
 	sortEvents(all)
 	return all
 }
+
+// Transit reports the IP bytes that each router received from a fibre and sent
+// on, since the end of the warm-up.
+func (n *Network) Transit() []uint64 {
+	out := make([]uint64, len(n.sites))
+	for i, s := range n.sites {
+		out[i] = s.transit - s.markT
+	}
+	return out
+}
+
+// Latencies returns the forwarding latencies sampled at a site, in ns: one in
+// 64 of the packets that came through an input whose latency varies.
+func (n *Network) Latencies(s nodes.SiteID) *measure.Hist { return &n.sites[s].latencies }
+
+// Config is what the network was made from, defaults filled in.
+func (n *Network) Config() Config { return n.cfg }

@@ -55,6 +55,7 @@ func (n *Network) Clone() *Network {
 func (s *Site) clone(n *Network, pipes map[*pipe]*pipe) *Site {
 	c := *s
 	c.net = n
+	c.latencies = s.latencies.Clone()
 	lats := map[*latency]*latency{} // looked up only
 	c.inputs = slices.Clone(s.inputs)
 	for i := range c.inputs {
@@ -88,9 +89,11 @@ func (s *Site) clone(n *Network, pipes map[*pipe]*pipe) *Site {
 	}
 	c.agenda = s.agenda.Clone()
 	c.out, c.fresh, c.dirty, c.scratch = nil, nil, nil, nil
+	c.sink, c.via = arrivals{key: -1}, slices.Clone(s.via)
 	c.losses = slices.Clone(s.losses)
 	for i := range c.losses {
 		c.losses[i].Faults = slices.Clone(s.losses[i].Faults)
+		c.losses[i].Count = slices.Clone(s.losses[i].Count)
 	}
 	c.lossOf = slices.Clone(s.lossOf)
 	c.events = slices.Clone(s.events)

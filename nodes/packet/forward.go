@@ -53,6 +53,10 @@ type latency struct {
 	from     des.Time
 	start    des.Time
 	slope    int64 // per ps, in units of 2^-20, rounded down
+	memo     [32]struct {
+		piece int64 // plus one; 0: none
+		value des.Time
+	}
 }
 
 // newLatency prepares the path of the input of the given name.
@@ -85,11 +89,21 @@ func (l *latency) knot(piece int64) des.Time {
 	return min(des.Time(l.median*math.Exp(float64(l.sigma*z))), l.most)
 }
 
+// recall is knot with a memory: sources that share a path go over the same
+// pieces in turn.
+func (l *latency) recall(piece int64) des.Time {
+	m := &l.memo[piece%int64(len(l.memo))]
+	if m.piece != piece+1 {
+		m.piece, m.value = piece+1, l.knot(piece)
+	}
+	return m.value
+}
+
 // enter makes the fields describe the piece that holds t.
 func (l *latency) enter(t des.Time) {
 	piece := int64(t / l.step)
-	first := l.knot(piece)
-	last := l.knot(piece + 1)
+	first := l.recall(piece)
+	last := l.recall(piece + 1)
 	l.piece, l.from, l.start = piece, des.Time(piece)*l.step, first
 	d := int64(last-first) << 20
 	l.slope = d / int64(l.step)
@@ -123,7 +137,14 @@ func (l *latency) before(end des.Time) des.Time {
 	if !l.varies {
 		return end - l.constant
 	}
-	lo, hi := max(end-l.most, 0), end // out(hi) >= end always
+	lo, hi := max(end-l.most, 0), end          // out(hi) >= end always
+	if start := end - end%l.step; start > lo { // keep to one piece
+		if l.out(start) >= end {
+			hi = start
+		} else {
+			lo = start + 1
+		}
+	}
 	for lo < hi {
 		mid := lo + (hi-lo)/2
 		if l.out(mid) >= end {

@@ -144,7 +144,7 @@ func (x *local) Counters(c nodes.CircuitID) nodes.PortCounters {
 		return nodes.PortCounters{}
 	}
 	return nodes.PortCounters{
-		SentBytes: q.count.lineBytes, SentPackets: q.count.sent, LostPackets: q.count.lost,
+		SentBytes: q.lineBytes(q.count.sent, q.count.ipBytes), SentPackets: q.count.sent, LostPackets: q.count.lost,
 		QueueBytes: q.disc.Backlog(), Rate: q.line.Rate(),
 	}
 }

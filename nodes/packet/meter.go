@@ -1,6 +1,8 @@
 package packet
 
 import (
+	"slices"
+
 	"ferrule/des"
 	"ferrule/des/measure"
 	"ferrule/nodes"
@@ -28,7 +30,7 @@ func (c Cause) String() string {
 // byFault reports whether the cause counts towards the outage of a fault.
 func (c Cause) byFault() bool { return c != LostQueue && c != LostTTL }
 
-// Cell holds the figures of one way in one kind of stretch.
+// Cell holds the figures of one way in one stretch.
 type Cell struct {
 	Delay     measure.Hist    // ns above Floor
 	Exact     measure.Moments // ps, whole delay
@@ -49,7 +51,7 @@ type Outage struct {
 // Meter judges what arrives of one way.
 type Meter struct {
 	Floor   des.Time // light delay between the ends; delays are counted above it
-	Cells   [Kinds]*Cell
+	Cells   []*Cell  // by stretch; nil where nothing arrived
 	Outages []Outage
 	jitter  measure.Jitter
 	pairs   measure.Consecutive
@@ -58,13 +60,16 @@ type Meter struct {
 	last    des.Time // when that one was sent
 }
 
-// add counts a packet that left its egress router at p.Due.
-func (m *Meter) add(p *nodes.Packet, kind Kind, fault int32) {
-	c := m.Cells[kind]
-	if c == nil {
-		c = m.cell(kind)
+// add counts a packet that left its egress router at the given instant.
+func (m *Meter) add(p *nodes.Packet, at des.Time, stretch, fault int32) {
+	var c *Cell
+	if int(stretch) < len(m.Cells) {
+		c = m.Cells[stretch]
 	}
-	delay := int64(p.Due - p.Born)
+	if c == nil {
+		c = m.cell(stretch)
+	}
+	delay := int64(at - p.Born)
 	above := delay - int64(m.Floor)
 	if above < 0 {
 		above = 0
@@ -94,9 +99,12 @@ func (m *Meter) add(p *nodes.Packet, kind Kind, fault int32) {
 }
 
 //go:noinline
-func (m *Meter) cell(kind Kind) *Cell {
-	m.Cells[kind] = &Cell{}
-	return m.Cells[kind]
+func (m *Meter) cell(stretch int32) *Cell {
+	for int(stretch) >= len(m.Cells) {
+		m.Cells = append(m.Cells, nil)
+	}
+	m.Cells[stretch] = &Cell{}
+	return m.Cells[stretch]
 }
 
 //go:noinline
@@ -109,6 +117,9 @@ func (m *Meter) overtaken(c *Cell, seq uint32, delay int64) {
 		c.Variation.Add(uint64(max(later, -later)) / 1000)
 	}
 }
+
+// Last reports when the packet was sent that was delivered last in order.
+func (m *Meter) Last() des.Time { return m.last }
 
 // gap notes that packets sent after m.last and before born are missing.
 //
@@ -127,6 +138,7 @@ func (m *Meter) gap(born des.Time, fault int32) {
 
 func (m *Meter) clone() Meter {
 	c := *m
+	c.Cells = make([]*Cell, len(m.Cells))
 	for k, x := range m.Cells {
 		if x != nil {
 			y := *x
@@ -141,9 +153,9 @@ func (m *Meter) clone() Meter {
 // Loss counts what one site lost of one way.
 type Loss struct {
 	Way    uint16
-	Count  [Kinds][Causes]uint64
+	Count  [][Causes]uint64 // by stretch
 	Bytes  uint64
-	Faults []FaultLoss
+	Faults []FaultLoss // by fault
 }
 
 // FaultLoss is what one site lost of one way to one fault.
@@ -154,14 +166,20 @@ type FaultLoss struct {
 }
 
 func (l *Loss) add(p *nodes.Packet, st *view, cause Cause) {
-	l.Count[st.kind][cause]++
+	for int(st.stretch) >= len(l.Count) {
+		l.Count = append(l.Count, [Causes]uint64{})
+	}
+	l.Count[st.stretch][cause]++
 	l.Bytes += uint64(p.Size)
 	if st.fault < 0 || !cause.byFault() {
 		return
 	}
 	n := len(l.Faults)
+	for n > 0 && l.Faults[n-1].Fault > st.fault {
+		n--
+	}
 	if n == 0 || l.Faults[n-1].Fault != st.fault {
-		l.Faults = append(l.Faults, FaultLoss{Fault: st.fault, First: p.Born, Last: p.Born})
+		l.Faults = slices.Insert(l.Faults, n, FaultLoss{Fault: st.fault, First: p.Born, Last: p.Born})
 		n++
 	}
 	f := &l.Faults[n-1]

@@ -63,6 +63,7 @@ type Network struct {
 	broken    int // fibres dark
 	unsettled bool
 	mark      bool // the warm-up is over
+	ended     bool // the sources are
 	now       des.Time
 	flagged   []bool // regions touched at this edge
 	log       []nodes.Event
@@ -95,9 +96,10 @@ func New(cfg Config) (*Network, error) {
 		n.regions = append(n.regions, &region{net: n, inner: within[i]})
 	}
 	for i := range p.Sites {
-		s := &Site{id: nodes.SiteID(i), net: n, srcMin: des.Never, st: view{to: cfg.WarmUp, kind: WarmUp, fault: -1}}
+		s := &Site{id: nodes.SiteID(i), net: n, srcMin: des.Never, st: view{to: cfg.WarmUp, fault: -1}}
 		s.hop = make([]int32, len(n.classOf))
 		s.lossOf = make([]int32, len(n.classOf))
+		s.via, s.sink.key = make([]uint64, len(n.classOf)), -1
 		s.portOf = make([]int16, len(p.Circuits))
 		for c := range s.portOf {
 			s.portOf[c] = -1
@@ -126,6 +128,7 @@ func New(cfg Config) (*Network, error) {
 	}
 	n.flagged = make([]bool, len(n.regions))
 	n.Schedule(Act{At: cfg.WarmUp, Kind: actMeasure})
+	n.Schedule(Act{At: cfg.Length, Kind: actEnd})
 	return n, nil
 }
 
@@ -278,7 +281,7 @@ func (n *Network) Finished() bool {
 	}
 	for _, s := range n.sites {
 		for i := range s.ports {
-			if q := &s.ports[i]; q.waiting > 0 && q.state != nodes.PortDown || len(q.arena) > 0 {
+			if q := &s.ports[i]; q.waiting > 0 && q.state != nodes.PortDown || len(q.in.arena) > 0 {
 				return false
 			}
 		}
@@ -305,9 +308,18 @@ func (n *Network) Finished() bool {
 // instant it reached.
 func (n *Network) Run(k *des.Kernel, stop func() bool) des.Time {
 	k.Advance(n.cfg.Length, stop)
-	if stop != nil && stop() {
-		return k.Now()
+	for i := range graceSteps {
+		if stop != nil && stop() {
+			break
+		}
+		k.Advance(n.cfg.Length+n.cfg.Grace*(i+1)/graceSteps, stop)
+		if n.Finished() {
+			break
+		}
 	}
-	k.Advance(n.cfg.Length+n.cfg.Grace, func() bool { return n.Finished() || stop != nil && stop() })
 	return k.Now()
 }
+
+// graceSteps is how often it is asked during the grace whether all packets have
+// met their fate: at fixed instants, so that windows do not show.
+const graceSteps des.Time = 30

@@ -68,26 +68,26 @@ func (h *history) open(s Stretch) {
 // find reports the stretch of what was sent at born and met its fate at fate:
 // the one it was sent in, save that what was under way at an act belongs to
 // the stretch that the act opened.
-func (h *history) find(born, fate des.Time) *Stretch {
+func (h *history) find(born, fate des.Time) (stretch int32, fault int32) {
 	i := len(h.s) - 1
 	for i > 0 && h.s[i].From > born {
 		i--
 	}
 	if h.s[i].Kind == WarmUp {
-		return &h.s[i]
+		return int32(i), h.s[i].Fault
 	}
 	for j := i + 1; j < len(h.s) && h.s[j].From <= fate; j++ {
 		if h.s[j].acted {
 			i = j
 		}
 	}
-	return &h.s[i]
+	return int32(i), h.s[i].Fault
 }
 
 // view is a region's quick look at the stretch in force.
 type view struct {
 	from, to des.Time
-	kind     Kind
+	stretch  int32
 	fault    int32
 }
 
@@ -97,7 +97,7 @@ func (v *view) look(h *history, now des.Time) {
 	for i > 0 && h.s[i].From > now {
 		i--
 	}
-	v.from, v.to, v.kind, v.fault = h.s[i].From, des.Never, h.s[i].Kind, h.s[i].Fault
+	v.from, v.to, v.stretch, v.fault = h.s[i].From, des.Never, int32(i), h.s[i].Fault
 	if i+1 < len(h.s) {
 		v.to = h.s[i+1].From
 	}

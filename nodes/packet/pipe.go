@@ -53,16 +53,19 @@ type lineFrom struct {
 	line nodes.Line
 }
 
-func (p *pipe) push(k *nodes.Packet) {
+// push adds a copy of k and returns it.
+func (p *pipe) push(k *nodes.Packet) *nodes.Packet {
 	if p.tail-p.seen == uint64(len(p.buf)) {
 		p.grow()
 	}
-	p.buf[p.tail&uint64(len(p.buf)-1)] = *k
+	c := &p.buf[p.tail&uint64(len(p.buf)-1)]
+	*c = *k
 	p.tail++
+	return c
 }
 
 // grow doubles the ring. The emptier may still read the old one: it has its
-// own view of it.
+// own view of it, and never writes to either.
 //
 //go:noinline
 func (p *pipe) grow() {
@@ -120,12 +123,16 @@ func (p *pipe) serialisation(left des.Time, size nodes.Bytes) des.Time {
 // darken notes a dark place; lighten ends the spans of a fibre.
 func (p *pipe) darken(d darkSpan) { p.dark = append(p.dark, d) }
 
-func (p *pipe) lighten(f nodes.FibreID, now des.Time) {
+// lighten reports whether it ended any, and how long after now the receiver
+// sees light again: that from the farthest of the dark places.
+func (p *pipe) lighten(f nodes.FibreID, now des.Time) (gone des.Time, lit bool) {
 	for i := range p.dark {
 		if d := &p.dark[i]; d.fibre == f && d.to == des.Never {
 			d.to = now
+			gone, lit = max(gone, p.delay-d.offset), true
 		}
 	}
+	return gone, lit
 }
 
 // darkAtEnd reports whether the light that arrives at the receiver at t is

@@ -21,10 +21,7 @@ type port struct {
 	circuit  nodes.CircuitID
 	dir      nodes.Direction
 
-	arena []nodes.Packet // this segment's arrivals
-	runs  []run
-	key   int32 // of the run being filled; -1: none
-	tree  []uint64
+	in arrivals // of this segment
 
 	// Little's law as an identity in integers: the area under the number
 	// waiting equals the waits of those that left plus the ages of those that
@@ -35,41 +32,26 @@ type port struct {
 
 	count portCount
 	mark  portCount // at the end of the warm-up
+	final portCount // at the end of the sources
 }
 
 // portCount are a port's counters since the start of the run.
 type portCount struct {
 	sent, lost  uint64
-	lineBytes   uint64
 	ipBytes     uint64
 	area, waits des.Sum
 	maxBytes    nodes.Bytes
-	delayed     uint64  // packets that waited
-	service     des.Sum // line time, ps
-	service2    float64 // ps^2: sum of squares of line times
+	delayed     uint64   // packets that waited
+	service     des.Time // line time
+	service2    float64  // ps^2: sum of squares of line times
 	packetsIn   uint64
-}
-
-// run is a sorted stretch of the arena from one input.
-type run struct {
-	from, to int32
-	key      int32
-}
-
-// put adds an arrival from input key; arrivals of one key come together and in
-// order.
-func (q *port) put(p *nodes.Packet, key int32) {
-	if key != q.key {
-		q.key = key
-		q.runs = append(q.runs, run{int32(len(q.arena)), int32(len(q.arena)), key})
-	}
-	q.arena = append(q.arena, *p)
-	q.runs[len(q.runs)-1].to++
 }
 
 // segment serves the arrivals of the segment that ends at end.
 func (q *port) segment(s *Site, end des.Time) {
-	switch len(q.runs) {
+	q.in.close()
+	q.count.packetsIn += uint64(len(q.in.arena))
+	switch len(q.in.runs) {
 	case 0:
 	case 1:
 		q.serveRun(s)
@@ -78,14 +60,14 @@ func (q *port) segment(s *Site, end des.Time) {
 	default:
 		q.serveMany(s)
 	}
-	q.arena, q.runs, q.key = q.arena[:0], q.runs[:0], -1
+	q.in.reset()
 	if q.waiting > 0 && q.free < end && q.state != nodes.PortDown {
 		q.catch(end)
 	}
 }
 
 func (q *port) serveRun(s *Site) {
-	a := q.arena
+	a := q.in.arena
 	for i := range a {
 		next := des.Never
 		if i+1 < len(a) {
@@ -97,8 +79,9 @@ func (q *port) serveRun(s *Site) {
 
 // servePair merges two runs; on a tie the one with the lower key goes first.
 func (q *port) servePair(s *Site) {
-	x, y := q.arena[q.runs[0].from:q.runs[0].to], q.arena[q.runs[1].from:q.runs[1].to]
-	if q.runs[1].key < q.runs[0].key {
+	runs := q.in.runs
+	x, y := q.in.arena[runs[0].from:runs[0].to], q.in.arena[runs[1].from:runs[1].to]
+	if runs[1].key < runs[0].key {
 		x, y = y, x
 	}
 	for len(x) > 0 && len(y) > 0 {
@@ -129,64 +112,12 @@ func (q *port) servePair(s *Site) {
 	}
 }
 
-// runBits is the room for a run's number in a node of the merge tree; the rest
-// holds the time since the segment's first arrival.
-const runBits = 16
-
-// serveMany merges the runs by a winner tree, ties by key and then by run.
+// serveMany merges three runs or more.
 func (q *port) serveMany(s *Site) {
-	sortRuns(q.runs)
-	half := 1
-	for half < len(q.runs) {
-		half *= 2
-	}
-	if len(q.tree) < 2*half {
-		q.tree = make([]uint64, 2*half)
-	}
-	tree := q.tree[:2*half]
-	base := des.Never
-	for _, r := range q.runs {
-		base = min(base, q.arena[r.from].Due)
-	}
-	for i := range half {
-		tree[half+i] = ^uint64(0)
-		if i < len(q.runs) {
-			tree[half+i] = uint64(q.arena[q.runs[i].from].Due-base)<<runBits | uint64(i)
-		}
-	}
-	for i := half - 1; i > 0; i-- {
-		tree[i] = min(tree[2*i], tree[2*i+1])
-	}
-	for n := len(q.arena); n > 0; n-- {
-		i := int(tree[1] & (1<<runBits - 1))
-		r := &q.runs[i]
-		p := &q.arena[r.from]
-		r.from++
-		v := ^uint64(0)
-		if r.from < r.to {
-			v = uint64(q.arena[r.from].Due-base)<<runBits | uint64(i)
-		}
-		k := half + i
-		tree[k] = v
-		for k > 1 {
-			v = min(v, tree[k^1])
-			k >>= 1
-			tree[k] = v
-		}
-		next := des.Never
-		if v != ^uint64(0) {
-			next = base + des.Time(v>>runBits)
-		}
+	q.in.merge()
+	for range q.in.arena {
+		p, next := q.in.take()
 		q.arrive(s, p, next)
-	}
-}
-
-// sortRuns orders runs by key; runs of one key keep their order.
-func sortRuns(r []run) {
-	for i := 1; i < len(r); i++ {
-		for j := i; j > 0 && r[j].key < r[j-1].key; j-- {
-			r[j], r[j-1] = r[j-1], r[j]
-		}
 	}
 }
 
@@ -194,7 +125,6 @@ func sortRuns(r []run) {
 // at one instant arrivals come before decisions.
 func (q *port) arrive(s *Site, p *nodes.Packet, next des.Time) {
 	t := p.Due
-	q.count.packetsIn++
 	if q.state != nodes.PortDown {
 		if q.waiting > 0 && q.free < t {
 			q.catch(t)
@@ -206,6 +136,9 @@ func (q *port) arrive(s *Site, p *nodes.Packet, next des.Time) {
 				return
 			}
 		}
+	} else if !q.hold { // it went down at this very instant
+		s.lose(p, t, LostFlushed)
+		return
 	}
 	if q.disc.Enqueue(t, p) != queue.Kept {
 		q.count.lost++
@@ -244,14 +177,14 @@ func (q *port) send(p *nodes.Packet, t des.Time) {
 	tx := q.line.TxTime(size)
 	q.free = t + tx
 	q.count.sent++
-	q.count.lineBytes += uint64(size)
 	q.count.ipBytes += uint64(p.Size)
-	q.count.service.Add(uint64(tx))
+	q.count.service += tx
 	q.count.service2 += float64(float64(tx) * float64(tx))
-	pipe := q.pipe
-	pipe.push(p)
-	pipe.buf[(pipe.tail-1)&uint64(len(pipe.buf)-1)].Due = q.free + pipe.delay
+	q.pipe.push(p).Due = q.free + q.pipe.delay
 }
+
+// lineBytes are the bytes that n packets of so many IP bytes take on the line.
+func (q *port) lineBytes(n, ipBytes uint64) uint64 { return ipBytes + n*uint64(q.overhead) }
 
 // next reports when the port next decides, or Never.
 func (q *port) next() des.Time {
@@ -292,6 +225,6 @@ func (q *port) clone(pipes map[*pipe]*pipe) port {
 	c := *q
 	c.disc = q.disc.Clone()
 	c.pipe = pipes[q.pipe]
-	c.arena, c.runs, c.tree, c.key = nil, nil, nil, -1
+	c.in = arrivals{key: -1}
 	return c
 }

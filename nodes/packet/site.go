@@ -4,6 +4,7 @@ import (
 	"slices"
 
 	"ferrule/des"
+	"ferrule/des/measure"
 	"ferrule/des/random"
 	"ferrule/nodes"
 	"ferrule/nodes/queue"
@@ -43,8 +44,14 @@ type Site struct {
 	st        view
 	stEnd     des.Time
 	losses    []Loss
-	lossOf    []int32 // way -> index in losses plus one
+	lossOf    []int32  // way -> index in losses plus one
+	sink      arrivals // delivered in this segment, when from several inputs
+	via       []uint64 // way -> run that last delivered it, numbered from 1
+	viaRun    uint64   // runs of deliveries so far
 	scratch   []nodes.Packet
+	transit   uint64       // IP bytes received from a fibre and sent on
+	markT     uint64       // at the end of the warm-up
+	latencies measure.Hist // ns: one in 64 of what came through a varying input
 	delivered uint64
 	lost      uint64
 	messages  MessageCount
@@ -58,6 +65,12 @@ type MessageCount struct{ Sent, Arrived, Lost uint64 }
 type input struct {
 	pipe *pipe
 	lat  *latency // shared by all pipes of the circuit's end
+}
+
+// ready reports whether something leaves the forwarding engine before end.
+func (in *input) ready(end des.Time) bool {
+	p := in.pipe
+	return p.head != p.vis && in.lat.out(p.next()) < end
 }
 
 // source is one way of an aggregate that starts here.
@@ -230,20 +243,30 @@ func (s *Site) lightNews(now des.Time, m *nodes.Message) bool {
 
 // segment moves data up to end.
 func (s *Site) segment(end des.Time) {
+	ready, last := 0, 0
 	for i := range s.inputs {
-		in := &s.inputs[i]
-		if p := in.pipe; p.head != p.vis {
-			if before := in.lat.before(end); p.next() < before {
-				s.receive(p, in.lat, before, int32(i))
+		if in := &s.inputs[i]; in.ready(end) {
+			ready++
+			last = i
+		}
+	}
+	switch {
+	case ready == 1:
+		s.receive(last, end, false)
+	case ready > 1:
+		for i := range s.inputs {
+			if s.inputs[i].ready(end) {
+				s.receive(i, end, true)
 			}
 		}
+		s.deliverSorted()
 	}
 	if before := s.access.before(end); s.srcMin < before {
 		s.emit(before)
 	}
 	for i := range s.ports {
 		q := &s.ports[i]
-		if len(q.arena) > 0 || q.waiting > 0 {
+		if len(q.in.arena) > 0 || q.waiting > 0 {
 			sent := q.count.sent
 			q.segment(s, end)
 			if q.count.sent != sent {
@@ -253,53 +276,55 @@ func (s *Site) segment(end des.Time) {
 	}
 }
 
-// receive takes from p what is due before the given instant.
-func (s *Site) receive(p *pipe, lat *latency, before des.Time, key int32) {
+// receive takes from an input what leaves the forwarding engine before end. It
+// only reads the pipe, which its other end may be filling. With sorted, what
+// is delivered waits in the sink.
+func (s *Site) receive(i int, end des.Time, sorted bool) {
+	p, lat, key := s.inputs[i].pipe, s.inputs[i].lat, int32(i)
 	mask := uint64(len(p.rbuf) - 1)
-	constant, varies := lat.constant, lat.varies
 	dark := len(p.dark) > 0
+	transit := uint64(0)
 	for p.head != p.vis {
 		k := &p.rbuf[p.head&mask]
-		if k.Due >= before {
-			return
+		due := k.Due + lat.at(k.Due)
+		if due >= end {
+			break
 		}
 		p.head++
 		if dark && p.lost(k) {
 			s.lose(k, k.Due, LostCut)
 			continue
 		}
-		if varies {
-			k.Due += lat.at(k.Due)
-		} else {
-			k.Due += constant
+		if lat.varies && k.Seq%64 == 0 {
+			s.latencies.Add(uint64(due-k.Due) / 1000)
 		}
-		switch h := s.hop[k.Way]; {
-		case h >= 0 && h < hopSets:
-			if k.TTL--; k.TTL == 0 {
-				s.lose(k, k.Due, LostTTL)
-				continue
+		h := s.hop[k.Way]
+		switch {
+		case h >= 0 && k.TTL <= 1:
+			s.lose(k, due, LostTTL)
+		case h >= 0:
+			if h >= hopSets {
+				h = s.choose(k, h)
 			}
-			s.ports[h].put(k, key)
+			a := s.ports[h].in.put(k, key)
+			a.Due = due
+			a.TTL--
+			transit += uint64(k.Size)
+		case h == hopHere && sorted:
+			s.sink.put(k, key).Due = due
 		case h == hopHere:
-			s.deliver(k)
+			s.deliver(k, due)
 		default:
-			s.forward(k, h, key)
+			s.lose(k, due, LostNoRoute)
 		}
 	}
+	s.transit += transit
 }
 
-// forward is the rest of receive: equal-cost sets and packets without a route.
-func (s *Site) forward(k *nodes.Packet, h int32, key int32) {
-	if h == hopNone {
-		s.lose(k, k.Due, LostNoRoute)
-		return
-	}
-	if k.TTL--; k.TTL == 0 {
-		s.lose(k, k.Due, LostTTL)
-		return
-	}
+// choose picks a port of an equal-cost set for a packet.
+func (s *Site) choose(k *nodes.Packet, h int32) int32 {
 	set := s.sets[h-hopSets]
-	s.ports[set[spread(k.Way, k.Flow, len(set))]].put(k, key)
+	return int32(set[spread(k.Way, k.Flow, len(set))])
 }
 
 // spread picks one of n equal-cost circuits for a flow: packets of one flow go
@@ -311,16 +336,51 @@ func spread(way, flow uint16, n int) int {
 	return int((x >> 32) * uint64(n) >> 32)
 }
 
+// deliverSorted counts what several inputs delivered in this segment. Meters
+// look at the packets of a way in order of time.
+func (s *Site) deliverSorted() {
+	in := &s.sink
+	in.close()
+	if !s.apart() {
+		in.merge()
+		for range in.arena {
+			k, _ := in.take()
+			s.deliver(k, k.Due)
+		}
+	} else {
+		for i := range in.arena {
+			s.deliver(&in.arena[i], in.arena[i].Due)
+		}
+	}
+	in.reset()
+}
+
+// apart reports whether no way was delivered by two of the sink's runs.
+func (s *Site) apart() bool {
+	first := s.viaRun + 1
+	for _, r := range s.sink.runs {
+		s.viaRun++
+		for i := r.from; i < r.to; i++ {
+			v := &s.via[s.sink.arena[i].Way]
+			if *v >= first && *v != s.viaRun {
+				return false
+			}
+			*v = s.viaRun
+		}
+	}
+	return true
+}
+
 // deliver counts a packet that leaves the network here.
-func (s *Site) deliver(k *nodes.Packet) {
+func (s *Site) deliver(k *nodes.Packet, due des.Time) {
 	s.delivered++
 	m := &s.net.meters[k.Way]
-	if k.Born >= s.st.from && k.Due < s.st.to {
-		m.add(k, s.st.kind, s.st.fault)
+	if k.Born >= s.st.from && due < s.st.to {
+		m.add(k, due, s.st.stretch, s.st.fault)
 		return
 	}
-	st := s.net.history.find(k.Born, k.Due)
-	m.add(k, st.Kind, st.Fault)
+	stretch, fault := s.net.history.find(k.Born, due)
+	m.add(k, due, stretch, fault)
 }
 
 // lose counts a packet lost here at the given instant.
@@ -336,8 +396,7 @@ func (s *Site) lose(k *nodes.Packet, at des.Time, cause Cause) {
 	}
 	v := s.st
 	if k.Born < v.from || at >= v.to {
-		st := s.net.history.find(k.Born, at)
-		v.kind, v.fault = st.Kind, st.Fault
+		v.stretch, v.fault = s.net.history.find(k.Born, at)
 	}
 	s.losses[i-1].add(k, &v, cause)
 }
@@ -366,7 +425,7 @@ func (s *Site) emitOne(i int, limit des.Time) {
 	if len(s.scratch) == 0 {
 		return
 	}
-	key := int32(len(s.net.plant.Circuits)*4 + i) // after every fibre input
+	key := sourceKey + int32(i) // after every fibre input
 	bytes := uint64(0)
 	h := s.hop[src.way]
 	for j := range s.scratch {
@@ -377,19 +436,26 @@ func (s *Site) emitOne(i int, limit des.Time) {
 		} else {
 			k.Due += s.access.constant
 		}
-		switch {
-		case h >= 0 && h < hopSets:
-			s.ports[h].put(k, key)
-		case h == hopHere:
-			s.deliver(k)
-		case h >= hopHeld:
-			s.keep(k)
-		default:
-			s.forward(k, h, key)
-		}
+		s.enter(k, h, key)
 	}
 	src.packets += uint64(len(s.scratch))
 	src.bytes += bytes
+}
+
+// enter takes a packet into the network.
+func (s *Site) enter(k *nodes.Packet, h, key int32) {
+	switch {
+	case h >= hopHeld:
+		s.keep(k)
+	case h >= hopSets:
+		s.ports[s.choose(k, h)].in.put(k, key)
+	case h >= 0:
+		s.ports[h].in.put(k, key)
+	case h == hopHere:
+		s.deliver(k, k.Due)
+	default:
+		s.lose(k, k.Due, LostNoRoute)
+	}
 }
 
 // keep holds a packet at the ingress.
@@ -412,15 +478,11 @@ func (s *Site) release(now des.Time) {
 		}
 		s.stale = true
 		to := s.resolve(h.way)
-		key := int32(len(s.net.plant.Circuits)*4 + s.sourceOf(h.way))
+		key := sourceKey + int32(s.sourceOf(h.way))
 		for j := range h.buf {
 			k := &h.buf[j]
 			k.Due = now
-			if to >= 0 && to < hopSets {
-				s.ports[to].put(k, key)
-			} else {
-				s.forward(k, to, key)
-			}
+			s.enter(k, to, key)
 		}
 	}
 	s.held = kept
@@ -497,7 +559,7 @@ func (s *Site) addPort(c nodes.CircuitID, d nodes.Direction) {
 	s.portOf[c] = int16(len(s.ports))
 	s.ports = append(s.ports, port{
 		disc: queue.NewTiers(p.Classes, s.net.classOf, circuit.Rate), line: nodes.NewLine(circuit.Rate),
-		overhead: circuit.Overhead, circuit: c, dir: d, key: -1,
+		overhead: circuit.Overhead, circuit: c, dir: d, in: arrivals{key: -1},
 		hold: circuit.Carries == nodes.CarriesMoved && circuit.WhenDown == nodes.DownWait,
 	})
 }
