@@ -21,7 +21,7 @@ const (
 // command is one message that wants an answer.
 type command struct {
 	serial int64 // 0: free
-	tries  int
+	tries  int   // since the last sign of life
 	owner  ownerKind
 	index  int32
 	to     nodes.SiteID
@@ -158,6 +158,10 @@ func (c *Controller) answered(m *nodes.Message) {
 	if cmd == nil {
 		return
 	}
+	if m.N == answerInHand {
+		cmd.tries = 0 // it is only slow
+		return
+	}
 	done := *cmd
 	c.commands.drop(cmd)
 	switch done.owner {
@@ -203,12 +207,31 @@ type owed struct {
 	m  nodes.Message
 }
 
-// repay sends again what was given up.
+// repay sends again what was given up, as it should be by now.
 func (c *Controller) repay() {
 	list := c.owed
 	c.owed = nil
 	for _, o := range list {
-		c.command(o.to, o.m, ownerNone, 0)
+		m := o.m
+		switch {
+		case m.Op == opAssign && m.Way&release == 0:
+			h := &c.circuits[m.Circuit].held
+			i := slices.Index(h.sites, o.to)
+			if h.incarnation != m.N || i < 0 {
+				continue
+			}
+			a := h.assignmentAt(i)
+			a.flags |= atOnce
+			m = a.message(m.Circuit, m.N, true)
+		case m.Op == opSteer:
+			m.Circuit, m.B = nodes.None, 0
+			if i := slices.Index(c.stationsOf(m.Way, c.ways[m.Way].chain), o.to); i >= 0 {
+				m.Circuit = c.ways[m.Way].chain[i]
+			}
+		case m.Op == opPortDown:
+			continue
+		}
+		c.command(o.to, m, ownerNone, 0)
 	}
 }
 

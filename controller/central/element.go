@@ -93,6 +93,11 @@ func (e *Element) dispatch(m *nodes.Message) {
 		e.ready(m)
 	case opPortUp:
 		e.portUp(m)
+	case opPortDown:
+		if n := e.end(m.Circuit); n.incarnation == m.N {
+			e.setPort(n, nodes.PortDown)
+		}
+		e.answer(m, answerDone)
 	case opDrain:
 		e.drain(m)
 	case opDrained:
@@ -139,6 +144,8 @@ func (e *Element) assign(m *nodes.Message) {
 	case known && m.A == last.serial:
 		if last.done {
 			e.answerFibre(m, last.answer, last.fibre)
+		} else {
+			e.answer(m, answerInHand)
 		}
 		return
 	}

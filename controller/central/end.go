@@ -18,6 +18,9 @@ type end struct {
 	draining    int64 // command to drain; 0: none
 }
 
+// busy says whether the port is about to change.
+func (n end) busy() bool { return n.opening || n.timer != 0 || n.draining != 0 }
+
 // alarm is what the controller has not yet confirmed to have heard.
 type alarm struct {
 	serial int64
@@ -53,7 +56,9 @@ func (e *Element) activate(m *nodes.Message) {
 		return // of the past
 	}
 	if m.N == n.incarnation {
-		if !n.opening {
+		if n.opening {
+			e.answer(m, answerInHand)
+		} else {
 			e.answer(m, answerDone)
 		}
 		return
@@ -108,8 +113,9 @@ func (e *Element) drain(m *nodes.Message) {
 	n := e.end(m.Circuit)
 	switch {
 	case n.draining == m.A:
-		return // the same command again
-	case n.state == nodes.PortDown:
+		e.answer(m, answerInHand)
+		return
+	case m.N != n.incarnation || n.state == nodes.PortDown:
 		e.answer(m, answerDone)
 		return
 	}

@@ -175,6 +175,10 @@ func (c *Controller) circuitAlarm(m *nodes.Message) {
 	}
 	placed := !carries(k.state)
 	c.fails(m.Circuit, true)
+	if !k.dark[1-e] { // it sends into the dark, and cannot know
+		far := c.k.plant.Circuits[m.Circuit].Ends[1-e]
+		c.command(far, nodes.Message{Op: opPortDown, Settles: true, Circuit: m.Circuit, N: m.N}, ownerNone, 0)
+	}
 	if placed {
 		return // known already: absorbed
 	}

@@ -12,7 +12,8 @@ const (
 	opAssign   = nodes.OpFirstAgent + iota // own slots or a channel: see assignment
 	opActivate                             // open a route at an end, port up: Ref = *nodes.Trail, N
 	opPortUp                               // port up on the route that is open: Circuit, N
-	opDrain                                // take no more packets, send what waits: Circuit
+	opPortDown                             // port down, the far end is dark: Circuit, N
+	opDrain                                // take no more packets, send what waits: Circuit, N
 	opRate                                 // send at B bit/s: Circuit
 	opInstall                              // Ref = *nodes.Table
 	opSteer                                // Way by Circuit, held for B ps first
@@ -46,6 +47,7 @@ const (
 const (
 	answerDone int32 = iota
 	answerRefused
+	answerInHand // the command came again while it is being carried out
 )
 
 // Values of B in an alarm.

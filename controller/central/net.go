@@ -235,8 +235,10 @@ func (c *Controller) clone() *Controller {
 	return &d
 }
 
-// Settled says whether nothing is under way but circuit demand: no task, no
-// job, no command without an answer.
+// Settled says whether nothing is under way but circuit demand: no task, job,
+// command without an answer or owed, alarm unheard, hold-off or port that is
+// about to change. Timers that have become idle do not count, unlike messages
+// that settle. Wait-to-restore does not count either.
 func (n *Net) Settled() bool {
 	c := n.ctl
 	for _, t := range c.tasks {
@@ -246,6 +248,11 @@ func (n *Net) Settled() bool {
 	}
 	for i := range c.commands.list {
 		if cmd := &c.commands.list[i]; cmd.serial != 0 && cmd.m.Settles {
+			return false
+		}
+	}
+	for _, e := range n.elements {
+		if len(e.alarms) > 0 || slices.ContainsFunc(e.ends, end.busy) {
 			return false
 		}
 	}

@@ -24,6 +24,7 @@ type fakeNet struct {
 	lose    func(now des.Time, to nodes.SiteID, m *nodes.Message) bool // nil: nothing
 	sites   []fakeSite
 	events  []nodes.Event
+	dark    []bool // by fibre
 }
 
 // fakeSite is a site as its agent sees it.
@@ -72,7 +73,12 @@ func (s *fakeSite) Send(to nodes.SiteID, m nodes.Message) {
 	s.f.push(m)
 }
 
-func (s *fakeSite) OpenTrail(t nodes.Trail) { s.trails[t.Circuit] = t }
+func (s *fakeSite) OpenTrail(t nodes.Trail) {
+	s.trails[t.Circuit] = t
+	if s.f.isDark(t.Fibres) {
+		s.f.tell(s.f.now, s.id, nodes.Message{Op: nodes.OpLightLost, Circuit: t.Circuit, N: t.Incarnation})
+	}
+}
 func (s *fakeSite) SetPort(c nodes.CircuitID, p nodes.PortState) {
 	s.ports[c] = p
 	if p == nodes.PortUp {
@@ -97,7 +103,7 @@ func (s *fakeSite) Note(what, subject, detail string) {
 
 // newFake starts agents over a plant; messages between sites take delay.
 func newFake(p *nodes.Plant, cfg Config, delay func(from, to nodes.SiteID) des.Time, orders ...controller.Order) *fakeNet {
-	f := &fakeNet{plant: p, delay: delay, net: New(p, cfg, orders)}
+	f := &fakeNet{plant: p, delay: delay, net: New(p, cfg, orders), dark: make([]bool, len(p.Fibres))}
 	for s := range p.Sites {
 		f.sites = append(f.sites, newFakeSite(f, nodes.SiteID(s)))
 	}
@@ -207,21 +213,32 @@ func (f *fakeNet) order(at des.Time, o controller.Order) {
 	f.tell(at, f.net.k.cfg.Site, nodes.Message{Op: nodes.OpOrder, Ref: &o})
 }
 
-// cut darkens a fibre: its ends and the ends of every circuit over it see it
-// at once. What is over it is read when the instant comes.
+// isDark says whether a fibre of a route is dark.
+func (f *fakeNet) isDark(route []nodes.FibreID) bool {
+	return slices.ContainsFunc(route, func(g nodes.FibreID) bool { return f.dark[g] })
+}
+
+// light darkens a fibre or lights it again: its ends, and the ends of every
+// circuit over it for which that makes a difference, see it at once. What is
+// over it is read when the instant comes.
 func (f *fakeNet) light(at des.Time, fibre nodes.FibreID, lost bool) {
 	f.run(at)
+	if f.dark[fibre] == lost {
+		return
+	}
+	f.dark[fibre] = false // what else is dark?
 	ops := [2]nodes.Op{nodes.OpLightBack, nodes.OpFibreLit}
 	if lost {
 		ops = [2]nodes.Op{nodes.OpLightLost, nodes.OpFibreDark}
 	}
 	for c := range f.plant.Circuits {
 		for _, s := range f.plant.Circuits[c].Ends {
-			if tr := &f.sites[s].trails[c]; slices.Contains(tr.Fibres, fibre) {
+			if tr := &f.sites[s].trails[c]; slices.Contains(tr.Fibres, fibre) && !f.isDark(tr.Fibres) {
 				f.tell(at, s, nodes.Message{Op: ops[0], Circuit: nodes.CircuitID(c), N: tr.Incarnation})
 			}
 		}
 	}
+	f.dark[fibre] = lost
 	for _, s := range f.plant.Fibres[fibre].Ends {
 		f.tell(at, s, nodes.Message{Op: ops[1], Fibre: fibre})
 	}
@@ -233,6 +250,7 @@ func (f *fakeNet) clone() *fakeNet {
 	g.net = f.net.Clone()
 	g.pending = slices.Clone(f.pending)
 	g.events = slices.Clone(f.events)
+	g.dark = slices.Clone(f.dark)
 	g.sites = slices.Clone(f.sites)
 	for i := range g.sites {
 		s := &g.sites[i]

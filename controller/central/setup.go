@@ -110,7 +110,7 @@ func (c *Controller) giveUp(id int32) {
 	c.withdraw(ownerTask, id)
 	if t.phase == phaseActivate {
 		for _, s := range c.k.plant.Circuits[t.circuit].Ends {
-			c.command(s, nodes.Message{Op: opDrain, Settles: true, Circuit: t.circuit}, ownerNone, 0)
+			c.command(s, nodes.Message{Op: opDrain, Settles: true, Circuit: t.circuit, N: t.h.incarnation}, ownerNone, 0)
 		}
 	}
 	if t.phase != phaseDecide {

@@ -69,8 +69,8 @@ func TestBatch(t *testing.T) {
 		lag  des.Time // of what is not serial
 	}{
 		{"computing", Config{Compute: s}, 2 * des.Millisecond},
-		{"commands", Config{Command: constant(s), Retry: des.Minute}, 2 * des.Millisecond},
-		{"commands, three at once", Config{Command: constant(s), Retry: des.Minute, CommandsAtOnce: 3}, 2 * des.Millisecond},
+		{"commands", Config{Command: constant(s)}, 2 * des.Millisecond},
+		{"commands, three at once", Config{Command: constant(s), CommandsAtOnce: 3}, 2 * des.Millisecond},
 	} {
 		t.Run(k.name, func(t *testing.T) {
 			p := plant(2, "ab")

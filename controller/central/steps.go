@@ -3,6 +3,7 @@ package central
 import (
 	"fmt"
 	"math/bits"
+	"slices"
 
 	"ferrule/controller"
 	"ferrule/des"
@@ -64,13 +65,30 @@ func (c *Controller) wake() {
 // for its circuit.
 func (c *Controller) inHand(o *controller.Order) bool {
 	switch o.Kind {
-	case controller.SetUp, controller.TearDown, controller.Resize:
+	case controller.SetUp, controller.Resize:
 		return c.circuits[o.Circuit].task != nodes.None
+	case controller.TearDown:
+		return c.circuits[o.Circuit].task != nodes.None || c.movesOnto(o.Circuit)
 	case controller.Move, controller.Return, controller.Request:
 		return false
 	default:
 		panic("central: unknown kind of order")
 	}
+}
+
+// movesOnto says whether a move onto a circuit is in hand.
+func (c *Controller) movesOnto(id nodes.CircuitID) bool {
+	for _, t := range c.tasks {
+		if t == nil || t.kind != taskMove {
+			continue
+		}
+		for _, chain := range t.chains {
+			if slices.Contains(chain, id) {
+				return true
+			}
+		}
+	}
+	return false
 }
 
 // condition says whether the condition of a step holds, or why it never will.
@@ -150,6 +168,9 @@ func (c *Controller) take(i int) {
 func (c *Controller) takeSetUp(i int, o *controller.Order) string {
 	switch s := c.circuits[o.Circuit].state; s {
 	case controller.Planned, controller.Blocked, controller.TornDown:
+		if c.k.plant.Circuits[o.Circuit].Recovery == nodes.RecoveryOnePlus {
+			return "1+1 recovery is not supported"
+		}
 		c.enter(o.Circuit, controller.SettingUp)
 		c.begin(task{kind: taskSetUp, circuit: o.Circuit, step: int32(i)}, rankOrder)
 		return ""
@@ -171,7 +192,7 @@ func (c *Controller) takeResize(i int, o *controller.Order) string {
 	r := o.Rate
 	if r == 0 {
 		hi, lo := bits.Mul64(uint64(p.Rate), uint64(o.Slots))
-		q, _ := bits.Div64(hi, lo, uint64(p.Slots))
+		q, _ := bits.Div64(hi, lo, uint64(max(1, p.Slots)))
 		r = nodes.Rate(q)
 	}
 	c.begin(task{kind: taskResize, circuit: o.Circuit, step: int32(i), slots: o.Slots, rate: r}, rankOrder)

@@ -55,7 +55,7 @@ func (c *Controller) tearDownGoesOn(id int32) {
 		if t.sent == 0 {
 			t.phase, t.waiting = phaseDrain, 2
 			for _, s := range c.k.plant.Circuits[t.circuit].Ends {
-				c.command(s, nodes.Message{Op: opDrain, Settles: true, Circuit: t.circuit}, ownerTask, id)
+				c.command(s, nodes.Message{Op: opDrain, Settles: true, Circuit: t.circuit, N: k.active}, ownerTask, id)
 			}
 			return
 		}
