@@ -40,8 +40,8 @@ const (
 // fibre: group index 1.4682 over c = 299 792.458 km/s, 4.897 388 us, in
 // picoseconds and rounded to the nearest.
 //
-// Source: group index of G.652 fibre at 1550 nm from data sheets (reference
-// row F-02: 4.89739 us/km).
+// Source: group index of G.652 fibre at 1550 nm from data sheets, value from
+// memory; the quotient computed, 4.89739 us/km.
 const LightPerKilometre des.Time = 4_897_388
 
 // Light reports how long light takes over l of fibre, rounded down to a whole

@@ -106,14 +106,17 @@ func (m *Model) control() error {
 	for _, a := range outside {
 		m.Network.Schedule(a)
 	}
-	for i := range orders {
+	for i := range orders { // the controller has booked them; here they open a stretch
+		if orders[i].After.Kind != controller.Always {
+			continue
+		}
 		name := ""
 		for _, s := range steps {
 			if s.Order == i {
 				name = fmt.Sprintf("%s %s", s.Act.Verb, s.Act.Subject)
 			}
 		}
-		m.Network.Schedule(packet.Act{At: orders[i].At, Kind: packet.ActOrder, Name: name, Site: cfg.Site, Ref: &orders[i]})
+		m.Network.Schedule(packet.Act{At: orders[i].At, Kind: packet.ActOrder, Name: name, Site: cfg.Site})
 	}
 	return nil
 }

@@ -66,6 +66,15 @@ type Asked struct {
 	Measured *float64 `json:"measured,omitempty"`
 }
 
+// A Demand is what became of a stream of requests for circuits.
+type Demand struct {
+	Name         string  `json:"name"`
+	Offered      int64   `json:"offered"`
+	Blocked      int64   `json:"blocked"`
+	Active       int64   `json:"active"` // at the end
+	BlockedRatio float64 `json:"blocked_ratio"`
+}
+
 // A SiteRate is a bit rate at a site.
 type SiteRate struct {
 	Site string  `json:"site"`
@@ -101,6 +110,7 @@ type Audit struct {
 	SlotsOwned             int64    `json:"slots_owned"` // by circuits, each direction of each fibre
 	SlotsUsed              int64    `json:"slots_used"`  // marked so by the fibres
 	LittlePorts            int64    `json:"little_ports"`
+	PacketHops             int64    `json:"packet_hops"` // packets put on a line
 	OK                     bool     `json:"ok"`
 	Failures               []string `json:"failures"`
 }

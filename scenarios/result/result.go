@@ -74,6 +74,8 @@ type Run struct {
 	Steps      []Step      `json:"steps"`
 	Events     []Event     `json:"events"` // in order of time
 	Asked      []Asked     `json:"asked,omitempty"`
+	Transit    []SiteRate  `json:"transit"` // received from a fibre and sent on by each router
+	Demands    []Demand    `json:"demands,omitempty"`
 	Price      Price       `json:"price"`
 	Audit      Audit       `json:"audit"`
 	Defaults   []Default   `json:"defaults"`
