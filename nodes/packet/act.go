@@ -200,7 +200,7 @@ func (n *Network) cut(now des.Time, a *Act) {
 	}
 	span := n.light.Cut(int(f), a.Where, now, dirs)
 	n.ways.Changed(now, func(g nodes.FibreID) bool { return n.light.Dark(int(g), now) })
-	n.log = append(n.log, nodes.Event{At: now, Site: nodes.None, What: "cut", Subject: fibre.Name, Detail: fmt.Sprintf("at %v of light from %s", a.Where, n.plant.Sites[fibre.Ends[0]].Name)})
+	n.log = append(n.log, nodes.Event{At: now, Site: nodes.None, What: "cut", Subject: fibre.Name, Detail: n.place(f, a.Where)})
 	for i, end := range fibre.Ends {
 		if !dirs.Has(fibre.From(fibre.Other(end))) {
 			continue
@@ -226,6 +226,13 @@ func (n *Network) cut(now des.Time, a *Act) {
 			to.book(nodes.Message{At: now + p.delay - d.offset + n.cfg.Detect, From: to.id, To: to.id, Op: nodes.OpLightLost, Circuit: p.circuit, N: p.incarnation, Settles: true})
 		}
 	})
+}
+
+// place words a place of a fibre by its distance from the fibre's first end.
+func (n *Network) place(f nodes.FibreID, light des.Time) string {
+	fibre := &n.plant.Fibres[f]
+	km := float64(fibre.Length) / float64(nodes.Kilometre) * float64(light) / float64(fibre.Delay)
+	return fmt.Sprintf("%.4g km from %s", km, n.plant.Sites[fibre.Ends[0]].Name)
 }
 
 // repair ends all darkness of a fibre.

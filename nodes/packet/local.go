@@ -93,6 +93,9 @@ func (x *local) SetPort(c nodes.CircuitID, state nodes.PortState) {
 	}
 	q.state = state
 	s.stale = true
+	if x.now > 0 {
+		s.note(x.now, [...]string{"port down", "port up", "port draining"}[state], s.net.plant.Circuits[c].Name)
+	}
 }
 
 // SetRate implements nodes.Local.
@@ -152,6 +155,11 @@ func (x *local) Counters(c nodes.CircuitID) nodes.PortCounters {
 // Note implements nodes.Local.
 func (x *local) Note(what, subject, detail string) {
 	x.events = append(x.events, nodes.Event{At: x.now, Site: x.id, What: what, Subject: subject, Detail: detail})
+}
+
+// note adds to the site's event log what the network itself saw or did.
+func (s *Site) note(now des.Time, what, subject string) {
+	s.events = append(s.events, nodes.Event{At: now, Site: s.id, What: what, Subject: subject})
 }
 
 // book puts a message into the site's agenda.

@@ -236,6 +236,11 @@ func (s *Site) lightNews(now des.Time, m *nodes.Message) bool {
 			return false
 		}
 		p.told = m.Op == nodes.OpLightLost
+		what := "light back"
+		if p.told {
+			what = "light lost"
+		}
+		s.note(now, what, s.net.plant.Circuits[m.Circuit].Name)
 		return true
 	}
 	return false
