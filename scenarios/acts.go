@@ -122,7 +122,9 @@ func (l *actList) resolve(earlier []Act) []Act {
 		}
 	}
 	for j, i := range waits {
-		if q := l.list.item(i).field("after"); q.given() && l.kind != inPlace {
+		v := acts[len(earlier)+j].Verb
+		outside := v == VerbCut || v == VerbRepair || v == VerbScale // noted by when
+		if q := l.list.item(i).field("after"); q.given() && l.kind != inPlace && !outside {
 			acts[len(earlier)+j].After = l.after(q, l.raw[i].After, acts, len(earlier)+j)
 		}
 	}
@@ -247,6 +249,8 @@ func (l *actList) when(p *place, raw *rawAct, a *Act) {
 	switch {
 	case at.given() && after.given():
 		after.fault("write at or after", "stands beside at")
+	case after.given() && (p.field("cut").given() || p.field("repair").given() || p.field("scale").given()):
+		after.fault("write at: and an instant", "what happens from outside waits for nothing")
 	case at.given():
 		a.At = value(raw.At, 0)
 		if raw.At != nil && a.At > l.r.s.Run.Length && l.r.raw.Run.Length != nil {

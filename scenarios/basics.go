@@ -6,6 +6,7 @@ import (
 	"ferrule/des"
 	"ferrule/des/random"
 	"ferrule/nodes"
+	"ferrule/workloads"
 )
 
 // Values that hold when a file does not say otherwise. They are common
@@ -47,7 +48,7 @@ const (
 	maxSpan   = 24 * des.Hour // of any timer
 	maxFibre  = 40000 * nodes.Kilometre
 	maxPlane  = 40000 * nodes.Kilometre
-	maxRate   = 4000 * nodes.Gbps
+	maxRate   = workloads.MaxLoad
 	maxPacket = nodes.Bytes(65535) // RFC 791
 )
 

@@ -80,6 +80,7 @@ func (r *resolver) priorities(p *place, setUp, holding *int, or int) (int, int) 
 func (r *resolver) route(p *place, raw *rawCircuit, c *Circuit) {
 	between, along := p.field("between"), p.field("along")
 	joined := false
+	c.A, c.B = nodes.None, nodes.None
 	switch {
 	case between.given():
 		c.A, c.B, joined = r.ends(between, raw.Between)
@@ -95,13 +96,15 @@ func (r *resolver) route(p *place, raw *rawCircuit, c *Circuit) {
 	var ids []nodes.FibreID
 	for i, name := range raw.Along {
 		id := r.fibres.find(along.item(i), name)
-		if id < 0 {
+		if id < 0 || r.s.Fibres[id].A < 0 { // noted already
 			return
 		}
 		ids = append(ids, nodes.FibreID(id))
 	}
 	switch {
-	case len(along.node.Content) == 0:
+	case len(ids) < len(along.node.Content): // noted already
+	case len(ids) == 0 && r.spoilt[along.node]:
+	case len(ids) == 0:
 		along.fault("name the fibres in order", "names no fibre")
 	case between.given() && !joined:
 	case joined:

@@ -12,7 +12,6 @@ import (
 	"strings"
 
 	"ferrule/des"
-	"ferrule/des/random"
 	"ferrule/nodes"
 	"ferrule/nodes/optical"
 )
@@ -38,6 +37,7 @@ func (r *resolver) resolveAggregates() {
 		a.Traffic = r.trafficOf(p, raw.Traffic, a.Class)
 		r.load(p, raw, &a)
 		r.interval(p, a.Start, a.Stop)
+		r.overlap(p, &a)
 		r.s.Aggregates = append(r.s.Aggregates, a)
 	}
 	if len(r.s.Aggregates) > maxAggregates {
@@ -90,6 +90,26 @@ func (r *resolver) trafficOf(p *place, name string, class nodes.ClassID) int {
 // classKey is the place of a key of a class.
 func (r *resolver) classKey(c nodes.ClassID, key string) *place {
 	return r.t.top().field("classes").item(int(c)).field(key)
+}
+
+// overlap checks that an aggregate sends at some time at which its traffic does.
+func (r *resolver) overlap(p *place, a *Aggregate) {
+	if a.Traffic < 0 {
+		return
+	}
+	t := &r.s.Traffic[a.Traffic]
+	if a.Start < a.Stop && t.Start < t.Stop && max(a.Start, t.Start) >= min(a.Stop, t.Stop) {
+		p.fault("let their times overlap", "it sends from %s to %s, and its traffic %s from %s to %s",
+			until(a.Start), until(a.Stop), t.Name, until(t.Start), until(t.Stop))
+	}
+}
+
+// until writes an instant, which may be never.
+func until(t des.Time) string {
+	if t == des.Never {
+		return "the end"
+	}
+	return FormatTime(t)
 }
 
 // load reads load or flows.
@@ -285,7 +305,7 @@ func (r *resolver) resolveRequests() {
 		}
 		q.Slots = within(p.field("slots"), raw.Slots, 1, optical.SlotsPerChannel, 1, plain)
 		q.PerSecond = within(p.field("arrive"), (*float64)(raw.Arrive), 1e-9, 1e6, 1, perSecond)
-		q.Hold = random.Spec(value(raw.Hold, timeLaw{}))
+		q.Hold = held(p.field("hold"), raw.Hold)
 		for _, need := range [][2]string{{"slots", "write slots: 1"}, {"arrive", "write for instance arrive: 5/s"}, {"hold", "write for instance hold: 60s"}} {
 			if !p.field(need[0]).given() {
 				r.missing(p, need[0], need[1])

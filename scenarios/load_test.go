@@ -9,6 +9,8 @@ import (
 	"testing"
 
 	"github.com/google/go-cmp/cmp"
+
+	"ferrule/workloads"
 )
 
 // update writes the faults that are found into the files that expect them. Read
@@ -87,5 +89,14 @@ func TestManyFaults(t *testing.T) {
 	want, _ := os.ReadFile(path)
 	if diff := cmp.Diff(strings.Split(string(want), "\n"), strings.Split(err.Error()+"\n", "\n")); diff != "" {
 		t.Errorf("faults (-want +got):\n%s", diff)
+	}
+}
+
+// Every codec that a file can name is one that workloads has.
+func TestCodecs(t *testing.T) {
+	for _, name := range codecs {
+		if _, err := workloads.ParseCodec(name); err != nil {
+			t.Error(err)
+		}
 	}
 }

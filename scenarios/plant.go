@@ -51,22 +51,25 @@ func airline(a, b *Site) nodes.Length {
 	return nodes.Length(math.Sqrt(float64(dx*dx) + float64(dy*dy)))
 }
 
-// ends finds the two sites of "between: [a, b]"; ok is false after a fault.
+// ends finds the two sites of "between: [a, b]"; after a fault ok is false and
+// both are none.
 func (r *resolver) ends(p *place, between []string) (a, b nodes.SiteID, ok bool) {
 	if n := len(p.node.Content); n != 2 {
-		p.fault("write [ a, b ]", "joins two sites, not %d", n)
-		return 0, 0, false
+		if !r.spoilt[p.node] {
+			p.fault("write [ a, b ]", "joins two sites, not %d", n)
+		}
+		return nodes.None, nodes.None, false
 	}
 	if len(between) != 2 {
-		return 0, 0, false
+		return nodes.None, nodes.None, false
 	}
 	x, y := r.sites.find(p.item(0), between[0]), r.sites.find(p.item(1), between[1])
 	if x < 0 || y < 0 {
-		return 0, 0, false
+		return nodes.None, nodes.None, false
 	}
 	if x == y {
 		p.fault("write two different sites", "joins %s to itself", between[0])
-		return 0, 0, false
+		return nodes.None, nodes.None, false
 	}
 	return nodes.SiteID(x), nodes.SiteID(y), true
 }
@@ -97,7 +100,7 @@ func (r *resolver) resolveFibres() {
 	for i := range r.raw.Fibres {
 		raw, p := &r.raw.Fibres[i], list.item(i)
 		f := r.fibreBase(p, rawFibreDefaults{raw.Channels, raw.ChannelRate, raw.Lit}, r.base.fibre)
-		f.Name, f.Pos = raw.Name, p.pos()
+		f.Name, f.Pos, f.A, f.B = raw.Name, p.pos(), nodes.None, nodes.None
 		perChannel, _ := channelSlots(f.ChannelRate)
 		f.Slots = f.Lit * perChannel
 		joined := false

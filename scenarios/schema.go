@@ -90,7 +90,7 @@ type Traffic struct {
 	Name   string
 	Pos    Pos
 	Model  Model
-	Packet random.Spec // bytes of a packet at the IP layer
+	Packet random.Spec // constant, poisson: bytes of a packet at the IP layer
 	Rate   nodes.Rate  // of one flow, IP bits; 0 if the model or the codec says it
 	Codec  string      // voice
 
@@ -99,8 +99,8 @@ type Traffic struct {
 	Size            random.Spec // files: bytes of a file
 	Pace            nodes.Rate  // files: the rate at which one file is sent
 
-	FlowsArrive FlowArrival
-	Hold        random.Spec // picoseconds a flow lasts; the zero Spec (constant 0) if it never ends
+	FlowsArrive FlowArrival // voice
+	Hold        random.Spec // voice: picoseconds a flow lasts; the zero Spec (constant 0) if it never ends
 	Start       des.Time
 	Stop        des.Time // des.Never if it goes on to the end
 }

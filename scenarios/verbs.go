@@ -40,6 +40,9 @@ func (r *resolver) cut(p, q *place, raw *rawAct, a *Act) {
 	a.Fibres = []nodes.FibreID{nodes.FibreID(id)}
 	f := &r.s.Fibres[id]
 	a.Where = f.Length / 2
+	if f.A < 0 { // noted already
+		return
+	}
 	if where.given() && raw.Where != "" {
 		l, bad := place1(raw.Where, f, r.s.Sites)
 		if bad != nil {
@@ -182,7 +185,7 @@ func (l *actList) leads(chain []nodes.CircuitID, from, to nodes.SiteID) bool {
 	at := from
 	for _, id := range chain {
 		switch c := &l.circuits[id]; {
-		case c.A == c.B:
+		case c.A < 0:
 			return true
 		case c.A == at:
 			at = c.B
