@@ -228,6 +228,8 @@ func (c *Controller) repay() {
 			if i := slices.Index(c.stationsOf(m.Way, c.ways[m.Way].chain), o.to); i >= 0 {
 				m.Circuit = c.ways[m.Way].chain[i]
 			}
+		case m.Op == opRate:
+			m = c.rateMessage(m.Circuit, c.circuits[m.Circuit].rate)
 		case m.Op == opPortDown:
 			continue
 		}

@@ -108,10 +108,10 @@ const (
 type job struct {
 	kind   jobKind
 	rank   uint8
-	task   int32 // jobTask
-	stream int32 // jobRequest
-	step   int32 // jobRequest: of the order behind it, or None
-	number uint64
+	task   int32  // jobTask
+	stream int32  // jobRequest
+	step   int32  // jobRequest: of the order behind it, or None
+	number uint64 // of the task, or of the request in its stream
 	hold   des.Time
 }
 
@@ -190,7 +190,9 @@ func (c *Controller) decide() {
 		c.tablesQueued = false
 		c.renewTables()
 	case jobTask:
-		c.run(j.task)
+		if t := c.tasks[j.task]; t != nil && uint64(t.number) == j.number {
+			c.run(j.task)
+		}
 	case jobRequest:
 		c.admit(&j)
 	default:

@@ -103,7 +103,10 @@ func (e *Element) dispatch(m *nodes.Message) {
 	case opDrained:
 		e.drained(m)
 	case opRate:
-		e.x.SetRate(m.Circuit, nodes.Rate(m.B))
+		if n := e.end(m.Circuit); n.rated < m.A {
+			n.rated = m.A
+			e.x.SetRate(m.Circuit, nodes.Rate(m.B))
+		}
 		e.answer(m, answerDone)
 	case opInstall:
 		e.install(m)

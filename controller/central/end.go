@@ -16,6 +16,7 @@ type end struct {
 	opening     bool  // traffic is not ready yet
 	timer       int64 // of the hold-off that runs; 0: none
 	draining    int64 // command to drain; 0: none
+	rated       int64 // last command about the rate
 }
 
 // busy says whether the port is about to change.

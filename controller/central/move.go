@@ -145,6 +145,8 @@ func (c *Controller) steerFails(id int32, why string) {
 		}
 		if t.kind == taskMove {
 			c.leave(w, t.chains[i])
+		} else {
+			c.leave(w, nil)
 		}
 	}
 	c.x.Note("move failed", c.steps[t.step].order.Name, why)
@@ -154,20 +156,23 @@ func (c *Controller) steerFails(id int32, why string) {
 // leave has the sites within a chain that a way goes over no longer forget it,
 // once what is under way there has arrived.
 func (c *Controller) leave(w uint16, chain []nodes.CircuitID) {
-	if len(chain) < 2 {
+	y := &c.ways[w]
+	if len(chain) > 1 {
+		y.left = append(y.left, c.stationsOf(w, chain)[1:]...)
+	}
+	if len(y.left) == 0 {
 		return
 	}
-	y := &c.ways[w]
-	y.left = append(y.left, c.stationsOf(w, chain)[1:]...)
 	c.number++
 	y.swept = c.number
 	later(c.x, c.now+c.chainDelay(chain)+c.k.cfg.OrderBound, nodes.Message{Op: opSweep, Settles: true, Way: w, A: y.swept})
 }
 
-// sweep ends the steering of a way at sites where it is of no use any more.
+// sweep ends the steering of a way at sites where it is of no use any more. A
+// move that is in hand needs some of it, and sweeps when it is done.
 func (c *Controller) sweep(w uint16, number int64) {
 	y := &c.ways[w]
-	if y.swept != number {
+	if y.swept != number || c.moving(w) {
 		return
 	}
 	in := c.stationsOf(w, y.chain)
@@ -177,6 +182,11 @@ func (c *Controller) sweep(w uint16, number int64) {
 		}
 	}
 	y.left = nil
+}
+
+// moving says whether a move or a return of a way is in hand.
+func (c *Controller) moving(w uint16) bool {
+	return slices.ContainsFunc(c.tasks, func(t *task) bool { return t != nil && slices.Contains(t.ways, w) })
 }
 
 // chainDelay is the delay of light over a chain.

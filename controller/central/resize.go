@@ -56,8 +56,13 @@ func (c *Controller) sendRate(id int32) {
 	t := c.tasks[id]
 	t.waiting = 2
 	for _, s := range c.k.plant.Circuits[t.circuit].Ends {
-		c.command(s, nodes.Message{Op: opRate, Settles: true, Circuit: t.circuit, B: int64(t.rate)}, ownerTask, id)
+		c.command(s, c.rateMessage(t.circuit, t.rate), ownerTask, id)
 	}
+}
+
+// rateMessage is the command to send at r.
+func (c *Controller) rateMessage(id nodes.CircuitID, r nodes.Rate) nodes.Message {
+	return nodes.Message{Op: opRate, Settles: true, Circuit: id, B: int64(r)}
 }
 
 // resizeGoesOn takes the next step of a resize when the last is done.
@@ -87,7 +92,8 @@ func (c *Controller) resizeGoesOn(id int32) {
 }
 
 // resizeFails leaves every site with the smaller of what the circuit had and
-// what it was to have, or with what it has gained already.
+// what it was to have, or with what it has gained already, and both ends with
+// the rate that was known to be in force.
 func (c *Controller) resizeFails(id int32, why string) {
 	t := c.tasks[id]
 	k := &c.circuits[t.circuit]
@@ -102,6 +108,11 @@ func (c *Controller) resizeFails(id int32, why string) {
 			a := k.held.assignmentAt(i)
 			a.flags |= atOnce
 			c.command(s, a.message(t.circuit, k.held.incarnation, true), ownerNone, 0)
+		}
+	}
+	if t.phase == phaseDrain || t.phase == phaseActivate {
+		for _, s := range c.k.plant.Circuits[t.circuit].Ends {
+			c.command(s, c.rateMessage(t.circuit, k.rate), ownerNone, 0)
 		}
 	}
 	if k.state == controller.Resizing {

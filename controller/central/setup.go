@@ -135,9 +135,9 @@ func (c *Controller) crankBack(id int32, why string) {
 	case t.tries >= c.k.cfg.Attempts:
 		c.blocked(id, why)
 	case t.kind == taskRestore:
-		c.enqueue(job{kind: jobTask, rank: rankRestore, task: id})
+		c.enqueueTask(id, rankRestore)
 	default:
-		c.enqueue(job{kind: jobTask, rank: rankOrder, task: id})
+		c.enqueueTask(id, rankOrder)
 	}
 }
 

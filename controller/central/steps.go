@@ -62,28 +62,35 @@ func (c *Controller) wake() {
 }
 
 // inHand says whether an order must wait because something else is in hand
-// for its circuit.
+// for its circuit or its ways.
 func (c *Controller) inHand(o *controller.Order) bool {
 	switch o.Kind {
 	case controller.SetUp, controller.Resize:
 		return c.circuits[o.Circuit].task != nodes.None
 	case controller.TearDown:
-		return c.circuits[o.Circuit].task != nodes.None || c.movesOnto(o.Circuit)
-	case controller.Move, controller.Return, controller.Request:
+		return c.circuits[o.Circuit].task != nodes.None || c.movesOver(o.Circuit)
+	case controller.Move, controller.Return:
+		return slices.ContainsFunc(o.Ways, c.moving)
+	case controller.Request:
 		return false
 	default:
 		panic("central: unknown kind of order")
 	}
 }
 
-// movesOnto says whether a move onto a circuit is in hand.
-func (c *Controller) movesOnto(id nodes.CircuitID) bool {
+// movesOver says whether a move onto or off a circuit is in hand.
+func (c *Controller) movesOver(id nodes.CircuitID) bool {
 	for _, t := range c.tasks {
-		if t == nil || t.kind != taskMove {
+		if t == nil {
 			continue
 		}
 		for _, chain := range t.chains {
 			if slices.Contains(chain, id) {
+				return true
+			}
+		}
+		for _, w := range t.ways {
+			if slices.Contains(c.ways[w].chain, id) {
 				return true
 			}
 		}

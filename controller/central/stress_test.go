@@ -87,7 +87,10 @@ func TestAllAgreeInTheEnd(t *testing.T) {
 				f.order(at, randomOrder(r, p))
 			}
 			f.run(at)
-			f.sound(t)
+			if f.sound(t); t.Failed() {
+				f.log(t)
+				t.Fatalf("seed %d", seed)
+			}
 		}
 		// Alarms may have been lost for good: one more change of every fibre,
 		// with nothing lost, tells all.

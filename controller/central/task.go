@@ -75,19 +75,21 @@ func (c *Controller) begin(t task, rank uint8) {
 	if t.circuit != nodes.None {
 		c.circuits[t.circuit].task = id
 	}
-	c.enqueue(job{kind: jobTask, rank: rank, task: id})
+	c.enqueueTask(id, rank)
+}
+
+// enqueueTask lets a task wait to be decided.
+func (c *Controller) enqueueTask(id int32, rank uint8) {
+	c.enqueue(job{kind: jobTask, rank: rank, task: id, number: uint64(c.tasks[id].number)})
 }
 
 // end lets go of a task, and of a step that waits for it.
 func (c *Controller) end(id int32, failed string) {
 	t := c.tasks[id]
 	c.withdraw(ownerTask, id)
-	for i := c.jobs.head; i < len(c.jobs.list); i++ {
-		if j := &c.jobs.list[i]; j.kind == jobTask && j.task == id {
-			c.jobs.list = slices.Delete(c.jobs.list, i, i+1)
-			break
-		}
-	}
+	q := &c.jobs
+	left := slices.DeleteFunc(q.list[q.head:], func(j job) bool { return j.kind == jobTask && j.task == id })
+	q.list = q.list[:q.head+len(left)]
 	c.tasks[id] = nil
 	if t.circuit != nodes.None && c.circuits[t.circuit].task == id {
 		c.circuits[t.circuit].task = nodes.None
