@@ -2,6 +2,7 @@ package workloads
 
 import (
 	"math"
+	"reflect"
 	"testing"
 
 	"ferrule/des"
@@ -321,5 +322,48 @@ func BenchmarkTrain(b *testing.B) {
 			}
 			b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(n), "ns/packet")
 		})
+	}
+}
+
+func TestVoiceAndFilesFaults(t *testing.T) {
+	for _, x := range []struct {
+		c    VoiceConfig
+		want string
+	}{
+		{VoiceConfig{Codec: 9}, "codec: no codec 9"},
+		{VoiceConfig{Calls: 5, Interval: 25 * des.Millisecond, Pattern: Random},
+			"interval: 25ms is not 10 ms, 20 ms ... 60 ms\n" +
+				"calls: 5; a number of calls stands alone, without a load, for calls that last\n" +
+				"name: missing\nload: 0 bit/s is not between 1 bit/s and 4 Tbit/s"},
+		{VoiceConfig{Common: Common{Name: "v", Load: 1}, Hold: random.Spec{Mean: 3}}, "hold: calls that last have no length"},
+		{VoiceConfig{Common: Common{Name: "v", Load: 1}, Pattern: 7}, "pattern: no pattern 7"},
+	} {
+		if _, err := NewVoice(x.c); err == nil || err.Error() != x.want {
+			t.Errorf("faults:\n%v\nwant:\n%s", err, x.want)
+		}
+	}
+	_, err := NewFiles(FilesConfig{Common: Common{Name: "f", Load: 1}, Pace: -1, Size: random.Spec{Kind: random.Pareto, Min: 100, Shape: 0.9}})
+	const want = "pace: -1 bit/s is not between 1 bit/s and 4 Tbit/s\n" +
+		"size: the tail is so heavy that there is no mean to speak of; write at-most, or a larger shape"
+	if err == nil || err.Error() != want {
+		t.Errorf("faults:\n%v\nwant:\n%s", err, want)
+	}
+}
+
+// Checking a checked configuration changes nothing.
+func TestCheckTwice(t *testing.T) {
+	once, err := VoiceConfig{Common: Common{Name: "v"}, Calls: 7, Codec: G729, Interval: 30 * des.Millisecond}.Check()
+	if err != nil {
+		t.Fatal(err)
+	}
+	if twice, err := once.Check(); err != nil || !reflect.DeepEqual(once, twice) {
+		t.Errorf("%+v, then %+v, %v", once, twice, err)
+	}
+	video, err := VideoConfig{Common: Common{Name: "w", Load: 100_000_001}, Rate: 7_654_321}.Check()
+	if err != nil {
+		t.Fatal(err)
+	}
+	if twice, err := video.Check(); err != nil || !reflect.DeepEqual(video, twice) {
+		t.Errorf("%+v, then %+v, %v", video, twice, err)
 	}
 }

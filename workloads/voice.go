@@ -80,7 +80,7 @@ type VoiceConfig struct {
 func (c VoiceConfig) Check() (VoiceConfig, error) {
 	var faults []error
 	if c.Codec >= codecs {
-		return c, fmt.Errorf("codec: no codec %d", c.Codec)
+		return c, fmt.Errorf("codec: no codec %d", c.Codec) // nothing else can be said
 	}
 	if c.Interval == 0 {
 		c.Interval = 2 * frame
@@ -88,11 +88,11 @@ func (c VoiceConfig) Check() (VoiceConfig, error) {
 	if c.Interval < frame || c.Interval > 6*frame || c.Interval%frame != 0 {
 		faults = append(faults, fmt.Errorf("interval: %v is not 10 ms, 20 ms ... 60 ms", c.Interval))
 	}
-	if c.Calls < 0 || c.Calls > 0 && (c.Load != 0 || c.Pattern != Standing) {
+	load := nodes.Rate(math.Round(min(float64(c.Calls)*c.CallRate(), 2*float64(MaxLoad))))
+	if c.Calls < 0 || c.Calls > 0 && (c.Load != 0 && c.Load != load || c.Pattern != Standing) {
 		faults = append(faults, fmt.Errorf("calls: %d; a number of calls stands alone, without a load, for calls that last", c.Calls))
-	}
-	if c.Calls > 0 && faults == nil {
-		c.Load = nodes.Rate(math.Round(min(float64(c.Calls)*c.CallRate(), 2*float64(MaxLoad))))
+	} else if c.Calls > 0 {
+		c.Load = load
 	}
 	faults = c.Common.check(faults)
 	switch c.Pattern {
