@@ -11,8 +11,9 @@ import (
 
 // Limits on acts, so that patterns cannot cost much time or memory.
 const (
-	maxActs  = 10000   // in one list
-	maxMoved = 4 << 20 // ways named by all acts together
+	maxActs    = 10000   // in one list
+	maxMoved   = 4 << 20 // ways named by all acts together
+	maxPattern = 200     // characters of a pattern
 )
 
 // kindOfList says in which list of the file acts stand.

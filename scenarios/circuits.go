@@ -213,8 +213,10 @@ func (r *resolver) apart(p *place, text string, c *Circuit, all *index) {
 		} else if id, ok := all.ids[name]; ok {
 			c.ApartFrom = append(c.ApartFrom, nodes.CircuitID(id))
 		} else {
-			others := slices.DeleteFunc(slices.Clone(all.names[:min(len(all.names), 2000)]), func(n string) bool { return n == c.Name })
-			q.fault(didYouMean(name, others), "no circuit is called %q", name)
+			const few = 500 // for the sake of time
+			known := slices.DeleteFunc(slices.Clone(all.names[:min(len(all.names), few)]), func(n string) bool { return n == c.Name })
+			q.fault(didYouMean(name, known), "no circuit is called %q", name)
+			return
 		}
 	}
 }

@@ -45,7 +45,7 @@ func (s *Scenario) ParseCut(text string) ([]Act, error) {
 		f := &s.Fibres[a.Fibres[0]]
 		a.Where = f.Length / 2
 		if placed {
-			l, wrong := place1(where, f, s.Sites)
+			l, wrong := spot(where, f, s.Sites)
 			if wrong != nil {
 				return bad(wrong.msg, wrong.hint)
 			}

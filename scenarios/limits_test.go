@@ -30,6 +30,12 @@ func TestLimits(t *testing.T) {
 		{"indented depth", deep, "s.yaml:25:25: more than 24 levels of nesting; a scenario needs fewer"},
 		{"much indentation", "a:\n" + strings.Repeat(" ", 1001) + "b: 1", "s.yaml: the file has too many or too deeply nested values; write fewer; put demand into a matrix"},
 		{"alias bomb", bomb, "aliases make more than 524288 values; write fewer aliases"},
+		{"keys", strings.Repeat("k", 10) + ": 1\n" + many("key%d: 1\n", 200000), "199001 more faults are not listed; mend these first"},
+		{"keys of a law", "defaults: { router: { forwarding: { " + many("k%d: 1,", 200000) + " } } }", "s.yaml:1:35: defaults.router.forwarding: 200000 keys are too many; write a law, such as { exponential: { mean: 1s } }"},
+		{"things", "sites: [" + strings.Repeat("{},", 200000) + "]", "s.yaml:1:8: sites: 200000 values are too many; write 40000 at most"},
+		{"words", "fibres: [ { risk-groups: [" + many("g%d,", 200000) + "] } ]", "s.yaml:1:26: fibres[0].risk-groups: 200000 values are too many; write 1000 at most"},
+		{"plans", "plans: [" + many("{ name: p%[1]d, on: p%[1]d },", 20000) + "]", "plans: 20000 plans with 0 circuits are too many; write fewer plans"},
+		{"names", "sites: [" + many("{ name: p%d },", 20000) + "]\naggregates: [" + many("{ name: a%d, between: [x, y] },", 20000) + "]", "more faults are not listed; mend these first"},
 		{"alias of itself", "a: &a [*a]", "more than 24 levels of nesting; a scenario needs fewer"},
 		{"empty", "", "s.yaml: the file is empty; write a scenario"},
 		{"only a word", "hello", `s.yaml:1:1: the file is not a scenario; write keys such as "run:" and "sites:" at the left margin`},
@@ -38,8 +44,10 @@ func TestLimits(t *testing.T) {
 	} {
 		var before, after runtime.MemStats
 		runtime.ReadMemStats(&before)
+		start := time.Now()
 		_, err := Load("s.yaml", []byte(c.text), nil, nil)
 		runtime.ReadMemStats(&after)
+		t.Logf("%s: %v", c.what, time.Since(start))
 		if err == nil || !strings.HasSuffix(err.Error(), c.want) {
 			t.Errorf("%s\n got %.300v\nwant %s", c.what, err, c.want)
 		}
@@ -47,6 +55,15 @@ func TestLimits(t *testing.T) {
 			t.Errorf("%s: %d MB allocated", c.what, used>>20)
 		}
 	}
+}
+
+// many writes a format n times with its number.
+func many(format string, n int) string {
+	var b strings.Builder
+	for i := range n {
+		fmt.Fprintf(&b, format, i)
+	}
+	return b.String()
 }
 
 // A file that is wrong throughout is reported in part.

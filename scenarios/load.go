@@ -89,15 +89,15 @@ type resolver struct {
 
 // resolve goes through the sections in the order in which they need each other.
 func (r *resolver) resolve() {
-	r.sites = newIndex("site")
-	r.fibres = newIndex("fibre")
-	r.groups = newIndex("risk group")
-	r.circuits = newIndex("circuit")
-	r.classes = newIndex("class")
-	r.traffic = newIndex("traffic")
-	r.aggregates = newIndex("aggregate")
-	r.requests = newIndex("stream of requests")
-	r.plans = newIndex("plan")
+	r.sites = newIndex("site", r.t.faults)
+	r.fibres = newIndex("fibre", r.t.faults)
+	r.groups = newIndex("risk group", r.t.faults)
+	r.circuits = newIndex("circuit", r.t.faults)
+	r.classes = newIndex("class", r.t.faults)
+	r.traffic = newIndex("traffic", r.t.faults)
+	r.aggregates = newIndex("aggregate", r.t.faults)
+	r.requests = newIndex("stream of requests", r.t.faults)
+	r.plans = newIndex("plan", r.t.faults)
 
 	r.header()
 	r.builtIn()
@@ -117,12 +117,15 @@ func (r *resolver) resolve() {
 // An index finds the elements of one kind by their names.
 type index struct {
 	what  string
+	f     *faults
 	ids   map[string]int
 	names []string
 	where []Pos
 }
 
-func newIndex(what string) *index { return &index{what: what, ids: map[string]int{}} }
+func newIndex(what string, f *faults) *index {
+	return &index{what: what, f: f, ids: map[string]int{}}
+}
 
 // add registers the element at p under name and returns its id. A name that is
 // missing, odd or taken is a fault; the element still gets its id.
@@ -166,7 +169,10 @@ func (x *index) find(p *place, name string) int {
 
 // hint suggests a name.
 func (x *index) hint(name string) string {
-	const few = 2000 // for the sake of time
+	const few = 500 // for the sake of time
+	if x.f.full() {
+		return ""
+	}
 	var names []string
 	for i, n := range x.names[:min(len(x.names), few)] {
 		if x.ids[n] == i && n != "" { // the first of that name
@@ -174,17 +180,6 @@ func (x *index) hint(name string) string {
 		}
 	}
 	return didYouMean(name, names)
-}
-
-// clone returns a copy that can be added to.
-func (x *index) clone() *index {
-	c := newIndex(x.what)
-	for k, v := range x.ids {
-		c.ids[k] = v
-	}
-	c.names = append(c.names, x.names...)
-	c.where = append(c.where, x.where...)
-	return c
 }
 
 // goodName reports whether a name is made of letters, digits and - _ . only.

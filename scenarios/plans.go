@@ -11,8 +11,12 @@ import (
 // AsIs is the name of the plan that changes nothing.
 const AsIs = "as-is"
 
-// maxPlanned bounds plans times circuits, since every plan knows all circuits.
-const maxPlanned = 400000
+// Limits on plans. A plan knows all circuits and the acts of the plans beneath,
+// so plans times circuits and acts is bounded too.
+const (
+	maxPlans   = 500
+	maxPlanned = 400000
+)
 
 // Plan returns the plan called name; AsIs always exists. The caller must not
 // change it.
@@ -39,7 +43,7 @@ func (r *resolver) resolvePlans() {
 	for i := range r.raw.Plans {
 		circuits += len(r.raw.Plans[i].InPlace) + len(r.raw.Plans[i].Steps)
 	}
-	if n := len(r.raw.Plans); n*max(circuits, 1) > maxPlanned {
+	if n := len(r.raw.Plans); n > maxPlans || n*circuits > maxPlanned {
 		list.fault("write fewer plans", "%d plans with %d circuits are too many", n, circuits)
 		return
 	}
@@ -83,7 +87,7 @@ func (r *resolver) planAfter(list *place, i int, on []int, done []bool) {
 // plan reads one plan on top of another.
 func (r *resolver) plan(p *place, raw *rawPlan, on, out *Plan) {
 	*out = Plan{Name: raw.Name, Pos: p.pos(), About: raw.About, On: on.Name}
-	names := newIndex("circuit")
+	names := newIndex("circuit", r.t.faults)
 	for i := range on.Circuits {
 		c := &on.Circuits[i]
 		if _, taken := names.ids[c.Name]; !taken {

@@ -61,7 +61,7 @@ type faults struct {
 
 // add notes one fault.
 func (f *faults) add(pos Pos, key, msg, hint string) {
-	if len(f.list) >= maxProblems {
+	if f.full() {
 		f.dropped++
 		return
 	}
@@ -70,6 +70,10 @@ func (f *faults) add(pos Pos, key, msg, hint string) {
 		Key: clip(key), Msg: clip(msg), Hint: clip(hint),
 	})
 }
+
+// full reports whether further faults are only counted; suggestions, which cost
+// time, are then not worth while.
+func (f *faults) full() bool { return len(f.list) >= maxProblems }
 
 // clip keeps a text that quotes the file short and on one line.
 func clip(s string) string {

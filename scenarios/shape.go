@@ -17,6 +17,13 @@ type shaper struct {
 	spoilt  map[*yaml.Node]bool // mappings out of which something was taken
 }
 
+// Limits on values whose checks take more than linear time.
+const (
+	maxLawKeys = 16    // keys of a law
+	maxWords   = 1000  // words of a list
+	maxThings  = 40000 // named things of a list
+)
+
 // tagsOf lists the keys of a raw struct in order.
 func tagsOf(typ reflect.Type) []string {
 	out := make([]string, typ.NumField())
@@ -55,6 +62,14 @@ func (s *shaper) walk(p *place, typ reflect.Type) bool {
 			p.fault(hint, "%s stands where a list is wanted", kindOf(n))
 			return false
 		}
+		most := maxWords
+		if typ.Elem().Kind() == reflect.Struct {
+			most = maxThings
+		}
+		if len(n.Content) > most {
+			p.fault(fmt.Sprintf("write %d at most", most), "%d values are too many", len(n.Content))
+			return false
+		}
 		kept := n.Content[:0:0]
 		for i, c := range n.Content {
 			if s.walk(p.item(i), typ.Elem()) {
@@ -88,7 +103,10 @@ func (s *shaper) mapping(p *place, typ reflect.Type) {
 		f := slices.Index(tags, key.Value)
 		if f < 0 {
 			s.drop(n)
-			hint := didYouMean(key.Value, tags)
+			hint := ""
+			if !s.t.faults.full() {
+				hint = didYouMean(key.Value, tags)
+			}
 			if key.Value == "<<" {
 				hint = "merging is not done here; write the keys out"
 			}
@@ -136,6 +154,10 @@ func (s *shaper) anyValue(p *place) bool {
 	n := p.node
 	switch n.Kind {
 	case yaml.MappingNode:
+		if len(n.Content) > 2*maxLawKeys {
+			p.fault("write a law, such as { exponential: { mean: 1s } }", "%d keys are too many", len(n.Content)/2)
+			return false
+		}
 		kept := make([]*yaml.Node, 0, len(n.Content))
 		for i := 0; i+1 < len(n.Content); i += 2 {
 			key, value := n.Content[i], n.Content[i+1]

@@ -23,7 +23,7 @@ func (r *resolver) cut(p, q *place, raw *rawAct, a *Act) {
 		g, group := r.groups.ids[a.Subject]
 		if !group {
 			known := append(slices.Clone(r.fibres.names), r.groups.names...)
-			q.fault(didYouMean(a.Subject, known), "no fibre or risk group is called %q", a.Subject)
+			q.fault(didYouMean(a.Subject, known[:min(len(known), 500)]), "no fibre or risk group is called %q", a.Subject)
 			return
 		}
 		a.Fibres = r.s.RiskGroups[g].Fibres
@@ -44,7 +44,7 @@ func (r *resolver) cut(p, q *place, raw *rawAct, a *Act) {
 		return
 	}
 	if where.given() && raw.Where != "" {
-		l, bad := place1(raw.Where, f, r.s.Sites)
+		l, bad := spot(raw.Where, f, r.s.Sites)
 		if bad != nil {
 			where.fault(bad.hint, "%s", bad.msg)
 		} else {
@@ -70,9 +70,9 @@ func (r *resolver) cut(p, q *place, raw *rawAct, a *Act) {
 	}
 }
 
-// place1 reads a place on a fibre, such as "120km from tarn", as the distance
+// spot reads a place on a fibre, such as "120km from tarn", as the distance
 // from its end A. Without a site it counts from there.
-func place1(text string, f *Fibre, sites []Site) (nodes.Length, *fault) {
+func spot(text string, f *Fibre, sites []Site) (nodes.Length, *fault) {
 	length, site, named := strings.Cut(text, " from ")
 	v, bad := lengthMeasure.parse(strings.TrimSpace(length))
 	if bad != nil {
@@ -227,7 +227,7 @@ func (r *resolver) ways(p *place, name string, wide bool) []MovedWay {
 	}
 	class, isClass := r.classes.ids[name]
 	traffic, isTraffic := r.traffic.ids[name]
-	pattern := strings.Contains(name, "*")
+	pattern := strings.Contains(name, "*") && len(name) <= maxPattern
 	if !pattern && !(wide && (isClass || isTraffic)) {
 		what := "aggregate"
 		if wide {
