@@ -255,7 +255,8 @@ func (g *gatherer) classes() {
 type fold struct {
 	seconds    float64
 	cells      int
-	delay, pdv measure.Hist // ns
+	base       des.Time     // least light of the pairs so far
+	delay, pdv measure.Hist // ns; delay is that above base
 	ipdv       measure.Hist
 	exact      measure.Moments
 	bytes      uint64
@@ -275,11 +276,23 @@ func (f *fold) lost(l *lossCell, inside uint64) {
 	f.inside += inside
 }
 
-// add folds a cell. Delays are kept above the light of their pair, so they are
-// moved up by it; variation is over the least delay of the cell.
+// add folds a cell. Delays are kept above the light of their pair, and summed
+// above the least light of all pairs, so that long fibres do not blur short
+// waits; variation is over the least delay of the cell.
 func (f *fold) add(c *packet.Cell, floor des.Time) {
+	if f.cells == 0 {
+		f.base = floor
+	} else if floor < f.base {
+		var h measure.Hist
+		h.MergeShifted(&f.delay, int64((f.base-floor)/des.Nanosecond))
+		f.delay, f.base = h, floor
+	}
 	f.cells++
-	f.delay.MergeShifted(&c.Delay, int64(floor/des.Nanosecond))
+	if floor == f.base {
+		f.delay.Merge(&c.Delay)
+	} else {
+		f.delay.MergeShifted(&c.Delay, int64((floor-f.base)/des.Nanosecond))
+	}
 	f.pdv.MergeShifted(&c.Delay, -(c.Exact.Min-int64(floor))/int64(des.Nanosecond))
 	f.ipdv.Merge(&c.Variation)
 	f.exact.Merge(c.Exact)
@@ -309,6 +322,11 @@ func (f *fold) outcome() result.Outcome {
 		return o
 	}
 	o.DelayS = distribution(&f.delay)
+	for _, q := range []*float64{o.DelayS.P50, o.DelayS.P95, o.DelayS.P99, o.DelayS.P999} {
+		if q != nil {
+			*q += f.base.Seconds()
+		}
+	}
 	lo, mean, hi := ps(float64(f.exact.Min)), ps(f.exact.Mean()), ps(float64(f.exact.Max))
 	o.DelayS.Min, o.DelayS.Mean, o.DelayS.Max = &lo, &mean, &hi
 	o.PDVS = distribution(&f.pdv)
