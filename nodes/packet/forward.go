@@ -78,7 +78,8 @@ func (l *latency) normal(cell int64) float64 {
 	return math.Sqrt2 * math.Erfinv(float64(2*u)-1)
 }
 
-// knot is the latency at the start of a piece.
+// knot is the latency at the start of a piece: not so little that rounding the
+// slope could make it negative.
 func (l *latency) knot(piece int64) des.Time {
 	cell, k := piece/knots, piece%knots
 	sin, cos := math.Sincos(float64(k) * (math.Pi / 2 / knots))
@@ -86,7 +87,7 @@ func (l *latency) knot(piece int64) des.Time {
 	if k != 0 {
 		z += float64(sin * l.normal(cell+1))
 	}
-	return min(des.Time(l.median*math.Exp(float64(l.sigma*z))), l.most)
+	return min(max(des.Time(l.median*math.Exp(float64(l.sigma*z))), l.step>>20+1), l.most)
 }
 
 // recall is knot with a memory: sources that share a path go over the same

@@ -85,9 +85,8 @@ func (x *local) SetPort(c nodes.CircuitID, state nodes.PortState) {
 			}
 			q.flush(s, x.now, cause)
 		}
-	case nodes.PortUp:
+	case nodes.PortUp, nodes.PortDraining:
 		q.free = max(q.free, x.now)
-	case nodes.PortDraining:
 	default:
 		panic("packet: unknown port state")
 	}
