@@ -20,8 +20,8 @@ type Source interface {
 	Emit(end des.Time, buf []Packet) []Packet
 
 	// Scale sets the load to factor times the load of the scenario file from
-	// the instant at on; at is not before the end of any Emit so far. What was
-	// drawn before at is kept.
+	// the instant at on; at is not before the end of any Emit so far, and never
+	// decreases from call to call. What was drawn before at is kept.
 	Scale(at des.Time, factor float64)
 
 	// Clone returns a copy that shares no state that either will change.

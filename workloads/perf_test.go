@@ -29,10 +29,14 @@ func sources(t testing.TB) []struct {
 		{"poisson exponential", streamOf(t, StreamConfig{Common: common(nodes.Gbps), Size: random.Spec{Kind: random.Exponential, Mean: 700}}), 10 * des.Millisecond},
 		{"poisson gamma", streamOf(t, StreamConfig{Common: common(nodes.Gbps), Size: random.Spec{Kind: random.Gamma, Mean: 700, CoV: 0.4}}), 10 * des.Millisecond},
 		{"constant", streamOf(t, StreamConfig{Common: common(nodes.Gbps), Gaps: Constant}), 10 * des.Millisecond},
+		{"poisson flows", streamOf(t, StreamConfig{Common: common(nodes.Gbps), Flows: 4096}), 10 * des.Millisecond},
+		{"constant flows", streamOf(t, StreamConfig{Common: common(nodes.Gbps), Gaps: Constant, Flows: 300}), 10 * des.Millisecond},
 		{"standing calls", voiceOf(t, VoiceConfig{Common: common(8 * nodes.Mbps)}), des.Second},
 		{"random calls", voiceOf(t, VoiceConfig{Common: common(8 * nodes.Mbps), Pattern: Random, Hold: short}), des.Second},
 		{"regular calls", voiceOf(t, VoiceConfig{Common: common(8 * nodes.Mbps), Pattern: Regular, Hold: short}), des.Second},
 		{"video", videoOf(t, VideoConfig{Common: common(80 * nodes.Mbps)}), 500 * des.Millisecond},
+		{"random video", videoOf(t, VideoConfig{Common: common(80 * nodes.Mbps), Pattern: Random, Hold: short}), 500 * des.Millisecond},
+		{"regular video", videoOf(t, VideoConfig{Common: common(80 * nodes.Mbps), Pattern: Regular, Hold: short}), 500 * des.Millisecond},
 		{"files", filesOf(t, FilesConfig{Common: common(200 * nodes.Mbps)}), 200 * des.Millisecond},
 	}
 }
@@ -45,10 +49,14 @@ var golden = map[string]string{
 	"poisson exponential": "1810 454af6b98dbe65c2",
 	"poisson gamma":       "1810 4230aea239d6e0e7",
 	"constant":            "1250 e508d00d58a7db86",
+	"poisson flows":       "1286 5782ce7a95eb9ef0",
+	"constant flows":      "1250 c0dc161beb634ecb",
 	"standing calls":      "5000 b6025b4377406c45",
 	"random calls":        "4736 216839f446b01e23",
 	"regular calls":       "4651 5569a6b01c690fbf",
 	"video":               "3378 3fff8da2f14dc982",
+	"random video":        "2699 524bc019a6bd8703",
+	"regular video":       "3306 92930aa4d9c255ff",
 	"files":               "3511 ec210ee4cbc26041",
 }
 

@@ -3,18 +3,28 @@ package workloads
 import (
 	"errors"
 	"fmt"
+	"math/bits"
 
 	"ferrule/des"
 	"ferrule/des/random"
 	"ferrule/nodes"
 )
 
-// StreamConfig describes a packet stream: one flow of packets whose gaps and
-// sizes are independent. A zero field takes the default written beside it.
+// MaxFlows is the greatest number of flows of a stream: Packet.Flow can tell no
+// more apart.
+const MaxFlows = 1 << 16
+
+// StreamConfig describes a packet stream, whose gaps and sizes are independent.
+// A zero field takes the default written beside it.
+//
+// The packets are spread over Flows flows: of Poisson gaps each packet belongs
+// to any flow with the same chance, so that each flow is a Poisson stream; of
+// constant gaps the flows take turns, so that each has constant gaps.
 type StreamConfig struct {
 	Common
-	Gaps Gaps        // default Poisson
-	Size random.Spec // IP bytes of a packet; default constant 1000
+	Gaps  Gaps        // default Poisson
+	Size  random.Spec // IP bytes of a packet; default constant 1000
+	Flows int         // default 1; at most MaxFlows
 }
 
 // Check fills the defaults and reports every fault at once. A size is rounded
@@ -31,14 +41,23 @@ func (c StreamConfig) Check() (StreamConfig, error) {
 	if _, err := newSizes(c.Size); err != nil {
 		faults = append(faults, fmt.Errorf("size: %w", err))
 	}
+	if c.Flows == 0 {
+		c.Flows = 1
+	}
+	if c.Flows < 0 || c.Flows > MaxFlows {
+		faults = append(faults, fmt.Errorf("flows: %d is not between 1 and %d", c.Flows, MaxFlows))
+	}
 	return c, errors.Join(faults...)
 }
 
-// A Stream sends packets with independent gaps and sizes. All belong to flow 0.
+// A Stream sends packets with independent gaps and sizes.
 type Stream struct {
 	gaps  clock
 	sizes sizes
 	draws random.Stream // of sizes and nothing else
+	picks random.Stream // of flows and nothing else
+	turn  uint32        // flow of the next packet if flows take turns
+	flows uint32
 	ahead changes
 	stop  des.Time
 	mean  float64 // bit/s
@@ -64,6 +83,8 @@ func NewStream(c StreamConfig) (*Stream, error) {
 		},
 		sizes: sizes,
 		draws: random.NewStream(c.Seed, c.Name+"/size"),
+		picks: random.NewStream(c.Seed, c.Name+"/flow"),
+		flows: uint32(c.Flows),
 		stop:  c.Stop,
 		mean:  float64(c.Load),
 		way:   c.Way,
@@ -98,6 +119,9 @@ func (s *Stream) Emit(end des.Time, buf []nodes.Packet) []nodes.Packet {
 			buf = s.equal(limit, buf)
 		}
 		s.sizes.fill(buf[first:], &s.draws)
+		if s.flows > 1 {
+			s.spread(buf[first:])
+		}
 		s.settle()
 	}
 	return buf
@@ -136,6 +160,27 @@ func (s *Stream) equal(limit des.Time, buf []nodes.Packet) []nodes.Packet {
 	}
 	s.gaps, s.seq = c, seq
 	return buf
+}
+
+// spread gives packets their flows.
+func (s *Stream) spread(ps []nodes.Packet) {
+	if s.gaps.kind == Poisson {
+		picks, flows := s.picks, uint64(s.flows)
+		for i := range ps {
+			hi, _ := bits.Mul64(picks.Uint64(), flows)
+			ps[i].Flow = uint16(hi)
+		}
+		s.picks = picks
+		return
+	}
+	turn := s.turn
+	for i := range ps {
+		ps[i].Flow = uint16(turn)
+		if turn++; turn == s.flows {
+			turn = 0
+		}
+	}
+	s.turn = turn
 }
 
 // settle makes the changes of load that lie before the next packet.

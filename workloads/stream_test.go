@@ -35,9 +35,61 @@ func TestStreamContract(t *testing.T) {
 	for name, law := range laws {
 		for _, gaps := range []Gaps{Poisson, Constant} {
 			t.Run(name+"/"+gaps.String(), func(t *testing.T) {
-				c := StreamConfig{Common: Common{Load: 333_333_337, Start: des.Millisecond / 2, Stop: 9 * des.Millisecond}, Gaps: gaps, Size: law}
+				c := StreamConfig{Common: Common{Load: 333_333_337, Start: des.Millisecond / 2, Stop: 9 * des.Millisecond}, Gaps: gaps, Size: law, Flows: 5}
 				testContract(t, func() Source { return streamOf(t, c) }, c.Start, c.Stop, 10*des.Millisecond)
 			})
+		}
+	}
+}
+
+// Of Poisson gaps every flow is a Poisson stream of the same rate; of constant
+// gaps every flow has constant gaps. The spreading moves no packet.
+func TestStreamFlows(t *testing.T) {
+	const flows, end = 7, 300 * des.Millisecond
+	for _, gaps := range []Gaps{Poisson, Constant} {
+		c := StreamConfig{Common: Common{Load: nodes.Gbps}, Gaps: gaps, Size: random.Spec{Mean: 500}}
+		plain := streamOf(t, c).Emit(end, nil)
+		c.Flows = flows
+		ps := streamOf(t, c).Emit(end, nil)
+		if len(ps) != len(plain) {
+			t.Fatalf("%d packets of 7 flows, %d of one", len(ps), len(plain))
+		}
+		var last [flows]des.Time
+		var count, same [flows]float64
+		var spans []float64
+		for i, p := range ps {
+			if p.Born != plain[i].Born || p.Size != plain[i].Size || plain[i].Flow != 0 {
+				t.Fatalf("packet %d is %+v, of one flow %+v", i, p, plain[i])
+			}
+			if i > 0 && ps[i-1].Flow == p.Flow {
+				same[p.Flow]++
+			}
+			if gap := p.Born - last[p.Flow]; count[p.Flow] > 0 && p.Flow == 3 {
+				spans = append(spans, float64(gap)/(flows*4e6))
+			}
+			last[p.Flow] = p.Born
+			count[p.Flow]++
+		}
+		if gaps == Constant {
+			for i, x := range spans {
+				if x != 1 {
+					t.Fatalf("gap %d of a flow is %v of the mean", i, x)
+				}
+			}
+			continue
+		}
+		if d, limit := ks(spans, func(x float64) float64 { return -math.Expm1(-x) }); d > limit {
+			t.Errorf("distance %.2f of the gaps of a flow from the exponential law, limit %.2f", d, limit)
+		}
+		chi, n := 0.0, float64(len(ps))
+		for f := range flows {
+			chi += (count[f] - n/flows) * (count[f] - n/flows) / (n / flows)
+			if mean := n / flows / flows; math.Abs(same[f]-mean) > 3.89*math.Sqrt(mean) { // 0.01 %
+				t.Errorf("flow %d follows itself %v times in %v packets, want %.0f", f, same[f], n, mean)
+			}
+		}
+		if chi > 22.458 { // chi-square, 6 degrees of freedom, 0.1 %
+			t.Errorf("chi-square of the flows %.1f: %v", chi, count)
 		}
 	}
 }
@@ -47,12 +99,14 @@ func BenchmarkStream(b *testing.B) {
 		name string
 		gaps Gaps
 		size random.Spec
+		flow int
 	}{
-		{"poisson/mix", Poisson, imix}, {"poisson/exponential", Poisson, random.Spec{Kind: random.Exponential, Mean: 700}},
-		{"poisson/fixed", Poisson, random.Spec{Mean: 700}}, {"constant/fixed", Constant, random.Spec{Mean: 700}},
+		{"poisson/mix", Poisson, imix, 1}, {"poisson/exponential", Poisson, random.Spec{Kind: random.Exponential, Mean: 700}, 1},
+		{"poisson/fixed", Poisson, random.Spec{Mean: 700}, 1}, {"constant/fixed", Constant, random.Spec{Mean: 700}, 1},
+		{"poisson/mix/flows", Poisson, imix, 1000}, {"constant/fixed/flows", Constant, random.Spec{Mean: 700}, 1000},
 	} {
 		b.Run(x.name, func(b *testing.B) {
-			s := streamOf(b, StreamConfig{Common: Common{Load: 10 * nodes.Gbps}, Gaps: x.gaps, Size: x.size})
+			s := streamOf(b, StreamConfig{Common: Common{Load: 10 * nodes.Gbps}, Gaps: x.gaps, Size: x.size, Flows: x.flow})
 			var buf []nodes.Packet
 			end, n := des.Time(0), 0
 			for b.Loop() {
@@ -252,9 +306,9 @@ func TestScaleKeepsDraws(t *testing.T) {
 }
 
 func TestStreamFaults(t *testing.T) {
-	_, err := NewStream(StreamConfig{Common: Common{Start: 2, Stop: 1}, Gaps: 9, Size: random.Spec{Kind: random.Exponential, Mean: 1e6}})
+	_, err := NewStream(StreamConfig{Common: Common{Start: 2, Stop: 1}, Gaps: 9, Size: random.Spec{Kind: random.Exponential, Mean: 1e6}, Flows: -1})
 	const want = "name: missing\nstop: 1ps is not after the start, 2ps\nload: 0 bit/s is not between 1 bit/s and 4 Tbit/s\n" +
-		"gaps: no kind 9\nsize: mean 1e+06 B is above 65535 B, the longest IP packet"
+		"gaps: no kind 9\nsize: mean 1e+06 B is above 65535 B, the longest IP packet\nflows: -1 is not between 1 and 65536"
 	if err == nil || err.Error() != want {
 		t.Errorf("faults:\n%v\nwant:\n%s", err, want)
 	}

@@ -63,6 +63,18 @@ func (t *tournament) set(id uint32, due des.Time) {
 	}
 }
 
+// flows reports how many flows the tournament has room for.
+func (t *tournament) flows() int { return len(t.due) / 2 }
+
+// grow doubles the room.
+func (t *tournament) grow() {
+	due := make([]des.Time, 2*t.flows())
+	for i := copy(due, t.due[t.flows():]); i < len(due); i++ {
+		due[i] = des.Never
+	}
+	*t = newTournament(due)
+}
+
 // clone returns a copy that shares nothing.
 func (t *tournament) clone() tournament {
 	return tournament{append([]des.Time(nil), t.due...), append([]uint32(nil), t.id...)}

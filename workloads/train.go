@@ -119,61 +119,21 @@ func (t *train) arrive(kind Gaps, gap float64, flows *lengths) {
 func (t *train) populate(factor float64) {
 	t.arrivals.draws = t.first
 	t.arrivals.start(t.start, factor)
-	var flows []flow
-	switch {
-	case factor == 0:
-	case t.arrivals.kind == Poisson:
-		flows = t.standing()
-	default:
-		flows = t.earlier()
+	c := crowd{t.flows, float64(t.interval), t.seed, t.name, ofPhase, ofLength}
+	met := c.meet(&t.arrivals, t.start, t.key)
+	flows := make([]flow, len(met))
+	for i, m := range met {
+		last := t.lastOf(m.carries)
+		if t.arrivals.kind == Poisson {
+			last = t.lastOfStanding(m.index)
+		}
+		flows[i] = flow{t.start + m.wait, m.left, uint32(m.index), last}
 	}
 	t.fill(flows)
 	for i := range flows { // numbered in the order in which they appear
 		t.ring[(t.head+i)&(len(t.ring)-1)].id = uint32(i)
 	}
 	t.nextID = uint32(len(flows))
-}
-
-// standing returns the flows of Poisson arrivals met at the start: a Poisson
-// number of them, at independent phases, with what a flow met at random has
-// left. That is exactly the stationary state, because packets of one flow are
-// equally spaced.
-func (t *train) standing() []flow {
-	mean := t.flows.mean * float64(t.interval) / t.arrivals.gap
-	draws := random.NewStream(t.seed, t.key+"/standing")
-	var flows []flow
-	for sum := draws.Exp(); sum < mean; sum += draws.Exp() {
-		i := uint64(len(flows))
-		u := random.Unit(random.Draw(t.seed, t.name, i, ofLength))
-		flows = append(flows, flow{t.start + t.phase(i), t.flows.left(u), uint32(i), t.lastOfStanding(i)})
-	}
-	return flows
-}
-
-// earlier returns those flows of equally spaced arrivals before the start that
-// still send.
-func (t *train) earlier() []flow {
-	var flows []flow
-	gone, looked := 0.0, int64(0) // draws up to gone have ended when looked packets are sent
-	for i := uint64(0); ; i++ {
-		age := float64(float64(i+1)*t.arrivals.gap) - float64(t.arrivals.next-t.start)
-		sent := int64(math.Ceil(age / float64(t.interval)))
-		if sent > t.flows.most() {
-			return flows
-		}
-		if sent > looked+looked/16 {
-			gone, looked = 1-t.flows.atLeast(sent+1), sent
-		}
-		u := random.Unit(random.Draw(t.seed, t.name, i, ofLength))
-		if u < gone {
-			continue
-		}
-		x := t.flows.law.At(u)
-		if left := t.flows.count(x) - sent; left > 0 {
-			due := t.start + des.Time(float64(float64(sent)*float64(t.interval))-age)
-			flows = append(flows, flow{due, left, uint32(i), t.lastOf(x)})
-		}
-	}
 }
 
 // lastOf returns the size of the last packet of a flow that carries x.

@@ -37,7 +37,7 @@ func filesOf(t testing.TB, c FilesConfig) *Files {
 }
 
 func TestVoiceContract(t *testing.T) {
-	for _, p := range []CallPattern{Standing, Random, Regular} {
+	for _, p := range []Pattern{Standing, Random, Regular} {
 		c := VoiceConfig{Common: Common{Load: 800 * nodes.Kbps, Start: 30 * des.Millisecond, Stop: 9 * des.Second}, Pattern: p}
 		if p != Standing {
 			c.Hold = random.Spec{Kind: random.Exponential, Mean: 1.5}
@@ -151,7 +151,7 @@ func TestCallsAreStationary(t *testing.T) {
 	for _, hold := range []random.Spec{
 		{Kind: random.Exponential, Mean: 2}, {Kind: random.Constant, Mean: 2}, {Kind: random.Lognormal, Mean: 2, CoV: 1},
 	} {
-		for _, pattern := range []CallPattern{Random, Regular} {
+		for _, pattern := range []Pattern{Random, Regular} {
 			calls := func(from des.Time) func(seed uint64) float64 {
 				return func(seed uint64) float64 {
 					v := voiceOf(t, VoiceConfig{Common: Common{Load: 16 * nodes.Mbps, Seed: seed}, Pattern: pattern, Hold: hold})
@@ -186,7 +186,7 @@ func TestCallsAreStationary(t *testing.T) {
 // A change of load before the start is in full force at the start, also for
 // calls that last hundreds of times longer than the test.
 func TestScaleBeforeStart(t *testing.T) {
-	for _, pattern := range []CallPattern{Standing, Random, Regular} {
+	for _, pattern := range []Pattern{Standing, Random, Regular} {
 		mean, half := replicate(30, func(seed uint64) float64 {
 			v := voiceOf(t, VoiceConfig{Common: Common{Load: 16 * nodes.Mbps, Seed: seed, Start: des.Second}, Pattern: pattern})
 			v.Scale(des.Second/2, 1.5)

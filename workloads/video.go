@@ -4,10 +4,8 @@ import (
 	"errors"
 	"fmt"
 	"math"
-	"math/bits"
 	"strings"
 
-	"ferrule/des"
 	"ferrule/des/random"
 	"ferrule/nodes"
 )
@@ -25,16 +23,19 @@ const frameKinds = "IPB"
 // "MPEG-4 and H.263 video traces for network performance evaluation" (2001).
 type VideoConfig struct {
 	Common
-	Rate    nodes.Rate // of one flow, bit/s of IP bytes; default 8 Mbit/s
-	Frames  float64    // per second, to a thousandth; default 25
-	Pattern string     // group of frames; default IBBPBBPBBPBB
-	Ratio   [3]float64 // mean sizes of I, P and B; default 4:2:1
-	CoV     float64    // of the sizes of one kind; default 0.28; 0.001 to 3
-	Pace    nodes.Rate // bit/s of IP bytes at which a flow sends its packets; default 4 times the mean rate of a flow
+	Rate   nodes.Rate // of one flow, bit/s of IP bytes; default 8 Mbit/s
+	Frames float64    // per second, to a thousandth; default 25
+	Group  string     // kinds of frames, repeated; default IBBPBBPBBPBB
+	Ratio  [3]float64 // mean sizes of I, P and B; default 4:2:1
+	CoV    float64    // of the sizes of one kind; default 0.28; 0.001 to 3
+	Pace   nodes.Rate // bit/s of IP bytes at which a flow sends its packets; default 4 times the mean rate of a flow
+
+	Pattern Pattern     // of flows; default Standing
+	Hold    random.Spec // of Random and Regular: length of a flow in s; default exponential 180
 }
 
-// Check fills the defaults and reports every fault at once. The rate becomes
-// what one of the flows sends, to the nearest bit/s.
+// Check fills the defaults and reports every fault at once. The rate of flows
+// that stand becomes what one of them sends, to the nearest bit/s.
 func (c VideoConfig) Check() (VideoConfig, error) {
 	faults := c.Common.check(nil)
 	c.fill()
@@ -44,8 +45,8 @@ func (c VideoConfig) Check() (VideoConfig, error) {
 	if !(c.Frames >= 0.1 && c.Frames <= 1000) {
 		faults = append(faults, fmt.Errorf("frames: %v/s is not between 0.1 and 1000", c.Frames))
 	}
-	if strings.Trim(c.Pattern, frameKinds) != "" || len(c.Pattern) > 1000 {
-		faults = append(faults, fmt.Errorf("pattern: %q is not a group of I, P and B", c.Pattern))
+	if strings.Trim(c.Group, frameKinds) != "" || len(c.Group) > 1000 {
+		faults = append(faults, fmt.Errorf("group: %q is not made of I, P and B", c.Group))
 	}
 	for i, r := range c.Ratio {
 		if !(r > 0 && r < 1e6) {
@@ -58,7 +59,8 @@ func (c VideoConfig) Check() (VideoConfig, error) {
 	if len(faults) > 0 {
 		return c, errors.Join(faults...)
 	}
-	rate := float64(c.Load) / float64(c.flows())
+	faults = c.checkPattern(nil)
+	rate := c.flowRate()
 	c.Rate = nodes.Rate(math.Round(rate))
 	if c.Pace == 0 {
 		c.Pace = nodes.Rate(math.Round(4 * rate))
@@ -72,6 +74,44 @@ func (c VideoConfig) Check() (VideoConfig, error) {
 	return c, errors.Join(faults...)
 }
 
+// checkPattern fills the default of Hold and appends what is wrong with it and
+// the pattern.
+func (c *VideoConfig) checkPattern(faults []error) []error {
+	switch c.Pattern {
+	case Standing:
+		if c.Hold.Kind != 0 || c.Hold.Mean != 0 {
+			faults = append(faults, errors.New("hold: flows that last have no length"))
+		}
+	case Random, Regular:
+		if c.Hold.Kind == random.Constant && c.Hold.Mean == 0 {
+			c.Hold = random.Spec{Kind: random.Exponential, Mean: 180}
+		}
+		if _, err := c.lengths(); err != nil {
+			faults = append(faults, fmt.Errorf("hold: %w", err))
+		}
+	default:
+		faults = append(faults, fmt.Errorf("pattern: no pattern %d", c.Pattern))
+	}
+	return faults
+}
+
+// lengths returns the law of the frames of a flow that ends.
+func (c VideoConfig) lengths() (*lengths, error) {
+	law, err := c.Hold.Law()
+	if err != nil {
+		return nil, err
+	}
+	return newLengths(law, 1000/math.Round(c.Frames*1000), 0)
+}
+
+// flowRate returns what one flow sends, in bit/s.
+func (c VideoConfig) flowRate() float64 {
+	if c.Pattern == Standing {
+		return float64(c.Load) / float64(c.flows())
+	}
+	return float64(c.Rate)
+}
+
 // fill puts in the defaults that depend on nothing.
 func (c *VideoConfig) fill() {
 	if c.Rate == 0 {
@@ -80,8 +120,8 @@ func (c *VideoConfig) fill() {
 	if c.Frames == 0 {
 		c.Frames = 25
 	}
-	if c.Pattern == "" {
-		c.Pattern = "IBBPBBPBBPBB"
+	if c.Group == "" {
+		c.Group = "IBBPBBPBBPBB"
 	}
 	if c.Ratio == [3]float64{} {
 		c.Ratio = [3]float64{4, 2, 1}
@@ -101,8 +141,8 @@ func (c VideoConfig) flows() int {
 // included, for which a flow sends bytes IP bytes per frame in the mean.
 func (c VideoConfig) frameLaws(bytes float64) ([3]random.Law, error) {
 	var share [3]float64 // of the frames
-	for i := range c.Pattern {
-		share[strings.IndexByte(frameKinds, c.Pattern[i])] += 1 / float64(len(c.Pattern))
+	for i := range c.Group {
+		share[strings.IndexByte(frameKinds, c.Group[i])] += 1 / float64(len(c.Group))
 	}
 	unit := 0.0 // mean size of a frame for a B frame of Ratio[2]
 	for k, s := range share {
@@ -149,200 +189,4 @@ func (c VideoConfig) lawsAt(scale float64, share [3]float64) (laws [3]random.Law
 		sent += float64(s * (laws[k].Mean() + float64(header*n.mean)))
 	}
 	return laws, sent, nil
-}
-
-// What keyed draws of video are about. The index of a frame's size is
-// flow<<32 | frame.
-const (
-	ofTiming uint64 = iota // where in the frame interval a flow sends
-	ofGroup                // with which frame of the group it begins
-	ofFrame                // size of a frame
-)
-
-// early is how many frames before its first instant a flow is taken to have
-// begun, so that what is still being sent of them is there.
-const early = 8
-
-// A camera is one flow of video.
-type camera struct {
-	frame int64 // being sent; 0 starts early intervals before the phase
-	left  int64 // bytes of it not sent, headers not included
-	phase des.Time
-	group int // of frame 0 in the pattern
-}
-
-// A Video sends the packets of flows of video.
-type Video struct {
-	cameras []camera
-	turns   tournament
-	count   int // of cameras at factor 1
-	laws    [3]random.Law
-	kinds   []uint8 // of the frames of a group
-	hertz   uint64  // frames in 1000 s
-	pace    nodes.Rate
-	full    des.Time // a full packet at the pace
-
-	ahead       changes
-	start, stop des.Time
-	mean        float64
-	seed, name  uint64
-	seq         uint32
-	way         uint16
-}
-
-// NewVideo returns a source of video, or the faults of c.
-//
-// The flows stand for the whole run. They are as many as come nearest to the
-// load at the rate asked for, at least one, and their rate is then the load
-// over their number, so that the load is met exactly. A frame is cut into
-// packets of at most 1500 B, of which 40 B are headers. The first is born when
-// the frame is ready or when the one before it has been sent, each further one
-// after the time the one before takes at the pace.
-func NewVideo(c VideoConfig) (*Video, error) {
-	c, err := c.Check()
-	if err != nil {
-		return nil, err
-	}
-	n := c.flows()
-	v := &Video{
-		count: n, hertz: uint64(math.Round(c.Frames * 1000)),
-		pace: c.Pace, full: c.Pace.TxTime(mtu),
-		start: c.Start, stop: c.Stop, mean: float64(c.Load),
-		seed: c.Seed, name: random.Hash(c.Name), way: c.Way,
-	}
-	perFrame := float64(c.Load) / float64(n) / 8 * 1000 / float64(v.hertz)
-	if v.laws, err = c.frameLaws(perFrame); err != nil {
-		return nil, err
-	}
-	for i := range c.Pattern {
-		v.kinds = append(v.kinds, uint8(strings.IndexByte(frameKinds, c.Pattern[i])))
-	}
-	v.setCount(c.Start, n)
-	return v, nil
-}
-
-// after returns how long n frame intervals last, rounded down.
-func (v *Video) after(n int64) des.Time {
-	hi, lo := bits.Mul64(uint64(n), 1000*uint64(des.Second))
-	if hi >= v.hertz {
-		return des.Never
-	}
-	q, _ := bits.Div64(hi, lo, v.hertz)
-	return des.Time(min(q, uint64(des.Never)))
-}
-
-// ready reports when the given frame of a camera is there to be sent.
-func (v *Video) ready(c *camera, frame int64) des.Time {
-	return (v.start + c.phase - v.after(early)).Plus(v.after(frame))
-}
-
-// begin moves camera id to the given frame.
-func (v *Video) begin(id uint32, frame int64) {
-	c := &v.cameras[id]
-	u := random.Unit(random.Draw(v.seed, v.name, uint64(id)<<32|uint64(frame), ofFrame))
-	kind := v.kinds[(int64(c.group)+frame)%int64(len(v.kinds))]
-	c.frame, c.left = frame, int64(max(1, math.Floor(v.laws[kind].At(u)+0.5)))
-}
-
-// setCount sets the number of cameras from the instant at on.
-func (v *Video) setCount(at des.Time, n int) {
-	due := make([]des.Time, n)
-	for i := range min(n, len(v.cameras)) {
-		due[i] = v.turns.of(uint32(i))
-	}
-	before := min(n, len(v.cameras))
-	v.cameras = v.cameras[:before]
-	for i := before; i < n; i++ {
-		v.cameras = append(v.cameras, camera{
-			phase: des.Time(v.unit(uint64(i), ofTiming) * float64(v.after(1))),
-			group: int(v.unit(uint64(i), ofGroup) * float64(len(v.kinds))),
-		})
-		due[i] = v.join(uint32(i), at)
-	}
-	v.turns = newTournament(due)
-}
-
-// unit returns the uniform draw of flow i about a quantity.
-func (v *Video) unit(i, quantity uint64) float64 {
-	return random.Unit(random.Draw(v.seed, v.name, i, quantity))
-}
-
-// join returns when camera id sends its first packet at or after the instant
-// at, as if it had been sending before.
-func (v *Video) join(id uint32, at des.Time) des.Time {
-	c := &v.cameras[id]
-	gone := max(0, int64((at-v.start)/(v.after(1)+1)))
-	v.begin(id, max(0, gone-1))
-	due := v.ready(c, c.frame)
-	for due < at {
-		_, due = v.send(id, due)
-	}
-	return due
-}
-
-// send takes the packet born at due out of camera id and returns its size and
-// when the next one is born.
-func (v *Video) send(id uint32, due des.Time) (size uint16, next des.Time) {
-	c := &v.cameras[id]
-	if c.left > payload {
-		c.left -= payload
-		return mtu, due.Plus(v.full)
-	}
-	size = uint16(header + c.left)
-	next = due.Plus(v.pace.TxTime(nodes.Bytes(size)))
-	v.begin(id, c.frame+1)
-	return size, max(next, v.ready(c, c.frame))
-}
-
-// MeanRate implements [Source]. It is the load asked for.
-func (v *Video) MeanRate() float64 { return v.mean }
-
-// Next implements nodes.Source.
-func (v *Video) Next() des.Time {
-	if at := v.turns.next(); at < v.stop {
-		return at
-	}
-	return des.Never
-}
-
-// Emit implements nodes.Source.
-func (v *Video) Emit(end des.Time, buf []nodes.Packet) []nodes.Packet {
-	end = min(end, v.stop)
-	for v.turns.next() < end {
-		limit := min(end, v.ahead.until())
-		for v.turns.next() < limit {
-			id, due := v.turns.first()
-			size, next := v.send(id, due)
-			buf = longer(buf)
-			birth(&buf[len(buf)-1], due, v.seq, id, v.way, size)
-			v.seq++
-			v.turns.set(id, next)
-		}
-		v.settle()
-	}
-	return buf
-}
-
-// settle makes the changes of load that lie before the next packet.
-func (v *Video) settle() {
-	for len(v.ahead.ahead) > 0 && v.ahead.until() <= v.turns.next() {
-		x := v.ahead.take()
-		v.setCount(max(x.at, v.start), int(math.Round(float64(v.count)*x.factor)))
-	}
-}
-
-// Scale implements nodes.Source. The number of flows changes at once, the
-// latest numbers going first.
-func (v *Video) Scale(at des.Time, factor float64) {
-	v.ahead.add(at, factor)
-	v.settle()
-}
-
-// Clone implements nodes.Source.
-func (v *Video) Clone() nodes.Source {
-	c := *v
-	c.cameras = append([]camera(nil), v.cameras...)
-	c.turns = v.turns.clone()
-	c.ahead = v.ahead.clone()
-	return &c
 }

@@ -7,6 +7,7 @@ import (
 	"testing"
 
 	"ferrule/des"
+	"ferrule/des/random"
 	"ferrule/nodes"
 )
 
@@ -27,6 +28,8 @@ func TestVideoContract(t *testing.T) {
 	for _, c := range []VideoConfig{
 		{Common: Common{Load: 30 * nodes.Mbps, Start: 30 * des.Millisecond, Stop: 900 * des.Millisecond}},
 		{Common: Common{Load: 20 * nodes.Mbps, Start: 30 * des.Millisecond, Stop: 900 * des.Millisecond}, Rate: nodes.Mbps, CoV: 1.5, Pace: 1100 * nodes.Kbps},
+		{Common: Common{Load: 20 * nodes.Mbps, Start: 30 * des.Millisecond, Stop: 900 * des.Millisecond}, Rate: nodes.Mbps, Pattern: Random, Hold: random.Spec{Kind: random.Exponential, Mean: 0.3}},
+		{Common: Common{Load: 20 * nodes.Mbps, Start: 30 * des.Millisecond, Stop: 900 * des.Millisecond}, Rate: nodes.Mbps, Pattern: Regular, Hold: random.Spec{Kind: random.Lognormal, Mean: 0.4, CoV: 1}, Frames: 29.97},
 	} {
 		testContract(t, func() Source { return videoOf(t, c) }, c.Start, c.Stop, des.Second)
 	}
@@ -116,7 +119,7 @@ func TestVideoFrames(t *testing.T) {
 // Sizes of one kind follow the lognormal law, and frames as a whole have the
 // variation of the trace that the defaults are made for.
 func TestVideoSizesFollowTheirLaw(t *testing.T) {
-	c := VideoConfig{Common: Common{Load: 400 * nodes.Mbps}, Pattern: "P", CoV: 0.5, Pace: 2 * nodes.Gbps}
+	c := VideoConfig{Common: Common{Load: 400 * nodes.Mbps}, Group: "P", CoV: 0.5, Pace: 2 * nodes.Gbps}
 	v := videoOf(t, c)
 	var xs []float64
 	for _, fs := range framesOf(t, v.Emit(20*des.Second, nil), c.Pace) {
@@ -163,9 +166,76 @@ func TestVideoOffersWhatIsAsked(t *testing.T) {
 	}
 }
 
+// Flows that come and go are stationary from the start: their load has the mean
+// asked for in the first quarter of a second and later, whatever the holding
+// times, and for Poisson arrivals the number sending has a variance equal to its
+// mean (A. Erlang, 1917: M/G/infinity is Poisson).
+func TestVideoFlowsAreStationary(t *testing.T) {
+	for _, hold := range []random.Spec{{Kind: random.Exponential, Mean: 1}, {Kind: random.Constant, Mean: 1}} {
+		for _, pattern := range []Pattern{Random, Regular} {
+			c := VideoConfig{Common: Common{Load: 160 * nodes.Mbps}, Rate: nodes.Mbps, Pattern: pattern, Hold: hold}
+			for _, from := range []des.Time{0, 2 * des.Second} {
+				mean, half := replicate(30, func(seed uint64) float64 {
+					c.Seed = seed
+					v := videoOf(t, c)
+					v.Emit(from, nil)
+					return rateOf(v.Emit(from+des.Second/4, nil), des.Second/4)
+				})
+				if math.Abs(mean-160e6) > half || half > 0.06*160e6 {
+					t.Errorf("%v flows, %v holding, from %v: %.4g ± %.2g bit/s, want 160e6", pattern, hold.Kind, from, mean, half)
+				}
+			}
+		}
+	}
+	var sum, sq float64
+	const runs = 400
+	for seed := range uint64(runs) {
+		v := videoOf(t, VideoConfig{Common: Common{Load: 50 * nodes.Mbps, Seed: seed}, Rate: nodes.Mbps, Pattern: Random})
+		v.Emit(des.Second/2, nil)
+		n := float64(len(v.cameras) - len(v.idle))
+		sum += n
+		sq += n * n
+	}
+	mean := sum / runs
+	if iod := (sq - sum*mean) / (runs - 1) / mean; math.Abs(iod-1) > 3.29*math.Sqrt(2.0/runs) || math.Abs(mean-50) > 3.29*math.Sqrt(50.0/runs) {
+		t.Errorf("%.2f flows with variance over mean %.3f, want 50 and 1", mean, iod)
+	}
+}
+
+// A flow of 2.0 s at 25 frames a second sends 50 frames, exactly 40 ms apart,
+// the first when it arrives: here one every 100 ms (1 Mbit/s · 2 s / 20 Mbit/s).
+func TestVideoFlowEnds(t *testing.T) {
+	c := VideoConfig{
+		Common: Common{Load: 20 * nodes.Mbps}, Rate: nodes.Mbps, Pace: nodes.Gbps,
+		Pattern: Regular, Hold: random.Spec{Kind: random.Constant, Mean: 2},
+	}
+	v := videoOf(t, c)
+	met := int(v.nextID)
+	flows := framesOf(t, v.Emit(10*des.Second, nil), c.Pace)
+	if len(flows)-met < 98 || len(flows)-met > 101 {
+		t.Fatalf("%d flows arrive in 10 s", len(flows)-met)
+	}
+	for id, fs := range flows[met:] {
+		if id > 75 {
+			break // not over at 10 s
+		}
+		if len(fs) != 50 {
+			t.Errorf("flow %d: %d frames", id, len(fs))
+		}
+		for k, f := range fs {
+			if f.at != fs[0].at+des.Time(k)*40*des.Millisecond {
+				t.Fatalf("flow %d: frame %d comes %v after the first", id, k, f.at-fs[0].at)
+			}
+		}
+		if id > 0 && fs[0].at-flows[met+id-1][0].at != 100*des.Millisecond {
+			t.Errorf("flow %d arrives %v after the one before", id, fs[0].at-flows[met+id-1][0].at)
+		}
+	}
+}
+
 func TestVideoFaults(t *testing.T) {
-	_, err := NewVideo(VideoConfig{Common: Common{Name: "w", Load: nodes.Mbps}, Pattern: "IQ", Frames: -1, CoV: 9, Ratio: [3]float64{1, 1, -1}})
-	const want = "frames: -1/s is not between 0.1 and 1000\npattern: \"IQ\" is not a group of I, P and B\n" +
+	_, err := NewVideo(VideoConfig{Common: Common{Name: "w", Load: nodes.Mbps}, Group: "IQ", Frames: -1, CoV: 9, Ratio: [3]float64{1, 1, -1}})
+	const want = "frames: -1/s is not between 0.1 and 1000\ngroup: \"IQ\" is not made of I, P and B\n" +
 		"ratio: -1 for B is not above 0\ncov: 9 is not between 0.001 and 3"
 	if err == nil || err.Error() != want {
 		t.Errorf("faults:\n%v\nwant:\n%s", err, want)
@@ -178,16 +248,37 @@ func TestVideoFaults(t *testing.T) {
 	}
 }
 
-func BenchmarkVideo(b *testing.B) {
-	v := videoOf(b, VideoConfig{Common: Common{Load: 3 * nodes.Gbps}})
-	var buf []nodes.Packet
-	end, n := des.Time(0), 0
-	for b.Loop() {
-		end += des.Millisecond
-		buf = v.Emit(end, buf[:0])
-		n += len(buf)
+func TestVideoFlowFaults(t *testing.T) {
+	for _, x := range []struct {
+		c    VideoConfig
+		want string
+	}{
+		{VideoConfig{Hold: random.Spec{Mean: 3}}, "hold: flows that last have no length"},
+		{VideoConfig{Pattern: 7}, "pattern: no pattern 7"},
+		{VideoConfig{Pattern: Random, Hold: random.Spec{Kind: random.Pareto, Min: 1, Shape: 0.9}},
+			"hold: the tail is so heavy that there is no mean to speak of; write at-most, or a larger shape"},
+	} {
+		x.c.Common = Common{Name: "w", Load: nodes.Mbps}
+		if _, err := NewVideo(x.c); err == nil || err.Error() != x.want {
+			t.Errorf("faults:\n%v\nwant:\n%s", err, x.want)
+		}
 	}
-	b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(n), "ns/packet")
+}
+
+func BenchmarkVideo(b *testing.B) {
+	for name, pattern := range map[string]Pattern{"standing": Standing, "random": Random} {
+		b.Run(name, func(b *testing.B) {
+			v := videoOf(b, VideoConfig{Common: Common{Load: 3 * nodes.Gbps}, Pattern: pattern})
+			var buf []nodes.Packet
+			end, n := des.Time(0), 0
+			for b.Loop() {
+				end += des.Millisecond
+				buf = v.Emit(end, buf[:0])
+				n += len(buf)
+			}
+			b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(n), "ns/packet")
+		})
+	}
 }
 
 // The tournament against a search through all flows, with many ties.

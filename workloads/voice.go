@@ -54,16 +54,6 @@ func (c Codec) rate() nodes.Rate {
 // G.729, and common practice for G.711.
 const frame = 10 * des.Millisecond
 
-// CallPattern says how calls come and go.
-type CallPattern uint8
-
-// The patterns of calls.
-const (
-	Standing CallPattern = iota // as many calls throughout
-	Random                      // calls arrive as a Poisson process, and end
-	Regular                     // calls arrive at equal gaps, and end
-)
-
 // VoiceConfig describes packet voice without silence suppression: each call
 // sends one packet per interval, IPv4, UDP and RTP headers (40 B) included.
 // A zero field takes the default written beside it.
@@ -71,7 +61,7 @@ type VoiceConfig struct {
 	Common
 	Codec    Codec       // default G711
 	Interval des.Time    // default 20 ms; 10 ms to 60 ms in steps of 10 ms
-	Pattern  CallPattern // default Standing
+	Pattern  Pattern     // default Standing
 	Calls    int         // of Standing, instead of a load
 	Hold     random.Spec // of Random and Regular: length of a call in s; default exponential 180
 }
@@ -162,12 +152,8 @@ func NewVoice(c VoiceConfig) (*Voice, error) {
 	if err != nil {
 		return nil, err
 	}
-	kind := Poisson
-	if c.Pattern == Regular {
-		kind = Constant
-	}
 	gap := flows.mean * float64(size) * 8 / float64(c.Load) * float64(des.Second)
-	v.arrive(kind, gap, flows)
+	v.arrive(c.Pattern.gaps(), gap, flows)
 	return v, nil
 }
 
