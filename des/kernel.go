@@ -57,6 +57,7 @@ type Model interface {
 // An Executor runs do(0), ..., do(n-1), in any order, perhaps at once, and
 // returns when all have returned.
 type Executor interface {
+	// Each makes the n calls and waits for the last to return.
 	Each(n int, do func(i int))
 }
 

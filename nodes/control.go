@@ -93,6 +93,7 @@ type Event struct {
 // for. Everything is effective at once and for this site only. The network
 // implements it; tests of agents may too.
 type Local interface {
+	// Site is the site the agent stands at.
 	Site() SiteID
 
 	// Later books m at this site; m.At must not be before now.
@@ -133,6 +134,9 @@ type Local interface {
 // message when it is due, in the order stated at Message. An agent may touch
 // only its own state and x.
 type ControlAgent interface {
+	// Handle takes m, which is due now, and does what follows from it through x.
 	Handle(x Local, now des.Time, m Message)
+
+	// Clone copies the agent: what happens to one does not happen to the other.
 	Clone() ControlAgent
 }

@@ -144,6 +144,7 @@ func (r *resolver) putInPlace(plan *Plan, first int, p *place) {
 		}
 	}
 	plan.Moves = plan.Moves[:0:0]
+	// order: does not matter because the moves are sorted by way below.
 	for way, chain := range chains {
 		if len(chain) > 0 {
 			plan.Moves = append(plan.Moves, Carriage{way, chain})

@@ -86,7 +86,7 @@ func DM1(lambda, mu float64) GIM1 {
 func ErlangM1(k int, lambda, mu float64) GIM1 {
 	need(k >= 1, "an Erlang gap needs a stage")
 	n := float64(k)
-	return SolveGIM1(lambda, mu, func(s float64) float64 { return math.Pow(n*lambda/(n*lambda+s), n) })
+	return SolveGIM1(lambda, mu, func(s float64) float64 { return math.Pow(n*lambda/(float64(n*lambda)+s), n) })
 }
 
 // MeanWait returns sigma/(mu(1-sigma)).

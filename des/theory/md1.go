@@ -88,7 +88,7 @@ func positiveSeries(rho, x float64) float64 {
 		lg, _ := math.Lgamma(k + 1)
 		term := math.Exp(float64(k*math.Log(a)) - lg - a)
 		sum += term
-		if term <= last && term < sum*1e-17 || sum == 0 && k > 10*x+1000 {
+		if term <= last && term < sum*1e-17 || sum == 0 && k > float64(10*x)+1000 {
 			return sum
 		}
 		last = term
@@ -148,7 +148,7 @@ func departures(rho float64, n int) []float64 {
 // poisson returns P(A = i) and P(A > i) for i = 0..n-1, A Poisson with mean m.
 // Tails are summed from their far end, so that small ones keep their digits.
 func poisson(m float64, n int) (at, above []float64) {
-	far := n + int(m+20*math.Sqrt(m)) + 40
+	far := n + int(m+float64(20*math.Sqrt(m))) + 40
 	at, above = make([]float64, far), make([]float64, far)
 	for i := range at {
 		lg, _ := math.Lgamma(float64(i + 1))
@@ -229,7 +229,7 @@ func (q MD1K) solve() (after []float64, lost, rho float64) {
 	for _, w := range after {
 		sum += w
 	}
-	_, above := poisson(rho, q.K+int(rho+20*math.Sqrt(rho))+40)
+	_, above := poisson(rho, q.K+int(rho+float64(20*math.Sqrt(rho)))+40)
 	over := make([]float64, len(above)+1) // over[m] = E[(A-m)+]
 	for m := len(above) - 1; m >= 0; m-- {
 		over[m] = over[m+1] + above[m]
