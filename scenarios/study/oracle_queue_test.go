@@ -123,7 +123,7 @@ func TestOracleMG1(t *testing.T) {
 	s1, s2, s3 := theory.Scaled(perByte, 340.0+1.0/3, (7*40*40+4*576*576+1500*1500)/12.0, (7*40*40*40+4*576*576*576+1500*1500*1500)/12.0)
 	q := theory.MG1{Lambda: 0.8 / s1, S1: s1, S2: s2, S3: s3}
 	within(t, "theory, mean", q.MeanWait(), 1405.7998e-8, 1e-7)
-	for name, s := range map[string][]*result.Run{"three streams": runSeeds(t, sc, "", 3), "one stream": runSeeds(t, one, "", 3)} {
+	for name, s := range map[string][]*result.Run{"three streams": runSeeds(t, sc, "", 10), "one stream": runSeeds(t, one, "", 4)} {
 		n := count(s, func(r *result.Run) int64 { return r.Audit.DeliveredPackets })
 		within(t, name+", mean wait", mean(t, s, func(r *result.Run) *float64 { return port(t, r, "ab", "a").MeanWaitS }), q.MeanWait(), perMillion(0.044, n))
 		if name == "one stream" {
