@@ -207,13 +207,18 @@ type owed struct {
 	m  nodes.Message
 }
 
-// repay sends again what was given up, as it should be by now.
+// repay sends again what was given up, as it should be by now. What a task in
+// hand is about to change waits for its end.
 func (c *Controller) repay() {
 	list := c.owed
 	c.owed = nil
 	for _, o := range list {
 		m := o.m
 		switch {
+		case m.Op == opSteer && c.moving(m.Way), m.Op == opRate && c.circuits[m.Circuit].task != nodes.None,
+			m.Op == opAssign && m.Way&release == 0 && c.circuits[m.Circuit].task != nodes.None:
+			c.owed = append(c.owed, o)
+			continue
 		case m.Op == opAssign && m.Way&release == 0:
 			h := &c.circuits[m.Circuit].held
 			i := slices.Index(h.sites, o.to)

@@ -238,7 +238,7 @@ func (c *Controller) fibreLives(f nodes.FibreID) {
 			again = append(again, id)
 		case k.state == controller.Down:
 			c.revive(id) // unless an end has told that it is dark
-		case k.state == controller.Up && !k.held.over(f) && slices.Contains(k.home, f):
+		case k.state == controller.Up && p.Recovery == nodes.RecoveryRestore && !k.held.over(f) && slices.Contains(k.home, f):
 			c.homeMayReturn(id)
 		}
 	}

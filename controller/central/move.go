@@ -76,6 +76,9 @@ func (c *Controller) steer(id int32) {
 				switch s := c.circuits[o].state; s {
 				case controller.Up, controller.UpUnprotected, controller.Resizing, controller.Down, controller.Restoring:
 				case controller.Planned, controller.SettingUp, controller.TearingDown, controller.TornDown, controller.Blocked:
+					for _, w := range t.ways {
+						c.leave(w, nil)
+					}
 					c.end(id, "circuit "+c.k.circuitName(o)+" is "+s.String())
 					return
 				default:

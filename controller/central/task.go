@@ -98,6 +98,7 @@ func (c *Controller) end(id int32, failed string) {
 		c.stepEnds(t.step, failed)
 	}
 	c.changed = true
+	c.repay()
 }
 
 // run decides the next thing about a task.

@@ -70,6 +70,7 @@ func (c *Controller) tearDownGoesOn(id int32) {
 			c.unreserve(&k.held)
 			k.held = holding{}
 		}
+		k.home = nil
 		c.enter(t.circuit, controller.TornDown)
 		c.x.Note("torn down", c.k.circuitName(t.circuit), fmt.Sprintf("after %v", c.now-t.begun))
 		c.end(id, "")
