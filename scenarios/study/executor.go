@@ -2,104 +2,141 @@ package study
 
 import (
 	"runtime"
-	"sync"
 	"sync/atomic"
 )
 
-// Executor runs the regions of a window on several cores. It implements
-// des.Executor: which worker runs what never shows in a result, because regions
-// share nothing while a window runs. Close it when the run is over.
+// Executor spreads the regions of one run over cores. It implements
+// des.Executor: its workers live as long as it does, look out for work for a
+// moment after each window and then sleep until they are called. Which of them
+// does what is left to chance, and nothing can depend on it: Each returns when
+// every call has returned, and calls share no state.
+//
+// An Executor belongs to one run at a time.
 type Executor struct {
-	workers int
-	do      func(int)
-	n       int32
-	next    atomic.Int32
-	left    atomic.Int32
-	round   atomic.Uint32
-	closed  atomic.Bool
-	wake    []chan struct{}
-	asleep  []atomic.Bool
-	wg      sync.WaitGroup
+	workers []*worker // beside the caller
+	do      func(i int)
+	n       int64
+	_       [64]byte
+	next    atomic.Int64 // the next i to do
 }
 
-// spins is how often a worker looks for work before it sleeps.
-const spins = 2000
+// worker is one goroutine and what it and the caller tell each other.
+type worker struct {
+	state  atomic.Int32
+	asleep atomic.Bool
+	wake   chan struct{}
+	_      [64]byte
+}
 
-// NewExecutor starts cores-1 workers beside the caller; cores below 2 start
-// none.
+// States of a worker. The caller changes a job's fields only while every worker
+// is idle; a worker reads them only at work, and it goes to work only if the
+// call still stands.
+const (
+	idle int32 = iota
+	called
+	working
+	dismissed
+)
+
+// lookouts is how often an idle worker looks for work before it sleeps, and
+// yieldEvery how often between letting others run: some tens of microseconds,
+// longer than the caller needs at the edge of a window.
+const (
+	lookouts   = 1 << 15
+	yieldEvery = 1 << 8
+)
+
+// NewExecutor starts an executor for the given number of cores, the caller's
+// own included; fewer than two start nothing. Close ends it.
 func NewExecutor(cores int) *Executor {
-	e := &Executor{workers: max(cores, 1) - 1}
-	e.wake = make([]chan struct{}, e.workers)
-	e.asleep = make([]atomic.Bool, e.workers)
-	for w := range e.workers {
-		e.wake[w] = make(chan struct{}, 1)
-		e.wg.Go(func() { e.work(w) })
+	e := &Executor{}
+	for range cores - 1 {
+		w := &worker{wake: make(chan struct{}, 1)}
+		e.workers = append(e.workers, w)
+		go e.serve(w)
 	}
 	return e
 }
 
-// Each implements des.Executor.
+// Each runs do(0), ..., do(n-1), perhaps at once, and returns when all have
+// returned. It allocates nothing.
 func (e *Executor) Each(n int, do func(i int)) {
-	if n < 2 || e.workers == 0 {
+	if n < 2 || len(e.workers) == 0 {
 		for i := range n {
 			do(i)
 		}
 		return
 	}
-	e.do, e.n = do, int32(n)
-	e.left.Store(int32(e.workers))
+	e.do, e.n = do, int64(n)
 	e.next.Store(0)
-	e.round.Add(1)
-	for w := range e.workers {
-		if e.asleep[w].Swap(false) {
-			e.wake[w] <- struct{}{}
+	helpers := e.workers[:min(len(e.workers), n-1)]
+	for _, w := range helpers {
+		w.call(called)
+	}
+	e.work()
+	for _, w := range helpers {
+		if w.state.CompareAndSwap(called, idle) {
+			continue // it had not begun, and will not
+		}
+		for i := 1; w.state.Load() != idle; i++ {
+			if i%yieldEvery == 0 {
+				runtime.Gosched()
+			}
 		}
 	}
-	e.take()
-	for e.left.Load() != 0 {
-		runtime.Gosched()
+	e.do = nil
+}
+
+// Close ends the workers. Each then runs on its caller alone.
+func (e *Executor) Close() {
+	for _, w := range e.workers {
+		w.call(dismissed)
+	}
+	e.workers = nil
+}
+
+// call puts an idle worker into a state and wakes it if it sleeps.
+func (w *worker) call(state int32) {
+	w.state.Store(state)
+	if w.asleep.CompareAndSwap(true, false) {
+		w.wake <- struct{}{}
 	}
 }
 
-// take runs regions until none is left.
-func (e *Executor) take() {
+// work does what nobody has begun.
+func (e *Executor) work() {
 	for i := e.next.Add(1) - 1; i < e.n; i = e.next.Add(1) - 1 {
 		e.do(int(i))
 	}
 }
 
-// work takes part in every round.
-func (e *Executor) work(w int) {
-	seen := uint32(0)
+// serve is a worker's life.
+func (e *Executor) serve(w *worker) {
 	for {
-		for i := 0; e.round.Load() == seen; i++ {
-			if i < spins {
-				runtime.Gosched()
-				continue
-			}
-			e.asleep[w].Store(true)
-			if e.round.Load() != seen && e.asleep[w].Swap(false) {
-				break
-			}
-			<-e.wake[w]
-		}
-		seen++
-		if e.closed.Load() {
+		w.await()
+		if w.state.Load() == dismissed {
 			return
 		}
-		e.take()
-		e.left.Add(-1)
+		if w.state.CompareAndSwap(called, working) {
+			e.work()
+			w.state.Store(idle)
+		}
 	}
 }
 
-// Close ends the workers. The executor must be idle.
-func (e *Executor) Close() {
-	e.closed.Store(true)
-	e.round.Add(1)
-	for w := range e.workers {
-		if e.asleep[w].Swap(false) {
-			e.wake[w] <- struct{}{}
+// await returns once the worker may have been called.
+func (w *worker) await() {
+	for i := 1; i <= lookouts; i++ {
+		if w.state.Load() != idle {
+			return
+		}
+		if i%yieldEvery == 0 {
+			runtime.Gosched()
 		}
 	}
-	e.wg.Wait()
+	w.asleep.Store(true)
+	if w.state.Load() != idle && w.asleep.CompareAndSwap(true, false) {
+		return // called just before it fell asleep
+	}
+	<-w.wake
 }
