@@ -220,3 +220,41 @@ func TestReversion(t *testing.T) {
 	}
 	f.sound(t)
 }
+
+// The end that cannot see a one-way fault is told to stop by the controller.
+func TestOneWayFault(t *testing.T) {
+	p := square("v")
+	p.Circuits[0].Recovery = nodes.RecoveryNone
+	f := newFake(p, Config{}, hops(ms(1))).start(t)
+	f.tell(ms(100), 0, nodes.Message{Op: nodes.OpLightLost, Circuit: 0, N: 1})
+	f.tell(ms(100), 0, nodes.Message{Op: nodes.OpFibreDark, Fibre: 0})
+	f.run(ms(101))
+	defer f.log(t)
+	if f.sites[0].ports[0] != nodes.PortDown || f.sites[1].ports[0] != nodes.PortDown || f.report(0).State != controller.Down {
+		t.Error("an end still sends into the dark")
+	}
+	f.tell(ms(200), 0, nodes.Message{Op: nodes.OpLightBack, Circuit: 0, N: 1})
+	f.tell(ms(200), 0, nodes.Message{Op: nodes.OpFibreLit, Fibre: 0})
+	f.run(ms(300))
+	if f.sites[0].ports[0] != nodes.PortUp || f.sites[1].ports[0] != nodes.PortUp || f.report(0).State != controller.Up {
+		t.Error("not up again")
+	}
+}
+
+// A resize that a fault interrupts leaves the slots the circuit had, and the
+// restored circuit has them too.
+func TestResizeInterrupted(t *testing.T) {
+	p := square("v")
+	f := newFake(p, Config{Command: constant(ms(50))}, hops(ms(1)),
+		controller.Order{Kind: controller.Resize, Name: "r", Slots: 5}).start(t)
+	f.light(ms(20), 0, true)
+	f.run(des.Second)
+	defer f.log(t)
+	if s := f.step(t, "r"); s.State != controller.Failed || s.Detail != "the circuit went down" {
+		t.Errorf("%v: %s", s.State, s.Detail)
+	}
+	if r := f.report(0); r.State != controller.Up || r.Slots != 1 || len(r.Route) != 3 || r.Rate != nodes.Gbps {
+		t.Errorf("%+v", r)
+	}
+	f.sound(t)
+}

@@ -243,3 +243,84 @@ func TestAuditSeesALostSlot(t *testing.T) {
 		t.Errorf("got %q", got)
 	}
 }
+
+// Each kind of condition holds when it should.
+func TestConditions(t *testing.T) {
+	p := plant(2, "ab", "ab")
+	p.Aggregates = []nodes.Aggregate{{Name: "agg", Ends: [2]nodes.SiteID{0, 1}}}
+	for _, n := range []string{"v", "w", "x"} {
+		circuitOn(p, n, "ab").Along = []nodes.FibreID{0}
+	}
+	p.Circuits[0].InPlace = true
+	after := func(k controller.ConditionKind, c nodes.CircuitID, step string) controller.Condition {
+		return controller.Condition{Kind: k, Circuit: c, Step: step}
+	}
+	f := newFake(p, Config{}, hops(ms(1)),
+		controller.Order{Kind: controller.Move, Name: "move", At: ms(100), After: after(controller.CircuitUp, 0, ""), Circuits: []nodes.CircuitID{0}, Ways: []uint16{0}},
+		controller.Order{Kind: controller.SetUp, Name: "moved", After: after(controller.MoveDone, 0, ""), Circuit: 1},
+		controller.Order{Kind: controller.SetUp, Name: "then", After: after(controller.StepDone, 0, "moved"), Circuit: 2},
+		controller.Order{Kind: controller.Return, Name: "down", After: after(controller.CircuitDown, 0, ""), Ways: []uint16{0}},
+		controller.Order{Kind: controller.Return, Name: "typo", After: after(controller.StepDone, 0, "mvoed"), Ways: []uint16{0}},
+		controller.Order{Kind: controller.Return, Name: "not yet", At: des.Minute, Ways: []uint16{0}},
+	).start(t)
+	f.light(ms(500), 0, true)
+	f.run(des.Second)
+	defer f.log(t)
+	for _, k := range []struct {
+		name  string
+		state controller.StepState
+		begun des.Time
+	}{
+		{"move", controller.Done, ms(100)},
+		{"moved", controller.Done, ms(100)},
+		{"then", controller.Done, ms(104)}, // two messages there and back
+		{"down", controller.Done, ms(500)},
+		{"typo", controller.Never, des.Never},
+		{"not yet", controller.Waiting, des.Never},
+	} {
+		if s := f.step(t, k.name); s.State != k.state || s.Begun != k.begun {
+			t.Errorf("%s: %v, begun %v; want %v, %v", k.name, s.State, s.Begun, k.state, k.begun)
+		}
+	}
+}
+
+// A tear-down waits for a move of the same circuit that is in hand.
+func TestTearDownWaitsForAMove(t *testing.T) {
+	p := plant(3, "ab", "bc")
+	p.Aggregates = []nodes.Aggregate{{Name: "agg", Ends: [2]nodes.SiteID{0, 2}}}
+	for _, n := range []string{"ab", "bc"} {
+		circuitOn(p, n, n).InPlace = true
+	}
+	f := newFake(p, Config{}, hops(ms(1)),
+		controller.Order{Kind: controller.Move, Name: "m", Circuits: []nodes.CircuitID{0, 1}, Ways: []uint16{0, 1}},
+		controller.Order{Kind: controller.TearDown, Name: "d", At: ms(1), Circuit: 1},
+	).start(t)
+	f.run(des.Second)
+	defer f.log(t)
+	if m, d := f.step(t, "m"), f.step(t, "d"); m.State != controller.Done || d.Begun != m.Done || d.State != controller.Done {
+		t.Errorf("move done at %v, tear-down begun at %v, %v", m.Done, d.Begun, d.State)
+	}
+	f.agree(t)
+}
+
+// A whole channel takes the route asked for, with a channel that is free all
+// along it.
+func TestChannelAlong(t *testing.T) {
+	p := plant(3, "ab", "bc", "ac")
+	for _, n := range []string{"one", "two", "three", "four"} {
+		v := circuitOn(p, n, "ac")
+		v.Slots, v.Channel, v.Along = 0, true, []nodes.FibreID{0, 1}
+		v.InPlace = n != "four"
+	}
+	f := newFake(p, Config{}, hops(ms(1)), setUp("s", 3)).start(t)
+	f.run(des.Second)
+	for i := range 3 {
+		if r := f.report(nodes.CircuitID(i)); !slices.Equal(r.Channels, []int32{int32(i + 1), int32(i + 1)}) || len(r.Route) != 2 {
+			t.Errorf("circuit %d: channels %v of %v", i, r.Channels, r.Route)
+		}
+	}
+	if r := f.report(3); r.Reason != "no channel is free all along the route asked for" {
+		t.Errorf("%v: %q", r.State, r.Reason)
+	}
+	f.sound(t)
+}
