@@ -68,7 +68,7 @@ func TestCoast(t *testing.T) {
 	check("defaults", strings.Join(s.Defaults, "\n"), strings.Join([]string{
 		"defaults.timing.traffic-ready = 0s", "defaults.timing.converge = 200ms",
 		"defaults.timing.commands = parallel for slots, sequence for channels", "defaults.timing.loss-of-message = 0",
-		"traffic.calls.flows-arrive = none", "traffic.stream.group-of-pictures = 12",
+		"traffic.calls.flows-arrive = none", "traffic.stream.flows-arrive = none", "traffic.stream.group-of-pictures = 12",
 		"fibres.holm-ness.length = 341.315103km (6/5 of the straight line)",
 		"fibres.tarn-firth.length = 332.77019km (6/5 of the straight line)",
 		"fibres.firth-strand.length = 327.536257km (6/5 of the straight line)",

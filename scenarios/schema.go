@@ -99,8 +99,8 @@ type Traffic struct {
 	Size            random.Spec // files: bytes of a file
 	Pace            nodes.Rate  // files: the rate at which one file is sent
 
-	FlowsArrive FlowArrival // voice
-	Hold        random.Spec // voice: picoseconds a flow lasts; the zero Spec (constant 0) if it never ends
+	FlowsArrive FlowArrival // voice, video
+	Hold        random.Spec // voice, video: picoseconds a flow lasts; the zero Spec (constant 0) if it never ends
 	Start       des.Time
 	Stop        des.Time // des.Never if it goes on to the end
 }

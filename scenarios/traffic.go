@@ -16,7 +16,7 @@ var modelKeys = [][]string{
 	ModelConstant: {"packet", "rate"},
 	ModelPoisson:  {"packet", "rate"},
 	ModelVoice:    {"codec", "flows-arrive", "hold"},
-	ModelVideo:    {"rate", "frames", "group-of-pictures"},
+	ModelVideo:    {"rate", "frames", "group-of-pictures", "flows-arrive", "hold"},
 	ModelFiles:    {"size", "pace"},
 }
 
@@ -70,6 +70,7 @@ func (r *resolver) model(p *place, raw *rawTraffic, t *Traffic) {
 		t.Codec = codecs[r.choice(p.field("codec"), raw.Codec, codecs, 0)]
 		r.unless(p, "codec", defaultCodec)
 	case ModelVideo:
+		r.flows(p, raw, t)
 		need("rate", "write the mean rate of one flow, such as 8Mbps")
 		t.Rate = within(p.field("rate"), raw.Rate, 1, maxRate/8, 0, FormatRate)
 		t.Frames = within(p.field("frames"), (*float64)(raw.Frames), 0.1, 1000, defaultFrames, perSecond)

@@ -41,10 +41,10 @@ type constructor func(c workloads.Common, a *scenarios.Aggregate, t *scenarios.T
 // constructors is the one table from the models of files to sources.
 var constructors = [...]constructor{
 	scenarios.ModelConstant: func(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
-		return workloads.NewStream(workloads.StreamConfig{Common: c, Gaps: workloads.Constant, Size: t.Packet})
+		return workloads.NewStream(workloads.StreamConfig{Common: c, Gaps: workloads.Constant, Size: t.Packet, Flows: streamFlows(a, t)})
 	},
 	scenarios.ModelPoisson: func(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
-		return workloads.NewStream(workloads.StreamConfig{Common: c, Gaps: workloads.Poisson, Size: t.Packet})
+		return workloads.NewStream(workloads.StreamConfig{Common: c, Gaps: workloads.Poisson, Size: t.Packet, Flows: streamFlows(a, t)})
 	},
 	scenarios.ModelVoice: voice,
 	scenarios.ModelVideo: video,
@@ -53,21 +53,46 @@ var constructors = [...]constructor{
 	},
 }
 
+// Flows of a stream whose number the file does not say.
+const (
+	usualFlow     = 10 * nodes.Mbps // rate of one, common practice, no source
+	mostLoadFlows = 4096            // enough for equal-cost paths to share evenly
+)
+
+// streamFlows returns how many flows the packets of a stream are spread over:
+// those of the file, or as many flows of the rate of the traffic, else of
+// usualFlow, as come nearest to the load, from 1 to mostLoadFlows.
+func streamFlows(a *scenarios.Aggregate, t *scenarios.Traffic) int {
+	if a.Flows > 0 {
+		return min(a.Flows, workloads.MaxFlows)
+	}
+	rate := t.Rate
+	if rate == 0 {
+		rate = usualFlow
+	}
+	return int(max(1, min(mostLoadFlows, math.Round(float64(a.Load)/float64(rate)))))
+}
+
+// flowPattern is how flows come and go.
+func flowPattern(f scenarios.FlowArrival) workloads.Pattern {
+	switch f {
+	case scenarios.FlowsNone:
+		return workloads.Standing
+	case scenarios.FlowsPoisson:
+		return workloads.Random
+	case scenarios.FlowsRegular:
+		return workloads.Regular
+	default:
+		panic(fmt.Sprintf("build: unknown arrival of flows %d", f))
+	}
+}
+
 func voice(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
 	v := workloads.VoiceConfig{Common: c, Codec: workloads.G711}
 	if t.Codec == "G.729" {
 		v.Codec = workloads.G729
 	}
-	switch t.FlowsArrive {
-	case scenarios.FlowsNone:
-		v.Pattern = workloads.Standing
-	case scenarios.FlowsPoisson:
-		v.Pattern = workloads.Random
-	case scenarios.FlowsRegular:
-		v.Pattern = workloads.Regular
-	default:
-		panic(fmt.Sprintf("build: unknown arrival of flows %d", t.FlowsArrive))
-	}
+	v.Pattern = flowPattern(t.FlowsArrive)
 	if v.Pattern != workloads.Standing {
 		v.Hold = inSeconds(t.Hold)
 	}
@@ -83,8 +108,11 @@ func voice(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (wo
 
 func video(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
 	v := workloads.VideoConfig{Common: c, Rate: t.Rate, Frames: t.Frames}
+	if v.Pattern = flowPattern(t.FlowsArrive); v.Pattern != workloads.Standing {
+		v.Hold = inSeconds(t.Hold)
+	}
 	if t.GroupOfPictures > 0 {
-		v.Pattern = pictures(t.GroupOfPictures)
+		v.Group = pictures(t.GroupOfPictures)
 	}
 	return workloads.NewVideo(v)
 }
