@@ -1,6 +1,8 @@
 package table
 
 import (
+	"fmt"
+	"math"
 	"strconv"
 	"strings"
 
@@ -189,13 +191,40 @@ func (d *doc) compared(base string, p result.Compared) {
 		d.grid(g)
 	}
 	if len(p.Network) > 0 {
-		d.heading(word("NETWORK"))
-		g := differenceGrid(abbreviated("figure"), base)
-		for _, f := range p.Network {
-			g.add(differenceRow(join(": ", name(f.Subject), word(figureName(f.Figure))), f)...)
-		}
-		d.grid(g)
+		d.network(base, p.Network)
 	}
+}
+
+// network lays out the figures of the network that change, by subject; the
+// rest is counted.
+func (d *doc) network(base string, ds []result.Difference) {
+	d.heading(word("NETWORK, what changes"))
+	g := differenceGrid(abbreviated("figure"), base)
+	subject, still := "", 0
+	for _, f := range ds {
+		if !stirs(f) {
+			still++
+			continue
+		}
+		if f.Subject != subject {
+			subject = f.Subject
+			g.add(toned(name(subject), strong), cell{}, cell{}, cell{}, cell{}, cell{}, cell{}, cell{})
+		}
+		g.add(differenceRow(word("  "+figureName(f.Figure)), f)...)
+	}
+	d.grid(g)
+	if still > 0 {
+		d.line(word(fmt.Sprintf("%d further figures of the network differ by less than 1 %%; files hold them all.", still)))
+	}
+}
+
+// stirs reports whether a figure of the network is worth a line: it exists on
+// one side only, or differs by a hundredth.
+func stirs(f result.Difference) bool {
+	if f.Base == nil || f.Plan == nil {
+		return f.Base != nil || f.Plan != nil
+	}
+	return math.Abs(*f.Plan-*f.Base) >= 0.01*max(math.Abs(*f.Base), math.Abs(*f.Plan)) && *f.Plan != *f.Base
 }
 
 func differenceGrid(figure column, base string) *grid {
