@@ -72,9 +72,9 @@ func TestCompareObjectives(t *testing.T) {
 		{"gained", with(0.044, 0.046), with(0.030, 0.032), new(false), new(true),
 			"better in NORMAL (delay-p99 -14 ms); MISSED -> met in NORMAL delay-p99"},
 		{"lost", with(0.030, 0.032), with(0.044, 0.046), new(true), new(false),
-			"worse in NORMAL (delay-p99 +14 ms); met -> MISSED in NORMAL delay-p99 45 ms of 40 ms for b.out"},
+			"worse in NORMAL (delay-p99 +14 ms); met -> MISSED in NORMAL delay-p99 45 ms (limit 40 ms) for b.out"},
 		{"still missed, not always", with(0.044, 0.046), with(0.039, 0.045), new(false), new(false),
-			"no evidence of a difference; still MISSED in NORMAL delay-p99 42 ms of 40 ms for b.out (met in 1 of 2 seeds)"},
+			"no evidence of a difference; still MISSED in NORMAL delay-p99 42 ms (limit 40 ms) for b.out (met in 1 of 2 seeds)"},
 		{"kept", with(0.030, 0.032), with(0.030, 0.032), new(true), new(true), "identical; every limit met"},
 	} {
 		r := foldComparison([]string{"as-is", "other"}, [][]*sample{c.base, c.plan}, 0.95)

@@ -147,7 +147,7 @@ func limitsText(of []contrast) []string {
 
 // beyond says by how much the worst pair passes a limit.
 func beyond(x *contrast) string {
-	text := fmt.Sprintf("%s %s of %s", x.Figure, quantity(*x.plan.mean, x.Unit), quantity(*x.Limit, x.Unit))
+	text := fmt.Sprintf("%s %s (limit %s)", x.Figure, quantity(*x.plan.mean, x.Unit), quantity(*x.Limit, x.Unit))
 	if x.WorstPair != "" {
 		text += " for " + x.WorstPair
 	}
