@@ -24,9 +24,22 @@ type Model struct {
 	Seed     uint64
 }
 
+// Options change how a run is carried out and never what comes of it. The zero
+// value is right for every run; tests hold the others to the same results.
+type Options struct {
+	// JoinBelow is the light delay below which two sites share a region. 0
+	// stands for packet.DefaultJoinBelow; a negative one joins no sites.
+	JoinBelow des.Time
+}
+
 // New builds a replication of sc under plan. Which fits and which does not is
 // found here: an error says what, by name, as a user can mend it.
 func New(sc *scenarios.Scenario, plan *scenarios.Plan, seed uint64) (*Model, error) {
+	return NewWith(sc, plan, seed, Options{})
+}
+
+// NewWith is New with options.
+func NewWith(sc *scenarios.Scenario, plan *scenarios.Plan, seed uint64, o Options) (*Model, error) {
 	m := &Model{Scenario: sc, Plan: plan, Seed: seed}
 	var err error
 	if m.Plant, err = Plant(sc, plan); err != nil {
@@ -35,6 +48,7 @@ func New(sc *scenarios.Scenario, plan *scenarios.Plan, seed uint64) (*Model, err
 	cfg := packet.Config{
 		Plant: m.Plant, Seed: seed, WarmUp: sc.Run.WarmUp, Length: sc.Run.Length,
 		Detect: sc.Timing.Detect, Converge: sc.Timing.Converge, MessageLoss: sc.Timing.LossOfMessage,
+		JoinBelow: o.JoinBelow,
 	}
 	for i := range sc.Sites {
 		f, err := forwarding(&sc.Sites[i])
