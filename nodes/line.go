@@ -55,7 +55,7 @@ func (l *Line) TxTime(size Bytes) des.Time {
 	hi, lo := bits.Mul64(uint64(size), l.mul)
 	if l.shift >= 64 {
 		var c uint64
-		lo, c = bits.Add64(lo, l.add<<(l.shift-63), 0)
+		_, c = bits.Add64(lo, l.add<<(l.shift-63), 0)
 		hi += c + l.add>>(127-l.shift)
 		return des.Time(hi >> (l.shift - 64))
 	}

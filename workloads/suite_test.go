@@ -84,9 +84,6 @@ func cutUp(t *testing.T, s nodes.Source, end des.Time, scalings []scaling, r *ra
 			}
 			s.Scale(scalings[0].at, scalings[0].factor)
 			scalings = scalings[1:]
-			if next = s.Next(); to == at {
-				continue
-			}
 		}
 		next = s.Next()
 		if r.IntN(3) == 0 {

@@ -73,7 +73,7 @@ func plansAgainst(sc scenario, base string, only []string) ([]string, error) {
 	}
 	plans := slices.DeleteFunc(slices.Clone(sc.Plans()), func(p string) bool { return p == base })
 	if len(plans) == 0 {
-		return nil, fmt.Errorf("the scenario has no plan to set beside %q; write one under plans:", base)
+		return nil, fmt.Errorf("the scenario has no plan to set beside %q; write one under the key plans", base)
 	}
 	return plans, nil
 }

@@ -56,12 +56,11 @@ type holding struct {
 
 // scratch is memory of searches, kept from one to the next.
 type scratch struct {
-	route    path.Route
-	routes   []path.Route
-	mask     path.Mask
-	width    []int64
-	channels []int32
-	sites    path.Set // that convert
+	route  path.Route
+	routes []path.Route
+	mask   path.Mask
+	width  []int64
+	sites  path.Set // that convert
 }
 
 // newPicture sets c up with everything free and nothing set up.
