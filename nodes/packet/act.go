@@ -76,6 +76,7 @@ func (n *Network) Act(now des.Time) {
 		a := n.acts.Take()
 		n.act(now, &a)
 	}
+	n.markLoads(now)
 	for _, s := range n.sites {
 		s.now = now
 		s.st.look(&n.history, now)
@@ -120,6 +121,7 @@ func (n *Network) act(now des.Time, a *dated) {
 // open starts the stretch of an act. A change ordered while something is
 // broken, or while a fault has not settled, goes on counting as that.
 func (n *Network) open(now des.Time, kind Kind, name string) {
+	n.markAct(now)
 	if kind == Change && (n.broken > 0 || n.unsettled && n.current() == Hit) {
 		kind = Hit
 	}

@@ -41,6 +41,8 @@ func (n *Network) Clone() *Network {
 	for _, s := range n.sites {
 		c.sites = append(c.sites, s.clone(&c, pipes))
 	}
+	c.marks = slices.Clone(n.marks)
+	c.traceMeters()
 	for _, r := range n.regions {
 		d := &region{net: &c, inner: r.inner}
 		for _, s := range r.sites {
@@ -90,6 +92,10 @@ func (s *Site) clone(n *Network, pipes map[*pipe]*pipe) *Site {
 	c.agenda = s.agenda.Clone()
 	c.out, c.fresh, c.dirty, c.scratch = nil, nil, nil, nil
 	c.sink, c.via = arrivals{key: -1}, slices.Clone(s.via)
+	c.traces = slices.Clone(s.traces)
+	for i := range c.traces {
+		c.traces[i] = s.traces[i].clone(n)
+	}
 	c.losses = slices.Clone(s.losses)
 	for i := range c.losses {
 		c.losses[i].Faults = slices.Clone(s.losses[i].Faults)

@@ -66,6 +66,7 @@ func (x *local) OpenTrail(t nodes.Trail) {
 	}
 	q.pipe = p
 	q.free = max(q.free, x.now)
+	q.turn(x.now)
 	s.fresh = append(s.fresh, p)
 }
 
@@ -91,6 +92,7 @@ func (x *local) SetPort(c nodes.CircuitID, state nodes.PortState) {
 		panic("packet: unknown port state")
 	}
 	q.state = state
+	q.turn(x.now)
 	s.stale = true
 	if x.now > 0 {
 		s.note(x.now, [...]string{"port down", "port up", "port draining"}[state], s.net.plant.Circuits[c].Name)

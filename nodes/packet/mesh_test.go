@@ -298,6 +298,16 @@ func dump(n *packet.Network) string {
 		inside++
 		fmt.Fprintf(&b, "inside %+v\n", *p)
 	})
+	fmt.Fprintf(&b, "marks %v\nseries %+v\n", n.Marks(), n.Series())
+	st := n.Stretches()
+	for i := range st[1:] {
+		fmt.Fprintf(&b, "loads %d %+v\n", i, n.Loads(st[i].From, st[i+1].From))
+	}
+	for s := range n.Transit() {
+		for c := range n.Config().Plant.Circuits {
+			fmt.Fprintf(&b, "turns %v\n", n.Turns(nodes.SiteID(s), nodes.CircuitID(c)))
+		}
+	}
 	for s := range n.Transit() {
 		hist(n.Latencies(nodes.SiteID(s)))
 	}

@@ -58,6 +58,7 @@ type Meter struct {
 	order   measure.Order
 	next    uint32   // sequence number after the last delivered in order
 	last    des.Time // when that one was sent
+	trace   *trace   // of its class where it arrives
 }
 
 // add counts a packet that left its egress router at the given instant.
@@ -78,6 +79,7 @@ func (m *Meter) add(p *nodes.Packet, at des.Time, stretch, fault int32) {
 	c.Exact.Add(delay)
 	c.Queueing += uint64(p.Word)
 	c.Bytes += uint64(p.Size)
+	m.trace.deliver(p.Born, uint64(delay)/1000, p.Size)
 	m.jitter.Add(delay)
 	if j, ok := m.jitter.Value(); ok {
 		c.Jitter += j

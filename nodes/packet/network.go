@@ -67,6 +67,9 @@ type Network struct {
 	now       des.Time
 	flagged   []bool // regions touched at this edge
 	log       []nodes.Event
+	marks     []des.Time // acts that have close bins around them
+	wideWidth des.Time   // of the wide bins of time series
+	wideBins  int
 }
 
 // New builds the network; everything is dark and still until agents start it.
@@ -120,6 +123,7 @@ func New(cfg Config) (*Network, error) {
 		s.next = append(s.next, src.Source.Next())
 		s.srcMin = min(s.srcMin, src.Source.Next())
 	}
+	n.traceSites()
 	for _, s := range n.sites {
 		s.rebuild()
 	}

@@ -1,6 +1,8 @@
 package packet
 
 import (
+	"slices"
+
 	"ferrule/des"
 	"ferrule/nodes"
 	"ferrule/nodes/queue"
@@ -29,6 +31,11 @@ type port struct {
 	area    des.Sum
 	waits   des.Sum
 	changed des.Time // when waiting last changed
+
+	load    []uint64 // IP bytes sent, by class
+	turns   []Turn   // of its life
+	loads   []loadAt // the same at each outside act
+	classOf []uint8  // way -> class, shared
 
 	count portCount
 	mark  portCount // at the end of the warm-up
@@ -178,6 +185,7 @@ func (q *port) send(p *nodes.Packet, t des.Time) {
 	q.free = t + tx
 	q.count.sent++
 	q.count.ipBytes += uint64(p.Size)
+	q.load[q.classOf[p.Way]] += uint64(p.Size)
 	q.count.service += tx
 	q.count.service2 += float64(float64(tx) * float64(tx))
 	q.pipe.push(p).Due = q.free + q.pipe.delay
@@ -224,6 +232,7 @@ func (q *port) flush(s *Site, now des.Time, cause Cause) {
 func (q *port) clone(pipes map[*pipe]*pipe) port {
 	c := *q
 	c.disc = q.disc.Clone()
+	c.load, c.loads, c.turns = slices.Clone(q.load), slices.Clone(q.loads), slices.Clone(q.turns)
 	c.pipe = pipes[q.pipe]
 	c.in = arrivals{key: -1}
 	return c

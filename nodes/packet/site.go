@@ -44,6 +44,7 @@ type Site struct {
 	st        view
 	stEnd     des.Time
 	losses    []Loss
+	traces    []trace  // by class
 	lossOf    []int32  // way -> index in losses plus one
 	sink      arrivals // delivered in this segment, when from several inputs
 	via       []uint64 // way -> run that last delivered it, numbered from 1
@@ -399,6 +400,7 @@ func (s *Site) lose(k *nodes.Packet, at des.Time, cause Cause) {
 		i = int32(len(s.losses))
 		s.lossOf[k.Way] = i
 	}
+	s.traces[s.net.classOf[k.Way]].lose(k.Born)
 	v := s.st
 	if k.Born < v.from || at >= v.to {
 		v.stretch, v.fault = s.net.history.find(k.Born, at)
@@ -565,6 +567,7 @@ func (s *Site) addPort(c nodes.CircuitID, d nodes.Direction) {
 	s.ports = append(s.ports, port{
 		disc: queue.NewTiers(p.Classes, s.net.classOf, circuit.Rate), line: nodes.NewLine(circuit.Rate),
 		overhead: circuit.Overhead, circuit: c, dir: d, in: arrivals{key: -1},
+		classOf: s.net.classOf, load: make([]uint64, len(p.Classes)),
 		hold: circuit.Carries == nodes.CarriesMoved && circuit.WhenDown == nodes.DownWait,
 	})
 }
