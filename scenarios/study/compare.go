@@ -228,9 +228,28 @@ func (f *pairing) contrast(s *series) contrast {
 	x.Interval = intervalOf(t.Diff)
 	if way := f.sense(s); way != neither && n >= 2 {
 		x.Verdict = verdictWord(measure.Verdict(t.Diff, way == lowerIsBetter))
+		if slight(t.Diff, &x.Difference) {
+			x.Verdict = result.Same
+		}
 		f.judged++
 	}
 	return x
+}
+
+// margin is the share of a limit, or of the figure where there is no limit,
+// below which a difference does not matter to a change board, however sure it
+// is. Common practice, no source.
+const margin = 0.01
+
+// slight reports whether a difference is too small to matter: surely so small,
+// or surely there and still so small.
+func slight(d measure.Interval, x *result.Difference) bool {
+	least := margin * max(math.Abs(*x.Base), math.Abs(*x.Plan))
+	if x.Limit != nil {
+		least = margin * *x.Limit
+	}
+	sure := math.Abs(d.Mean) > d.Half
+	return math.Abs(d.Mean) < least && (sure || math.Abs(d.Mean)+d.Half < least)
 }
 
 // sense tells which way a figure gets better; figures of the network are

@@ -41,13 +41,23 @@ func verdictOf(class string, of []contrast, seeds int) result.ClassVerdict {
 		parts = append(parts, "worse "+places(worse))
 	case len(open) == 0:
 		v.Verdict = result.Same
-		parts = append(parts, "identical")
+		parts = append(parts, sameness(same))
 	default:
 		v.Verdict = result.Undecided
 		parts = append(parts, "no evidence of a difference")
 	}
 	v.Text = strings.Join(append(parts, limitsText(limited)...), "; ")
 	return v
+}
+
+// sameness words that nothing got better or worse.
+func sameness(of []contrast) string {
+	for i := range of {
+		if d := of[i].Difference.Difference; d != nil && *d != 0 {
+			return "no difference that matters"
+		}
+	}
+	return "identical"
 }
 
 // allMet is whether every limit was kept: false if one was not, nil if that

@@ -160,7 +160,8 @@ func (d *doc) comparison(c *result.Comparison) {
 		d.compared(c.Base, p)
 	}
 	d.definitions()
-	d.line(word("pp: percentage points. Objectives: every aggregate of the class, under the plan."))
+	d.line(word("pp: percentage points. Objectives: every aggregate of the class, under the plan. A difference below a"))
+	d.line(word("hundredth of the limit (without a limit, of the figure) counts as the same."))
 	d.heading(word("AUDIT"))
 	d.audit(c.Audit)
 	d.cautions(c.Cautions)
@@ -214,7 +215,7 @@ func (d *doc) network(base string, ds []result.Difference) {
 	}
 	d.grid(g)
 	if still > 0 {
-		d.line(word(fmt.Sprintf("%d further figures of the network differ by less than 1 %%; files hold them all.", still)))
+		d.line(word(fmt.Sprintf("%d further figures of the network differ by less than a hundredth; files hold them all.", still)))
 	}
 }
 
