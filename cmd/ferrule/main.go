@@ -1,0 +1,14 @@
+package main
+
+import (
+	"context"
+	"os"
+	"os/signal"
+	"syscall"
+)
+
+func main() {
+	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
+	context.AfterFunc(ctx, stop) // a second interrupt ends the process at once
+	os.Exit(Main(ctx, osEnv(wired{}), os.Args[1:]))
+}
