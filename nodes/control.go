@@ -31,7 +31,7 @@ type Message struct {
 	To      SiteID
 	Serial  uint64 // set by the sender's site
 	Op      Op
-	Settles bool // the network is not settled while such a message is pending
+	Settles bool // the network is not settled while such a message is pending; see also Local.Pending
 	Circuit CircuitID
 	Fibre   FibreID
 	Way     uint16
@@ -125,6 +125,12 @@ type Local interface {
 
 	// Counters reads the sending end of c.
 	Counters(c CircuitID) PortCounters
+
+	// Pending adds delta to the number of consequences that are under way here:
+	// answers awaited, alarms unheard, timers that will do something, decisions
+	// being taken. The network is not settled while there are any, nor until
+	// some time after the last change of their number.
+	Pending(delta int)
 
 	// Note adds to the event log.
 	Note(what, subject, detail string)

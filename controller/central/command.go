@@ -34,7 +34,7 @@ type commands struct {
 	list  []command
 	free  []int32
 	count int64
-	rings [2]ring // deadlines: of what settles, of what does not
+	ring  ring // deadlines
 }
 
 // placeBits is how many low bits of a serial hold the place.
@@ -62,8 +62,12 @@ func (q *commands) place(serial int64) *command {
 	return &q.list[i]
 }
 
-// drop frees the place of cmd.
-func (q *commands) drop(cmd *command) {
+// drop frees the place of cmd, for which nobody waits any more.
+func (c *Controller) drop(cmd *command) {
+	if cmd.m.Settles {
+		c.x.Pending(-1)
+	}
+	q := &c.commands
 	q.free = append(q.free, int32(cmd.serial&(1<<placeBits-1)))
 	cmd.serial = 0
 	cmd.m.Ref = nil
@@ -72,10 +76,7 @@ func (q *commands) drop(cmd *command) {
 // clone copies q.
 func (q *commands) clone() commands {
 	n := *q
-	n.list, n.free = slices.Clone(q.list), slices.Clone(q.free)
-	for i := range n.rings {
-		n.rings[i].list = slices.Clone(q.rings[i].list)
-	}
+	n.list, n.free, n.ring.list = slices.Clone(q.list), slices.Clone(q.free), slices.Clone(q.ring.list)
 	return n
 }
 
@@ -94,6 +95,9 @@ func (c *Controller) command(to nodes.SiteID, m nodes.Message, owner ownerKind, 
 	q.count++
 	m.A = q.count<<placeBits | int64(i)
 	m.From = c.k.cfg.Site
+	if m.Settles {
+		c.x.Pending(1)
+	}
 	q.list[i] = command{serial: m.A, owner: owner, index: index, to: to, m: m}
 	c.transmit(&q.list[i])
 }
@@ -101,17 +105,16 @@ func (c *Controller) command(to nodes.SiteID, m nodes.Message, owner ownerKind, 
 // transmit sends a command, for the first time or again.
 func (c *Controller) transmit(cmd *command) {
 	cmd.tries++
-	which := 1 - b2i(cmd.m.Settles)
-	r := &c.commands.rings[which]
+	r := &c.commands.ring
 	r.list = append(r.list, deadline{at: c.now + c.k.cfg.Retry, serial: cmd.serial})
 	c.x.Send(cmd.to, cmd.m)
-	c.watch(which)
+	c.watch()
 }
 
-// watch books the timer of a ring for its first deadline, if it has one and no
-// timer runs.
-func (c *Controller) watch(which int) {
-	r := &c.commands.rings[which]
+// watch books the timer for the first deadline, if there is one and no timer
+// runs.
+func (c *Controller) watch() {
+	r := &c.commands.ring
 	for r.head < len(r.list) && c.commands.place(r.list[r.head].serial) == nil {
 		r.head++
 	}
@@ -126,12 +129,12 @@ func (c *Controller) watch(which int) {
 		return
 	}
 	r.booked = true
-	later(c.x, r.list[r.head].at, nodes.Message{Op: opOverdue, N: int32(which), Settles: which == 0})
+	later(c.x, r.list[r.head].at, nodes.Message{Op: opOverdue})
 }
 
 // overdue repeats or gives up the commands whose time is over.
-func (c *Controller) overdue(which int) {
-	r := &c.commands.rings[which]
+func (c *Controller) overdue() {
+	r := &c.commands.ring
 	r.booked = true // so that no timer is booked until all that is due is done
 	for r.head < len(r.list) && r.list[r.head].at <= c.now {
 		serial := r.list[r.head].serial
@@ -143,12 +146,12 @@ func (c *Controller) overdue(which int) {
 			c.transmit(cmd)
 		default:
 			gone := *cmd
-			c.commands.drop(cmd)
+			c.drop(cmd)
 			c.unanswered(&gone)
 		}
 	}
 	r.booked = false
-	c.watch(which)
+	c.watch()
 }
 
 // answered hands an answer to whoever waits for it. Answers that come twice
@@ -163,7 +166,7 @@ func (c *Controller) answered(m *nodes.Message) {
 		return
 	}
 	done := *cmd
-	c.commands.drop(cmd)
+	c.drop(cmd)
 	switch done.owner {
 	case ownerNone:
 	case ownerTask:
@@ -247,7 +250,7 @@ func (c *Controller) withdraw(owner ownerKind, index int32) {
 	for i := range c.commands.list {
 		cmd := &c.commands.list[i]
 		if cmd.serial != 0 && cmd.owner == owner && cmd.index == index {
-			c.commands.drop(cmd)
+			c.drop(cmd)
 		}
 	}
 }

@@ -53,7 +53,7 @@ func (c *Controller) Handle(x nodes.Local, now des.Time, m nodes.Message) {
 	case opAnswer:
 		c.answered(&m)
 	case opOverdue:
-		c.overdue(int(m.N))
+		c.overdue()
 	case opAlarm:
 		c.hear(&m)
 		c.circuitAlarm(&m)
@@ -62,7 +62,6 @@ func (c *Controller) Handle(x nodes.Local, now des.Time, m nodes.Message) {
 		c.fibreAlarm(&m)
 	case opComputed:
 		c.computed()
-	case opUnsettled:
 	case opUnplaced:
 		c.unplaced(m.Circuit, m.N)
 	case opAfter:
@@ -84,7 +83,7 @@ func (c *Controller) Handle(x nodes.Local, now des.Time, m nodes.Message) {
 
 // hear confirms an alarm.
 func (c *Controller) hear(m *nodes.Message) {
-	c.x.Send(m.From, nodes.Message{Op: opHeard, Settles: true, A: m.A})
+	c.x.Send(m.From, nodes.Message{Op: opHeard, A: m.A})
 }
 
 // jobKind says what is to be decided.
@@ -122,9 +121,8 @@ func (j job) settles() bool { return j.kind != jobRequest }
 type jobs struct {
 	list []job
 	head int
-	now  job      // in hand
-	due  des.Time // when it is decided
-	busy bool     // one is in hand
+	now  job  // in hand
+	busy bool // one is in hand
 }
 
 // enqueue adds a job behind those that go before it, and begins it when
@@ -136,11 +134,11 @@ func (c *Controller) enqueue(j job) {
 		i--
 	}
 	q.list = slices.Insert(q.list, i, j)
-	switch {
-	case !q.busy:
+	if j.settles() {
+		c.x.Pending(1)
+	}
+	if !q.busy {
 		c.nextJob()
-	case j.kind != jobRequest && q.now.kind == jobRequest && q.due > c.now:
-		later(c.x, q.due, nodes.Message{Op: opUnsettled, Settles: true})
 	}
 }
 
@@ -166,10 +164,8 @@ func (c *Controller) nextJob() {
 		} else if q.head > 64 && q.head > len(q.list)/2 {
 			q.list, q.head = slices.Delete(q.list, 0, q.head), 0
 		}
-		q.due = c.now + c.k.cfg.Compute
-		if q.due > c.now {
-			settles := slices.ContainsFunc(q.list[q.head:], job.settles) || q.now.settles()
-			later(c.x, q.due, nodes.Message{Op: opComputed, Settles: settles})
+		if c.k.cfg.Compute > 0 {
+			later(c.x, c.now+c.k.cfg.Compute, nodes.Message{Op: opComputed})
 			return
 		}
 		c.decide()
@@ -199,4 +195,7 @@ func (c *Controller) decide() {
 		panic("central: unknown kind of job")
 	}
 	c.jobs.busy = false
+	if c.jobs.now.settles() {
+		c.x.Pending(-1)
+	}
 }

@@ -80,7 +80,8 @@ func (e *Element) activate(m *nodes.Message) {
 // network says otherwise, and a hold-off that runs for an earlier one ends.
 func (e *Element) open(n *end, t *nodes.Trail) {
 	n.incarnation = t.Incarnation
-	n.dark, n.told, n.timer, n.draining = false, false, 0, 0
+	e.stopTimer(n)
+	n.dark, n.told, n.draining = false, false, 0
 	e.x.OpenTrail(*t)
 }
 
@@ -152,7 +153,8 @@ func (e *Element) light(m *nodes.Message) {
 		return
 	}
 	if m.Op == nodes.OpLightBack {
-		n.dark, n.timer = false, 0
+		n.dark = false
+		e.stopTimer(n)
 		if n.told {
 			n.told = false
 			e.raise(nodes.Message{Op: opAlarm, Circuit: m.Circuit, N: m.N, B: alarmBack})
@@ -165,7 +167,8 @@ func (e *Element) light(m *nodes.Message) {
 	n.dark = true
 	e.serial++
 	n.timer = e.serial
-	t := nodes.Message{Op: opHoldOff, Settles: true, Circuit: m.Circuit, A: n.timer}
+	e.x.Pending(1)
+	t := nodes.Message{Op: opHoldOff, Circuit: m.Circuit, A: n.timer}
 	if d := e.k.plant.Circuits[m.Circuit].HoldOff; d > 0 {
 		later(e.x, e.now+d, t)
 		return
@@ -179,15 +182,25 @@ func (e *Element) heldOff(m *nodes.Message) {
 	if n.timer != m.A {
 		return
 	}
-	n.timer, n.told = 0, true
+	e.stopTimer(n)
+	n.told = true
 	e.setPort(n, nodes.PortDown)
 	e.raise(nodes.Message{Op: opAlarm, Circuit: m.Circuit, N: n.incarnation, B: alarmLost})
+}
+
+// stopTimer ends the hold-off that runs for n, if any.
+func (e *Element) stopTimer(n *end) {
+	if n.timer != 0 {
+		n.timer = 0
+		e.x.Pending(-1)
+	}
 }
 
 // raise sends an alarm and sees to it that it is heard.
 func (e *Element) raise(m nodes.Message) {
 	e.serial++
-	m.From, m.A, m.Settles = e.site, e.serial, true
+	m.From, m.A = e.site, e.serial
+	e.x.Pending(1)
 	e.alarms = append(e.alarms, alarm{serial: m.A, m: m})
 	e.alarmAgain(m.A)
 }
@@ -206,7 +219,7 @@ func (e *Element) alarmAgain(serial int64) {
 		}
 		a.tries++
 		e.x.Send(e.k.cfg.Site, a.m)
-		later(e.x, e.now+e.k.cfg.Retry, nodes.Message{Op: opAlarmAgain, Settles: true, A: serial})
+		later(e.x, e.now+e.k.cfg.Retry, nodes.Message{Op: opAlarmAgain, A: serial})
 		return
 	}
 }
@@ -216,6 +229,7 @@ func (e *Element) heard(serial int64) {
 	for i := range e.alarms {
 		if e.alarms[i].serial == serial {
 			e.alarms = append(e.alarms[:i], e.alarms[i+1:]...)
+			e.x.Pending(-1)
 			return
 		}
 	}

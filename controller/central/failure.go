@@ -48,6 +48,7 @@ func (c *Controller) fibreDies(f nodes.FibreID, from nodes.SiteID) {
 	}
 	c.x.Note("fibre down", c.k.fibreName(f), fmt.Sprintf("told by %s; %d circuits: %s", c.k.siteName(from), len(hit), strings.Join(names, ", ")))
 	for _, id := range hit {
+		c.located(id)
 		c.fails(id, c.k.plant.Circuits[id].HoldOff == 0)
 	}
 	for i := range c.tasks {
@@ -182,7 +183,19 @@ func (c *Controller) circuitAlarm(m *nodes.Message) {
 	if placed {
 		return // known already: absorbed
 	}
-	later(c.x, c.now+c.k.cfg.Retry, nodes.Message{Op: opUnplaced, Settles: true, Circuit: m.Circuit, N: m.N})
+	if c.k.plant.Circuits[m.Circuit].Recovery == nodes.RecoveryRestore {
+		k.searching = true
+		c.x.Pending(1)
+	}
+	later(c.x, c.now+c.k.cfg.Retry, nodes.Message{Op: opUnplaced, Circuit: m.Circuit, N: m.N})
+}
+
+// located ends the wait for a fibre that accounts for what a circuit suffers.
+func (c *Controller) located(id nodes.CircuitID) {
+	if k := &c.circuits[id]; k.searching {
+		k.searching = false
+		c.x.Pending(-1)
+	}
 }
 
 // unplaced deals with a circuit that has been down for a while without a fibre
@@ -192,7 +205,8 @@ func (c *Controller) unplaced(id nodes.CircuitID, incarnation int32) {
 	if k.active != incarnation || k.state != controller.Down || !k.held.holds() || c.hasDead(k.held.route) {
 		return
 	}
-	c.x.Note("light lost", c.k.circuitName(id), fmt.Sprintf("no fibre accounts for it after %v", c.k.cfg.Retry))
+	c.located(id)
+	c.x.Note("light lost", c.k.circuitName(id), "no fibre accounts for it after "+people(c.k.cfg.Retry))
 	c.restore([]nodes.CircuitID{id}, k.held.route)
 }
 

@@ -258,3 +258,36 @@ func TestResizeInterrupted(t *testing.T) {
 	}
 	f.sound(t)
 }
+
+// TestNothingUnderWayOnceRestored holds the count of consequences to its
+// purpose: it ends with the last of them, not with the timers of repetitions
+// that have become idle.
+func TestNothingUnderWayOnceRestored(t *testing.T) {
+	p := plant(3, "ab", "ac", "cb")
+	circuitOn(p, "x", "ab").Recovery = nodes.RecoveryRestore
+	p.Circuits[0].InPlace = true
+	f := newFake(p, Config{Compute: ms(10), Retry: des.Second, Command: constant(ms(5))}, hops(ms(1))).start(t)
+	f.light(ms(100), 0, true)
+	f.run(ms(105))
+	if f.under == 0 {
+		t.Error("nothing is under way while the circuit is restored")
+	}
+	f.run(ms(200)) // all timers of repetitions are later
+	if s := f.report(0).State; s != controller.Up || f.under != 0 {
+		t.Errorf("circuit is %v, %d things under way; want up and none", s, f.under)
+	}
+	f.sound(t)
+	f.log(t)
+}
+
+// TestPeople checks that durations in details have three significant digits.
+func TestPeople(t *testing.T) {
+	for d, want := range map[des.Time]string{
+		0: "0 s", 36422838677: "36.4 ms", 9996 * des.Microsecond: "10.0 ms", 181 * des.Millisecond: "181 ms",
+		1200 * des.Millisecond: "1.20 s", 5410 * des.Nanosecond: "5.41 us", 7: "7.00 ps", -36 * des.Millisecond: "-36.0 ms",
+	} {
+		if got := people(d); got != want {
+			t.Errorf("people(%v) = %q, want %q", d, got, want)
+		}
+	}
+}

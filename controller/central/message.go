@@ -32,15 +32,14 @@ const (
 	opAlarmAgain // alarm A is still unheard
 
 	// What the controller tells itself later.
-	opComputed  // the job in hand is decided
-	opUnsettled // nothing: it stands for a job that waits behind one that does not settle
-	opOverdue   // look for unanswered commands: N = ring
-	opUnplaced  // the fault of Circuit, incarnation N, is still not located
-	opAfter     // task N, of number A, goes on
-	opSweep     // the chain that Way left is empty: A
-	opWhole     // wait-to-restore of Circuit is over: N
-	opArrival   // the next request of stream N
-	opExpire    // request N, of number A, ends
+	opComputed // the job in hand is decided
+	opOverdue  // look for unanswered commands
+	opUnplaced // the fault of Circuit, incarnation N, is still not located
+	opAfter    // task N, of number A, goes on
+	opSweep    // the chain that Way left is empty: A
+	opWhole    // wait-to-restore of Circuit is over: N
+	opArrival  // the next request of stream N
+	opExpire   // request N, of number A, ends
 )
 
 // Values of N in an answer.

@@ -129,7 +129,7 @@ func (c *Controller) steerGoesOn(id int32) {
 		c.setChain(w, chain)
 		c.leave(w, old)
 	}
-	c.x.Note(c.steps[t.step].order.Kind.String()+" done", c.steps[t.step].order.Name, fmt.Sprintf("%d ways after %v", len(t.ways), c.now-t.begun))
+	c.x.Note(c.steps[t.step].order.Kind.String()+" done", c.steps[t.step].order.Name, fmt.Sprintf("%d ways after %s", len(t.ways), people(c.now-t.begun)))
 	c.end(id, "")
 }
 

@@ -236,8 +236,8 @@ func (c *Controller) clone() *Controller {
 }
 
 // Settled says whether nothing is under way but circuit demand: no task, job,
-// command without an answer or owed, alarm unheard, hold-off or port that is
-// about to change. Timers that have become idle do not count, unlike messages
+// command without an answer or owed, alarm unheard, hold-off, search for a
+// fault, or port that is about to change. Timers that have become idle do not count, unlike messages
 // that settle. Wait-to-restore does not count either.
 func (n *Net) Settled() bool {
 	c := n.ctl
@@ -248,6 +248,11 @@ func (n *Net) Settled() bool {
 	}
 	for i := range c.commands.list {
 		if cmd := &c.commands.list[i]; cmd.serial != 0 && cmd.m.Settles {
+			return false
+		}
+	}
+	for i := range c.circuits {
+		if c.circuits[i].searching {
 			return false
 		}
 	}

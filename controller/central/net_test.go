@@ -24,6 +24,7 @@ type fakeNet struct {
 	lose    func(now des.Time, to nodes.SiteID, m *nodes.Message) bool // nil: nothing
 	sites   []fakeSite
 	events  []nodes.Event
+	under   int    // what agents count as under way
 	dark    []bool // by fibre
 }
 
@@ -97,6 +98,7 @@ func (s *fakeSite) Counters(c nodes.CircuitID) nodes.PortCounters {
 	s.queue[c] = 0 // sent by the time of the next look
 	return nodes.PortCounters{QueueBytes: q, Rate: s.rates[c]}
 }
+func (s *fakeSite) Pending(delta int) { s.f.under += delta }
 func (s *fakeSite) Note(what, subject, detail string) {
 	s.f.events = append(s.f.events, nodes.Event{At: s.f.now, Site: s.id, What: what, Subject: subject, Detail: detail})
 }
@@ -286,6 +288,9 @@ func (f *fakeNet) sound(t *testing.T) {
 	t.Helper()
 	for _, line := range f.net.Audit() {
 		t.Error("audit: " + line)
+	}
+	if f.under < 0 || f.net.Settled() && f.under > 0 {
+		t.Errorf("the agents count %d things under way; settled: %v", f.under, f.net.Settled())
 	}
 }
 

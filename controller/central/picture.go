@@ -2,7 +2,9 @@ package central
 
 import (
 	"fmt"
+	"math"
 	"slices"
+	"strconv"
 
 	"ferrule/controller"
 	"ferrule/controller/path"
@@ -25,6 +27,7 @@ type circuit struct {
 	dark      [2]bool         // as its ends have told
 	heard     [2]int64        // last alarm of each end
 	task      int32           // in hand for it, or None
+	searching bool            // for a fibre that accounts for its loss of light
 	setUp     des.Time
 	upSince   des.Time
 	downSince des.Time
@@ -316,6 +319,35 @@ func (c *Controller) fibreList(route []nodes.FibreID) string {
 		b = append(b, c.k.fibreName(f)...)
 	}
 	return string(b)
+}
+
+// people words a duration for people: three significant digits.
+func people(d des.Time) string {
+	switch d {
+	case 0:
+		return "0 s"
+	case des.Never:
+		return "never"
+	}
+	unit, name := des.Picosecond, "ps"
+	for _, u := range [...]struct {
+		size des.Time
+		name string
+	}{{des.Second, "s"}, {des.Millisecond, "ms"}, {des.Microsecond, "us"}, {des.Nanosecond, "ns"}} {
+		if max(d, -d) >= u.size {
+			unit, name = u.size, u.name
+			break
+		}
+	}
+	v := float64(d) / float64(unit)
+	digits := 2
+	switch size := math.Abs(v); {
+	case size >= 99.95:
+		digits = 0
+	case size >= 9.995:
+		digits = 1
+	}
+	return strconv.FormatFloat(v, 'f', digits, 64) + " " + name
 }
 
 // attempts words a number of attempts.

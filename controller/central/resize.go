@@ -86,7 +86,7 @@ func (c *Controller) resizeGoesOn(id int32) {
 		k.held.slots, k.slots, k.rate = t.slots, t.slots, t.rate
 		k.resizes++
 		c.enter(t.circuit, controller.Up)
-		c.x.Note("resized", c.k.circuitName(t.circuit), fmt.Sprintf("%d slots after %v", t.slots, c.now-t.begun))
+		c.x.Note("resized", c.k.circuitName(t.circuit), fmt.Sprintf("%d slots after %s", t.slots, people(c.now-t.begun)))
 		c.end(id, "")
 	}
 }

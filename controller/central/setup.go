@@ -34,7 +34,7 @@ func (c *Controller) route(id int32) {
 	h.incarnation = k.last
 	t.h = h
 	c.reserve(&t.h)
-	c.x.Note("route", p.Name, fmt.Sprintf("%s; %d slots, light %v, try %d", c.fibreList(h.route), h.slots, c.delayOf(h.route), t.tries))
+	c.x.Note("route", p.Name, fmt.Sprintf("%s; %d slots, light %s, try %d", c.fibreList(h.route), h.slots, people(c.delayOf(h.route)), t.tries))
 	t.phase, t.sent = phaseConnect, 0
 	if c.k.cfg.Sequence || p.Channel {
 		t.waiting = 0
@@ -66,7 +66,7 @@ func (c *Controller) connected(id int32) {
 	t := c.tasks[id]
 	k := &c.circuits[t.circuit]
 	k.setUp = c.now - t.begun
-	c.x.Note("connected", c.k.circuitName(t.circuit), fmt.Sprintf("%d sites after %v", len(t.h.sites), k.setUp))
+	c.x.Note("connected", c.k.circuitName(t.circuit), fmt.Sprintf("%d sites after %s", len(t.h.sites), people(k.setUp)))
 	t.phase, t.waiting = phaseActivate, 2
 	for e, s := range c.k.plant.Circuits[t.circuit].Ends {
 		m := nodes.Message{Op: opActivate, Settles: true, Circuit: t.circuit, N: t.h.incarnation, Ref: t.h.trail(t.circuit, nodes.Direction(e))}
@@ -88,7 +88,7 @@ func (c *Controller) activated(id int32) {
 		k.home = k.held.route
 	}
 	c.end(id, "")
-	c.comesUp(t.circuit, "up", fmt.Sprintf("incarnation %d, light %v", k.active, k.delay), true)
+	c.comesUp(t.circuit, "up", fmt.Sprintf("incarnation %d, light %s", k.active, people(k.delay)), true)
 }
 
 // comesUp takes a circuit for up, on a new route or the one it had, and routes

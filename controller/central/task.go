@@ -88,8 +88,11 @@ func (c *Controller) end(id int32, failed string) {
 	t := c.tasks[id]
 	c.withdraw(ownerTask, id)
 	q := &c.jobs
+	all := len(q.list)
 	left := slices.DeleteFunc(q.list[q.head:], func(j job) bool { return j.kind == jobTask && j.task == id })
-	q.list = q.list[:q.head+len(left)]
+	if q.list = q.list[:q.head+len(left)]; len(q.list) < all {
+		c.x.Pending(len(q.list) - all)
+	}
 	c.tasks[id] = nil
 	if t.circuit != nodes.None && c.circuits[t.circuit].task == id {
 		c.circuits[t.circuit].task = nodes.None
@@ -207,6 +210,7 @@ func (c *Controller) enter(id nodes.CircuitID, s controller.CircuitState) {
 	}
 	was := carries(k.state)
 	k.state = s
+	c.located(id)
 	c.changed = true
 	switch is := carries(s); {
 	case is && !was:

@@ -72,7 +72,7 @@ func (c *Controller) tearDownGoesOn(id int32) {
 		}
 		k.home = nil
 		c.enter(t.circuit, controller.TornDown)
-		c.x.Note("torn down", c.k.circuitName(t.circuit), fmt.Sprintf("after %v", c.now-t.begun))
+		c.x.Note("torn down", c.k.circuitName(t.circuit), "after "+people(c.now-t.begun))
 		c.end(id, "")
 	default:
 		panic("central: a tear-down has no such phase")

@@ -153,6 +153,12 @@ func (x *local) Counters(c nodes.CircuitID) nodes.PortCounters {
 	}
 }
 
+// Pending implements nodes.Local.
+func (x *local) Pending(delta int) {
+	x.pending += delta
+	x.lastAct = x.now
+}
+
 // Note implements nodes.Local.
 func (x *local) Note(what, subject, detail string) {
 	x.events = append(x.events, nodes.Event{At: x.now, Site: x.id, What: what, Subject: subject, Detail: detail})

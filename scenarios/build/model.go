@@ -93,7 +93,7 @@ func (m *Model) control() error {
 	cfg := central.Config{
 		Site: sc.Controller.At, Seed: m.Seed, Compute: sc.Controller.Compute, Retry: sc.Controller.Retry, Attempts: sc.Controller.Attempts,
 		Command: command, CommandsAtOnce: sc.Timing.CommandsAtOnce, Sequence: sc.Timing.Commands == scenarios.CommandsSequence,
-		TrafficReady: sc.Timing.TrafficReady, WaitToRestore: sc.Timing.WaitToRestore,
+		TrafficReady: sc.Timing.TrafficReady, Revert: true, WaitToRestore: sc.Timing.WaitToRestore,
 	}
 	for i := range sc.Requests {
 		s, err := m.stream(&sc.Requests[i])
