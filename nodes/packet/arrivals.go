@@ -34,17 +34,25 @@ func (a *arrivals) put(p *nodes.Packet, key int32) *nodes.Packet {
 	return &a.arena[len(a.arena)-1]
 }
 
+// begin begins a run, or goes on with that of the same key.
+//
 //go:noinline
 func (a *arrivals) begin(key int32) {
+	if key == a.key {
+		return
+	}
 	a.close()
 	a.key = key
 	a.runs = append(a.runs, run{from: int32(len(a.arena)), key: key})
 }
 
-// close ends the run being filled.
+// close ends the run being filled, and forgets it if it is empty.
 func (a *arrivals) close() {
 	if n := len(a.runs); n > 0 && a.key >= 0 {
-		a.runs[n-1].to = int32(len(a.arena))
+		r := &a.runs[n-1]
+		if r.to = int32(len(a.arena)); r.to == r.from {
+			a.runs = a.runs[:n-1]
+		}
 	}
 	a.key = -1
 }

@@ -172,14 +172,14 @@ func (q *port) catch(end des.Time) {
 		q.waits.Add(uint64(wait))
 		if wait > 0 {
 			q.count.delayed++
-			p.Word += uint32(wait / des.Nanosecond)
 		}
-		q.send(p, t)
+		q.send(p, t).Word += uint32(wait / des.Nanosecond)
 	}
 }
 
-// send puts p on the line at t.
-func (q *port) send(p *nodes.Packet, t des.Time) {
+// send puts a copy of p on the line at t and returns it. What changes is
+// changed in the copy: a copy of what was just written in parts is slow.
+func (q *port) send(p *nodes.Packet, t des.Time) *nodes.Packet {
 	size := nodes.Bytes(p.Size) + q.overhead
 	tx := q.line.TxTime(size)
 	q.free = t + tx
@@ -188,7 +188,9 @@ func (q *port) send(p *nodes.Packet, t des.Time) {
 	q.load[q.classOf[p.Way]] += uint64(p.Size)
 	q.count.service += tx
 	q.count.service2 += float64(float64(tx) * float64(tx))
-	q.pipe.push(p).Due = q.free + q.pipe.delay
+	c := q.pipe.push(p)
+	c.Due = q.free + q.pipe.delay
+	return c
 }
 
 // lineBytes are the bytes that n packets of so many IP bytes take on the line.

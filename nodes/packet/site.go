@@ -37,8 +37,8 @@ type Site struct {
 	out     []nodes.Message
 	fresh   []*pipe  // opened, not yet known to the other end
 	dirty   []*pipe  // filled since the last edge
-	pending int      // settling messages in the agenda
-	lastAct des.Time // when a settling message was last handled
+	pending int      // settling messages in the agenda, and what the agent counts
+	lastAct des.Time // when a settling message was last handled, or the agent's count changed
 	now     des.Time
 
 	st        view
@@ -427,41 +427,47 @@ func (s *Site) emit(before des.Time) {
 
 func (s *Site) emitOne(i int, limit des.Time) {
 	src := &s.sources[i]
-	s.scratch = src.s.Emit(limit, s.scratch[:0])
-	s.next[i] = src.s.Next()
-	if len(s.scratch) == 0 {
-		return
-	}
 	key := sourceKey + int32(i) // after every fibre input
 	bytes := uint64(0)
 	h := s.hop[src.way]
-	for j := range s.scratch {
-		k := &s.scratch[j]
-		bytes += uint64(k.Size)
-		if s.access.varies {
+	if h >= 0 && h < hopSets { // straight to the port
+		in := &s.ports[h].in
+		in.begin(key)
+		from := len(in.arena)
+		in.arena = src.s.Emit(limit, in.arena)
+		sent := in.arena[from:]
+		for j := range sent {
+			k := &sent[j]
+			bytes += uint64(k.Size)
 			k.Due += s.access.at(k.Due)
-		} else {
-			k.Due += s.access.constant
 		}
-		s.enter(k, h, key)
+		src.packets += uint64(len(sent))
+	} else {
+		s.scratch = src.s.Emit(limit, s.scratch[:0])
+		for j := range s.scratch {
+			k := &s.scratch[j]
+			bytes += uint64(k.Size)
+			s.enter(k, k.Due+s.access.at(k.Due), h, key)
+		}
+		src.packets += uint64(len(s.scratch))
 	}
-	src.packets += uint64(len(s.scratch))
+	s.next[i] = src.s.Next()
 	src.bytes += bytes
 }
 
 // enter takes a packet into the network.
-func (s *Site) enter(k *nodes.Packet, h, key int32) {
+func (s *Site) enter(k *nodes.Packet, due des.Time, h, key int32) {
 	switch {
 	case h >= hopHeld:
 		s.keep(k)
 	case h >= hopSets:
-		s.ports[s.choose(k, h)].in.put(k, key)
+		s.ports[s.choose(k, h)].in.put(k, key).Due = due
 	case h >= 0:
-		s.ports[h].in.put(k, key)
+		s.ports[h].in.put(k, key).Due = due
 	case h == hopHere:
-		s.deliver(k, k.Due)
+		s.deliver(k, due)
 	default:
-		s.lose(k, k.Due, LostNoRoute)
+		s.lose(k, due, LostNoRoute)
 	}
 }
 
@@ -488,8 +494,7 @@ func (s *Site) release(now des.Time) {
 		key := sourceKey + int32(s.sourceOf(h.way))
 		for j := range h.buf {
 			k := &h.buf[j]
-			k.Due = now
-			s.enter(k, to, key)
+			s.enter(k, now, to, key)
 		}
 	}
 	s.held = kept

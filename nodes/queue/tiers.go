@@ -32,6 +32,7 @@ type lane struct {
 	ring    ring
 	quantum nodes.Bytes // weighted tier only
 	deficit nodes.Bytes
+	class   int32 // of all packets in it, or several
 }
 
 // budget is a class's room.
@@ -42,6 +43,9 @@ type budget struct {
 }
 
 const unlimited = 1 << 62
+
+// several says that a queue holds packets of several classes.
+const several = -1
 
 // NewTiers builds the discipline for the classes, highest first, of a port of
 // rate r; classOf gives each way's class and must not change. It panics on
@@ -60,7 +64,8 @@ func NewTiers(classes []nodes.Class, classOf []uint8, r nodes.Rate) *Tiers {
 			least = min(least, c.Weight)
 		}
 	}
-	add := func(l lane) uint8 {
+	add := func(l lane, class int) uint8 {
+		l.class = int32(class)
 		t.q = append(t.q, l)
 		return uint8(len(t.q) - 1)
 	}
@@ -68,10 +73,10 @@ func NewTiers(classes []nodes.Class, classOf []uint8, r nodes.Rate) *Tiers {
 	for i, c := range classes {
 		switch c.Queue {
 		case nodes.QueueStrict:
-			t.queueOf[i] = add(lane{})
+			t.queueOf[i] = add(lane{}, i)
 		case nodes.QueueFIFO:
 			if fifo < 0 {
-				fifo = int(add(lane{}))
+				fifo = int(add(lane{}, several))
 			}
 			t.queueOf[i] = uint8(fifo)
 		case nodes.QueueWeight:
@@ -81,7 +86,7 @@ func NewTiers(classes []nodes.Class, classOf []uint8, r nodes.Rate) *Tiers {
 			weighted = true
 			for j := i; j < len(classes); j++ { // the whole tier stands here
 				if d := classes[j]; d.Queue == nodes.QueueWeight {
-					q := add(lane{quantum: DefaultQuantum * nodes.Bytes(d.Weight) / nodes.Bytes(least)})
+					q := add(lane{quantum: DefaultQuantum * nodes.Bytes(d.Weight) / nodes.Bytes(least)}, j)
 					t.queueOf[j] = q
 					t.wrr |= 1 << q
 				}
@@ -192,7 +197,11 @@ func (t *Tiers) take(q uint8) *nodes.Packet {
 			t.granted = false
 		}
 	}
-	b := &t.class[t.classOf[p.Way]]
+	class := l.class
+	if class == several {
+		class = int32(t.classOf[p.Way])
+	}
+	b := &t.class[class]
 	size := nodes.Bytes(p.Size)
 	b.waiting -= size
 	b.count--
