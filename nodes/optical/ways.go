@@ -109,7 +109,8 @@ func (w *Ways) compute(from des.Time, dark func(nodes.FibreID) bool) epoch {
 				}
 				s := int(fibre.Other(nodes.SiteID(best)))
 				c, h := e.cost[best*n+to]+fibre.Delay, hops[best]+1
-				if c < e.cost[s*n+to] || c == e.cost[s*n+to] && h < hops[s] {
+				old, tie := e.hop[s*n+to], c == e.cost[s*n+to]
+				if c < e.cost[s*n+to] || tie && h < hops[s] || tie && h == hops[s] && nodes.FibreID(f) < old {
 					e.cost[s*n+to], e.hop[s*n+to], hops[s] = c, nodes.FibreID(f), h
 				}
 			}
