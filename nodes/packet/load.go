@@ -5,6 +5,7 @@ import (
 
 	"ferrule/des"
 	"ferrule/nodes"
+	"ferrule/nodes/optical"
 )
 
 // loadAt is what a port had sent of each class by an instant, in IP bytes.
@@ -102,3 +103,7 @@ func (n *Network) Turns(s nodes.SiteID, c nodes.CircuitID) []Turn {
 	}
 	return nil
 }
+
+// Dark lists when and where fibre f was dark, in the order in which it became
+// so; the caller must not change it.
+func (n *Network) Dark(f nodes.FibreID) []optical.Span { return n.light.Spans(int(f)) }

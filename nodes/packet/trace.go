@@ -17,13 +17,18 @@ import (
 // act. The ring is longer than what is kept before an act, so that whether an
 // act lies near is known by the time a bin leaves.
 const (
-	closeWidth  = des.Millisecond
-	leastWidth  = 10 * des.Millisecond // doubled until there are at most mostWide bins
-	mostWide    = 1024
-	closeBefore = des.Second
-	closeAfter  = 2 * des.Second
-	mostMarks   = 8    // acts that have close bins around them: the first
-	ringBins    = 2048 // more than closeBefore; a power of two
+	leastWidth = 10 * des.Millisecond // doubled until there are at most mostWide bins
+	mostWide   = 1024
+	mostMarks  = 8    // acts that have close bins around them: the first
+	ringBins   = 2048 // more than CloseBefore; a power of two
+)
+
+// Close bins are so wide, and are kept from so long before an act to so long
+// after it.
+const (
+	CloseWidth  = des.Millisecond
+	CloseBefore = des.Second
+	CloseAfter  = 2 * des.Second
 )
 
 // Tally is what became of the packets of a class that were sent in one bin.
@@ -64,7 +69,7 @@ const noRing = 1 << 62
 
 // deliver counts a packet that was delivered, its delay in ns.
 func (t *trace) deliver(born des.Time, delay uint64, size uint16) {
-	no := uint64(born) / uint64(closeWidth)
+	no := uint64(born) / uint64(CloseWidth)
 	if no-t.low >= ringBins && !t.slide(no) {
 		t.late(CloseBin{no, Tally{Delivered: 1, Bytes: uint64(size), Delay: delay, MaxDelay: delay}})
 		return
@@ -80,7 +85,7 @@ func (t *trace) deliver(born des.Time, delay uint64, size uint16) {
 
 // lose counts a packet that was lost.
 func (t *trace) lose(born des.Time) {
-	no := uint64(born) / uint64(closeWidth)
+	no := uint64(born) / uint64(CloseWidth)
 	if no-t.low >= ringBins && !t.slide(no) {
 		t.late(CloseBin{no, Tally{Lost: 1}})
 		return
@@ -179,7 +184,7 @@ func (n *Network) traceMeters() {
 
 // wideOf is the wide bin of a close one.
 func (n *Network) wideOf(no uint64) int {
-	return min(int(no/uint64(n.wideWidth/closeWidth)), n.wideBins-1)
+	return min(int(no/uint64(n.wideWidth/CloseWidth)), n.wideBins-1)
 }
 
 // markAct makes what is sent near an act at now be kept in close bins.
@@ -191,9 +196,9 @@ func (n *Network) markAct(now des.Time) {
 
 // isNear reports whether a close bin lies near an act.
 func (n *Network) isNear(no uint64) bool {
-	from := des.Time(no) * closeWidth
+	from := des.Time(no) * CloseWidth
 	for _, m := range n.marks {
-		if from+closeWidth > m-closeBefore && from < m+closeAfter {
+		if from+CloseWidth > m-CloseBefore && from < m+CloseAfter {
 			return true
 		}
 	}
@@ -232,7 +237,7 @@ func (n *Network) Series() []Series {
 	}
 	inside := make([][]CloseBin, len(out))
 	n.Inside(func(p *nodes.Packet) {
-		c, no := n.classOf[p.Way], uint64(p.Born)/uint64(closeWidth)
+		c, no := n.classOf[p.Way], uint64(p.Born)/uint64(CloseWidth)
 		out[c].WideInside[n.wideOf(no)]++
 		if n.isNear(no) {
 			out[c].Close = append(out[c].Close, CloseBin{No: no})

@@ -1,6 +1,7 @@
 package result
 
 import (
+	"bytes"
 	"encoding/json"
 	"errors"
 	"fmt"
@@ -45,7 +46,40 @@ func Encode(r Result) ([]byte, error) {
 	if err != nil {
 		return nil, fmt.Errorf("result: %w", err)
 	}
-	return append(b, '\n'), nil
+	return append(onLines(b), '\n'), nil
+}
+
+// longList is the number of numbers from which a list stands on one line.
+const longList = 16
+
+// onLines puts long lists of numbers on a line each, for a series of a thousand
+// bins in a column is no easier to read than in a row. b is indented JSON.
+func onLines(b []byte) []byte {
+	out := make([]byte, 0, len(b))
+	for len(b) > 0 {
+		at := bytes.Index(b, []byte("[\n")) // no string holds a bare newline
+		if at < 0 {
+			break
+		}
+		end := at + 1
+		for end < len(b) && bytes.IndexByte([]byte("\n ,-+.0123456789eEnul"), b[end]) >= 0 {
+			end++
+		}
+		list := b[at:end]
+		if end == len(b) || b[end] != ']' || bytes.Count(list, []byte{','}) < longList {
+			out = append(out, b[:at+1]...)
+			b = b[at+1:]
+			continue
+		}
+		out = append(out, b[:at]...)
+		for _, c := range list {
+			if c != '\n' && c != ' ' {
+				out = append(out, c)
+			}
+		}
+		b = b[end:]
+	}
+	return append(out, b...)
 }
 
 // Decode reads what Encode wrote. It refuses other formats and kinds, and

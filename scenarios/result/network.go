@@ -3,6 +3,7 @@ package result
 // A Circuit is how one circuit stood at the end of a run.
 type Circuit struct {
 	Name        string   `json:"name"`
+	Ends        []string `json:"ends,omitempty"`    // sites; the first is that of Turns
 	Route       []string `json:"route"`             // sites in order, from its first end; empty when never set up
 	Fibres      []string `json:"fibres,omitempty"`  // in the order of Route
 	Carries     string   `json:"carries,omitempty"` // "routed" or "moved"
@@ -15,7 +16,8 @@ type Circuit struct {
 	SetUpS      *float64 `json:"set_up_s,omitempty"`    // from the order to up; absent when in place from the start
 	DelayS      *float64 `json:"delay_s,omitempty"`     // light from end to end
 	Resizes     int64    `json:"resizes"`
-	DownS       float64  `json:"down_s"` // dark, in all, after the warm-up
+	DownS       float64  `json:"down_s"`          // dark, in all, after the warm-up
+	Turns       []Turn   `json:"turns,omitempty"` // in order of time
 }
 
 // A Port is one output queue: one circuit, one direction.
@@ -32,10 +34,13 @@ type Port struct {
 
 // A Fibre is how one fibre pair was used at the end of a run.
 type Fibre struct {
-	Name      string  `json:"name"`
-	LengthKm  float64 `json:"length_km"`
-	Slots     int64   `json:"slots"`      // lit, each direction
-	SlotsUsed int64   `json:"slots_used"` // the busier direction
+	Name       string   `json:"name"`
+	Ends       []string `json:"ends,omitempty"` // sites
+	LengthKm   float64  `json:"length_km"`
+	Channels   int64    `json:"channels,omitempty"` // wavelengths, lit or not
+	Slots      int64    `json:"slots"`              // lit, each direction
+	SlotsUsed  int64    `json:"slots_used"`         // the busier direction
+	RiskGroups []string `json:"risk_groups,omitempty"`
 }
 
 // A Step is one act of the timeline or of the plan and what became of it.

@@ -80,6 +80,13 @@ type Run struct {
 	Audit      Audit       `json:"audit"`
 	Defaults   []Default   `json:"defaults"`
 	Cautions   []string    `json:"cautions"`
+
+	// For drawings.
+	Sites  []Site   `json:"sites,omitempty"`
+	Cuts   []Cut    `json:"cuts,omitempty"`   // in order of time
+	Loads  []Load   `json:"loads,omitempty"`  // periods in order, then ports in the order of Ports
+	Tails  []Tail   `json:"tails,omitempty"`  // classes highest first, then periods
+	Series []Series `json:"series,omitempty"` // classes highest first, the whole run before close-ups
 }
 
 // A PeriodKind says what a stretch of a run has in common.

@@ -250,3 +250,29 @@ func TestCSVRows(t *testing.T) {
 		t.Error("a limit is written that was not given")
 	}
 }
+
+// A long list of numbers stands on one line, whatever strings look like one,
+// and the file reads back the same.
+func TestLongListsOnOneLine(t *testing.T) {
+	r := &result.Run{Plan: "[\n1,\n2,\n3", Series: []result.Series{{Class: "a, [", OfferedPackets: make([]int64, 20), LostPackets: []int64{1, 2},
+		MeanDelayS: append(make([]*float64, 19), new(1.5e-7))}}}
+	b, err := result.Encode(r)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, want := range []string{
+		"\"offered_packets\": [0,0,0,0,0,0,0,0,0,0,0,0,0,0,0,0,0,0,0,0],\n", ",null,1.5e-7],\n", "\"lost_packets\": [\n        1,\n        2\n      ]",
+	} {
+		if !strings.Contains(string(b), want) {
+			t.Errorf("no %q in\n%s", want, b)
+		}
+	}
+	back, err := result.DecodeRun(b)
+	if err != nil {
+		t.Fatal(err)
+	}
+	again, err := result.Encode(back)
+	if err != nil || string(again) != string(b) || back.Plan != r.Plan {
+		t.Errorf("reads back otherwise (%v)", err)
+	}
+}

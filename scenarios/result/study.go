@@ -22,6 +22,7 @@ type Batch struct {
 
 	Defaults []Default `json:"defaults"`
 	Cautions []string  `json:"cautions"`
+	Runs     []*Run    `json:"runs,omitempty"` // that of the first seed, when it was asked for
 }
 
 // A Mean is one figure over the seeds of a batch.
@@ -61,6 +62,7 @@ type Comparison struct {
 
 	Defaults []Default `json:"defaults"`
 	Cautions []string  `json:"cautions"`
+	Runs     []*Run    `json:"runs,omitempty"` // of the first seed, when asked for: the base, then the plans
 }
 
 // Compared is one plan beside the base.

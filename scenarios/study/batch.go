@@ -49,6 +49,7 @@ func batch(ctx context.Context, o Options, seeds []uint64, run replicate) (*resu
 	for i, seed := range seeds {
 		jobs[i] = job{o.plan(), seed}
 	}
+	run, kept := keeping(run, o, []string{o.plan()}, seeds[0])
 	samples, err := sampleAll(ctx, jobs, o, run)
 	if err != nil && ctx.Err() == nil {
 		return nil, err
@@ -58,7 +59,7 @@ func batch(ctx context.Context, o Options, seeds []uint64, run replicate) (*resu
 		return nil, err
 	}
 	b := foldBatch(o.plan(), samples, confidence)
-	b.Partial = err != nil
+	b.Partial, b.Runs = err != nil, kept()
 	return b, err
 }
 

@@ -68,6 +68,7 @@ func compare(ctx context.Context, o Options, plans []string, seeds []uint64, run
 			jobs = append(jobs, job{plan, seed})
 		}
 	}
+	run, kept := keeping(run, o, plans, seeds[0])
 	samples, err := sampleAll(ctx, jobs, o, run)
 	if err != nil && ctx.Err() == nil {
 		return nil, err
@@ -86,7 +87,7 @@ func compare(ctx context.Context, o Options, plans []string, seeds []uint64, run
 		return nil, err
 	}
 	c := foldComparison(plans, byPlan, confidence)
-	c.Partial = err != nil
+	c.Partial, c.Runs = err != nil, kept()
 	return c, err
 }
 

@@ -66,6 +66,7 @@ func gather(m *build.Model, partial bool) *result.Run {
 		r.Defaults = append(r.Defaults, result.Default{Key: key, Value: value})
 	}
 	g.cautions()
+	g.drawings()
 	return r
 }
 
@@ -243,6 +244,7 @@ func (g *gatherer) classes() {
 			}
 			o := f.outcome()
 			o.Period = g.r.Periods[k].Name
+			g.tail(class.Name, o.Period, &f)
 			judgeClass(&o, members, k, sc.Classes[c].Objective)
 			class.Periods = append(class.Periods, o)
 		}

@@ -25,6 +25,7 @@ func (g *gatherer) circuits() {
 		c := &g.m.Plant.Circuits[rep.Circuit]
 		x := result.Circuit{
 			Name: c.Name, Carries: carries(c.Carries), Recovery: recovery(c.Recovery), State: rep.State.String(),
+			Ends: g.siteNames(c.Ends[:]), Turns: g.turns(rep.Circuit),
 			PayloadBps: float64(c.Payload), Resizes: int64(rep.Resizes), Reason: rep.Reason,
 		}
 		if rep.Rate > 0 && rep.Rate != c.Rate {
@@ -127,6 +128,7 @@ func (g *gatherer) fibres() {
 		f := &g.m.Plant.Fibres[i]
 		g.r.Fibres = append(g.r.Fibres, result.Fibre{
 			Name: f.Name, LengthKm: float64(f.Length) / float64(nodes.Kilometre), Slots: int64(f.Slots), SlotsUsed: used[i],
+			Ends: g.siteNames(f.Ends[:]), Channels: int64(f.Channels), RiskGroups: g.riskGroups(f),
 		})
 	}
 }

@@ -17,6 +17,7 @@ type Options struct {
 	Cores    int         // cores to use; 0 or less: as many as the program may use
 	Log      *zap.Logger // nil: nothing is logged
 	Progress func(done, total float64)
+	Runs     bool // a batch or a comparison also hands out the runs of its first seed
 }
 
 // plan is the name of the plan asked for.
