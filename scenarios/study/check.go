@@ -244,7 +244,7 @@ const (
 // estimate says what a run will take.
 func (c *checker) estimate() result.Estimate {
 	periods := 1 + len(c.g.sc.Timeline) + len(c.g.plan.Steps)
-	e := result.Estimate{PacketHops: c.load.hops, MemoryBytes: bytesBase + bytesPerCell*float64(len(c.streams)*periods)}
+	e := result.Estimate{PacketHops: c.load.hops, MemoryBytes: bytesBase + float64(bytesPerCell*float64(len(c.streams)*periods))}
 	for i := range c.streams {
 		s := &c.streams[i]
 		if !c.routes.walk(s) {
