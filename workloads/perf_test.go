@@ -38,6 +38,10 @@ func sources(t testing.TB) []struct {
 		{"random video", videoOf(t, VideoConfig{Common: common(80 * nodes.Mbps), Pattern: Random, Hold: short}), 500 * des.Millisecond},
 		{"regular video", videoOf(t, VideoConfig{Common: common(80 * nodes.Mbps), Pattern: Regular, Hold: short}), 500 * des.Millisecond},
 		{"files", filesOf(t, FilesConfig{Common: common(200 * nodes.Mbps)}), 200 * des.Millisecond},
+		{"on-off", onOffOf(t, OnOffConfig{Common: common(200 * nodes.Mbps)}), 100 * des.Millisecond},
+		{"talk", talkOf(t, TalkConfig{Common: common(16 * nodes.Mbps)}), des.Second},
+		{"mmpp", mmppOf(t, MMPPConfig{Common: common(nodes.Gbps), Size: imix, HighFor: des.Millisecond, LowFor: des.Millisecond, Flows: 50}), 10 * des.Millisecond},
+		{"pages", pagesOf(t, PagesConfig{Common: common(200 * nodes.Mbps)}), 200 * des.Millisecond},
 	}
 }
 
@@ -58,6 +62,10 @@ var golden = map[string]string{
 	"random video":        "2699 524bc019a6bd8703",
 	"regular video":       "3306 92930aa4d9c255ff",
 	"files":               "3511 ec210ee4cbc26041",
+	"on-off":              "2490 5098a2151f4ead0f",
+	"talk":                "10662 20ea52c87f0a4e98",
+	"mmpp":                "4471 6b16e6a4ae369363",
+	"pages":               "2931 89cc5b3cd594f286",
 }
 
 func TestGolden(t *testing.T) {

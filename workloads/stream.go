@@ -55,9 +55,8 @@ type Stream struct {
 	gaps  clock
 	sizes sizes
 	draws random.Stream // of sizes and nothing else
-	picks random.Stream // of flows and nothing else
-	turn  uint32        // flow of the next packet if flows take turns
-	flows uint32
+	split scatter
+	turn  uint32 // flow of the next packet if flows take turns
 	ahead changes
 	stop  des.Time
 	mean  float64 // bit/s
@@ -83,8 +82,7 @@ func NewStream(c StreamConfig) (*Stream, error) {
 		},
 		sizes: sizes,
 		draws: random.NewStream(c.Seed, c.Name+"/size"),
-		picks: random.NewStream(c.Seed, c.Name+"/flow"),
-		flows: uint32(c.Flows),
+		split: newScatter(c.Seed, c.Name, c.Flows),
 		stop:  c.Stop,
 		mean:  float64(c.Load),
 		way:   c.Way,
@@ -119,7 +117,7 @@ func (s *Stream) Emit(end des.Time, buf []nodes.Packet) []nodes.Packet {
 			buf = s.equal(limit, buf)
 		}
 		s.sizes.fill(buf[first:], &s.draws)
-		if s.flows > 1 {
+		if s.split.flows > 1 {
 			s.spread(buf[first:])
 		}
 		s.settle()
@@ -165,22 +163,41 @@ func (s *Stream) equal(limit des.Time, buf []nodes.Packet) []nodes.Packet {
 // spread gives packets their flows.
 func (s *Stream) spread(ps []nodes.Packet) {
 	if s.gaps.kind == Poisson {
-		picks, flows := s.picks, uint64(s.flows)
-		for i := range ps {
-			hi, _ := bits.Mul64(picks.Uint64(), flows)
-			ps[i].Flow = uint16(hi)
-		}
-		s.picks = picks
+		s.split.fill(ps)
 		return
 	}
 	turn := s.turn
 	for i := range ps {
 		ps[i].Flow = uint16(turn)
-		if turn++; turn == s.flows {
+		if turn++; turn == s.split.flows {
 			turn = 0
 		}
 	}
 	s.turn = turn
+}
+
+// A scatter gives packets flows at random, each with the same chance.
+type scatter struct {
+	picks random.Stream // of flows and nothing else
+	flows uint32
+}
+
+// newScatter returns the flows of the source of the given name.
+func newScatter(seed uint64, name string, flows int) scatter {
+	return scatter{random.NewStream(seed, name+"/flow"), uint32(flows)}
+}
+
+// fill draws the flows of ps in order.
+func (s *scatter) fill(ps []nodes.Packet) {
+	if s.flows == 1 {
+		return
+	}
+	picks, flows := s.picks, uint64(s.flows)
+	for i := range ps {
+		hi, _ := bits.Mul64(picks.Uint64(), flows)
+		ps[i].Flow = uint16(hi)
+	}
+	s.picks = picks
 }
 
 // settle makes the changes of load that lie before the next packet.

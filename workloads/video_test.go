@@ -188,7 +188,7 @@ func TestVideoFlowsAreStationary(t *testing.T) {
 		}
 	}
 	var sum, sq float64
-	const runs = 400
+	const runs = 200
 	for seed := range uint64(runs) {
 		v := videoOf(t, VideoConfig{Common: Common{Load: 50 * nodes.Mbps, Seed: seed}, Rate: nodes.Mbps, Pattern: Random})
 		v.Emit(des.Second/2, nil)
