@@ -15,6 +15,8 @@ const (
 	OpFibreLit     // light came back on it: Fibre
 	OpOrder        // an order from outside: Ref
 	OpRelease      // a hold at the ingress ends; no agent sees it
+	OpSwitch       // the tail of a 1+1 circuit changes over: Circuit, N = incarnation it passes then; no agent sees it
+	OpReturn       // it goes back to its first trail: Circuit, A = number; no agent sees it
 	OpFirstAgent
 )
 
@@ -50,6 +52,7 @@ type Trail struct {
 	Incarnation int32
 	Dir         Direction
 	Fibres      []FibreID
+	Copies      int32 // 1+1: the incarnation, opened just before, of which it takes a copy of every packet; 0: none
 }
 
 // Table is one site's routing of what is not moved: for each destination site
@@ -104,7 +107,8 @@ type Local interface {
 	// of that way is dark as it passes. Sending to the own site books m now.
 	Send(to SiteID, m Message)
 
-	// OpenTrail makes t the way packets of the circuit take from here on. What
+	// OpenTrail makes t the way packets of the circuit take from here on, or,
+	// when t copies another, the way that a copy of each takes beside it. What
 	// is under way on an earlier trail goes on. The port's state is unchanged.
 	OpenTrail(t Trail)
 

@@ -27,7 +27,7 @@ const (
 	KindSegm   PacketBits = 2 // data segment of a transport
 	ECNMask    PacketBits = 0b11 << 2
 	ColourMask PacketBits = 0b11 << 4
-	BitCopy    PacketBits = 1 << 6 // second copy of a 1+1 circuit
+	BitCopy    PacketBits = 1 << 6 // another copy has passed the tail of a 1+1 circuit before it
 	BitSampled PacketBits = 1 << 7
 )
 

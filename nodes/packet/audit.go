@@ -8,15 +8,21 @@ import (
 	"ferrule/nodes"
 )
 
-// Totals are the books of a run: offered = delivered + lost by cause + inside.
+// Totals are the books of a run: offered + copies = delivered + discarded
+// copies + duplicates + lost by cause + inside. Delivered counts the first copy
+// of each packet that leaves the network, Duplicates further ones.
 type Totals struct {
 	Offered   uint64
 	Delivered uint64
 	Lost      [Causes]uint64
 	Inside    uint64
-	Hops      uint64 // packets put on a line
-	Messages  MessageCount
-	Ports     int // ports whose queues were checked against Little's law
+
+	Copies     uint64 // made by the senders of 1+1 circuits
+	Discarded  uint64 // copies, at tails or where a duplicate met its end
+	Duplicates uint64
+	Hops       uint64 // packets put on a line
+	Messages   MessageCount
+	Ports      int // ports whose queues were checked against Little's law
 }
 
 // Inside calls f for every packet still under way or waiting.
@@ -59,6 +65,16 @@ func (n *Network) Audit() (t Totals, failures []string) {
 				}
 			}
 		}
+		for i := range s.ports {
+			for w, v := range s.ports[i].copied {
+				t.Copies += v
+				offered[w] += v
+			}
+		}
+		for w, v := range s.discarded {
+			t.Discarded += v
+			fates[w] += v
+		}
 		t.Messages.Sent += s.messages.Sent
 		t.Messages.Arrived += s.messages.Arrived
 		t.Messages.Lost += s.messages.Lost
@@ -67,7 +83,8 @@ func (n *Network) Audit() (t Totals, failures []string) {
 		for _, c := range n.meters[w].Cells {
 			if c != nil {
 				t.Delivered += c.Exact.N
-				fates[w] += c.Exact.N
+				t.Duplicates += c.Surplus
+				fates[w] += c.Exact.N + c.Surplus
 				if c.Exact.N != c.Delay.Count() {
 					failures = append(failures, fmt.Sprintf("way %d: %d delays in the histogram of %d packets", w, c.Delay.Count(), c.Exact.N))
 				}
@@ -81,7 +98,7 @@ func (n *Network) Audit() (t Totals, failures []string) {
 	for w := range offered {
 		if offered[w] != fates[w] {
 			a, d := nodes.AggOf(uint16(w))
-			failures = append(failures, fmt.Sprintf("aggregate %s direction %d: offered %d packets, accounted for %d", n.plant.Aggregates[a].Name, d, offered[w], fates[w]))
+			failures = append(failures, fmt.Sprintf("aggregate %s direction %d: %d packets and copies, accounted for %d", n.plant.Aggregates[a].Name, d, offered[w], fates[w]))
 		}
 	}
 	var seen uint64

@@ -59,6 +59,7 @@ func (s *Site) clone(n *Network, pipes map[*pipe]*pipe) *Site {
 	c.net = n
 	c.latencies = s.latencies.Clone()
 	lats := map[*latency]*latency{} // looked up only
+	tails := map[*tail]*tail{}      // looked up only
 	c.inputs = slices.Clone(s.inputs)
 	for i := range c.inputs {
 		in := &c.inputs[i]
@@ -68,6 +69,12 @@ func (s *Site) clone(n *Network, pipes map[*pipe]*pipe) *Site {
 			lats[in.lat] = &l
 		}
 		in.lat = lats[in.lat]
+		if t := in.tail; t != nil {
+			if tails[t] == nil {
+				tails[t] = t.clone(pipes)
+			}
+			in.tail = tails[t]
+		}
 	}
 	c.ports = make([]port, len(s.ports))
 	for i := range s.ports {
@@ -102,6 +109,7 @@ func (s *Site) clone(n *Network, pipes map[*pipe]*pipe) *Site {
 		c.losses[i].Count = slices.Clone(s.losses[i].Count)
 	}
 	c.lossOf = slices.Clone(s.lossOf)
+	c.discarded = slices.Clone(s.discarded)
 	c.events = slices.Clone(s.events)
 	return &c
 }

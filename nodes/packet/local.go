@@ -61,9 +61,12 @@ func (x *local) OpenTrail(t nodes.Trail) {
 		p.delay += fibre.Delay
 		p.to = fibre.Other(p.to)
 	}
-	if q.pipe != nil {
-		q.pipe.open = false
+	if t.Copies != 0 {
+		q.openCopy(p, t.Copies, len(x.hop))
+		s.fresh = append(s.fresh, p)
+		return
 	}
+	q.closePipes()
 	q.pipe = p
 	q.free = max(q.free, x.now)
 	q.turn(x.now)

@@ -19,12 +19,13 @@ const (
 	LostNoRoute               // no way to its target was known
 	LostTTL                   // crossed too many routers
 	LostTornDown              // its circuit was taken down under it
+	LostSwitched              // the tail of a 1+1 circuit changed over between its two copies
 	Causes
 )
 
 // String is the cause's name in results.
 func (c Cause) String() string {
-	return [Causes]string{"queue", "cut", "flushed", "no-route", "ttl", "torn-down"}[c]
+	return [Causes]string{"queue", "cut", "flushed", "no-route", "ttl", "torn-down", "switched"}[c]
 }
 
 // byFault reports whether the cause counts towards the outage of a fault.
@@ -38,6 +39,7 @@ type Cell struct {
 	Queueing  uint64          // ns waited in queues, over all packets
 	Bytes     uint64
 	Reordered uint64  // RFC 4737
+	Surplus   uint64  // duplicates: arrived after another copy had passed
 	Jitter    float64 // ps: RFC 3550 estimate, averaged over packets
 	Jitters   uint64
 }

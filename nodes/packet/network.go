@@ -26,6 +26,9 @@ type Config struct {
 	Grace       des.Time // what is under way is awaited that long; default 3 s
 	Detect      des.Time // darkness to loss-of-light
 	Converge    des.Time // a cut to new management ways
+	Switch      des.Time // loss-of-light to the other trail, at the tail of a 1+1 circuit
+	Revert      bool     // such a tail goes back to its first trail once that has light again
+	Wait        des.Time // how long it must have had light before: wait-to-restore
 	MessageLoss float64  // share of control messages lost beside those in a cut
 	JoinBelow   des.Time // default DefaultJoinBelow; negative: join no sites
 }
@@ -253,6 +256,9 @@ func (n *Network) settle() {
 func (n *Network) register(p *pipe, now des.Time) {
 	to := n.sites[p.to]
 	to.addInput(p)
+	if p.copies != 0 {
+		to.addTail(p)
+	}
 	p.publish()
 	var before des.Time
 	at := p.from
@@ -269,7 +275,8 @@ func (n *Network) register(p *pipe, now des.Time) {
 			d := darkSpan{fibre: f, span: i, offset: before + place, from: sp.From, to: sp.To}
 			p.darken(d)
 			if sp.To == des.Never {
-				seen := max(p.lines[0].from, sp.From) + p.delay - d.offset + n.cfg.Detect
+				// Light is missed once it should have come: no news outruns it.
+				seen := max(p.lines[0].from+p.delay, sp.From+p.delay-d.offset) + n.cfg.Detect
 				to.book(nodes.Message{At: max(seen, now), From: to.id, To: to.id, Op: nodes.OpLightLost, Circuit: p.circuit, N: p.incarnation, Settles: true})
 			}
 		}

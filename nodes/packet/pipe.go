@@ -32,6 +32,8 @@ type pipe struct {
 	circuit     nodes.CircuitID
 	dir         nodes.Direction
 	incarnation int32
+	copies      int32  // incarnation of the pipe it is the second copy of; 0: none
+	base        uint64 // packets that pipe had taken before
 	from, to    nodes.SiteID
 	fibres      []nodes.FibreID
 	lines       []lineFrom // rates it was filled at

@@ -17,6 +17,8 @@ type port struct {
 	free     des.Time // when the line is free for its next decision
 	waiting  int
 	pipe     *pipe
+	copy     *pipe    // 1+1: takes a copy of each packet; or nil
+	copied   []uint64 // copies made, by way; nil: none
 	state    nodes.PortState
 	overhead nodes.Bytes
 	hold     bool // what waits when it goes down is kept
@@ -139,7 +141,10 @@ func (q *port) arrive(s *Site, p *nodes.Packet, next des.Time) {
 		if q.waiting == 0 && q.free <= t {
 			q.free = t
 			if next > t {
-				q.send(p, t)
+				k := q.send(p, t)
+				if q.copy != nil {
+					q.double(k)
+				}
 				return
 			}
 		}
@@ -173,7 +178,11 @@ func (q *port) catch(end des.Time) {
 		if wait > 0 {
 			q.count.delayed++
 		}
-		q.send(p, t).Word += uint32(wait / des.Nanosecond)
+		k := q.send(p, t)
+		k.Word += uint32(wait / des.Nanosecond)
+		if q.copy != nil {
+			q.double(k)
+		}
 	}
 }
 
@@ -218,6 +227,9 @@ func (q *port) setRate(r nodes.Rate, now des.Time) {
 	if q.pipe != nil {
 		q.pipe.lines = append(q.pipe.lines, lineFrom{max(now, q.free), q.line})
 	}
+	if q.copy != nil {
+		q.copy.lines = append(q.copy.lines, lineFrom{max(now, q.free), q.line})
+	}
 }
 
 // flush loses everything that waits.
@@ -235,7 +247,7 @@ func (q *port) clone(pipes map[*pipe]*pipe) port {
 	c := *q
 	c.disc = q.disc.Clone()
 	c.load, c.loads, c.turns = slices.Clone(q.load), slices.Clone(q.loads), slices.Clone(q.turns)
-	c.pipe = pipes[q.pipe]
+	c.pipe, c.copy, c.copied = pipes[q.pipe], pipes[q.copy], slices.Clone(q.copied)
 	c.in = arrivals{key: -1}
 	return c
 }

@@ -55,6 +55,7 @@ type Site struct {
 	latencies measure.Hist // ns: one in 64 of what came through a varying input
 	delivered uint64
 	lost      uint64
+	discarded []uint64 // copies not passed on, by way; nil: none
 	messages  MessageCount
 	events    []nodes.Event
 }
@@ -66,6 +67,8 @@ type MessageCount struct{ Sent, Arrived, Lost uint64 }
 type input struct {
 	pipe *pipe
 	lat  *latency // shared by all pipes of the circuit's end
+	tail *tail    // shared by the two pipes of a 1+1 circuit; or nil
+	role int8     // of the pipe at that tail
 }
 
 // ready reports whether something leaves the forwarding engine before end.
@@ -203,6 +206,9 @@ func (s *Site) handle(now des.Time, m nodes.Message) {
 	case m.Op == nodes.OpRelease:
 		s.release(now)
 		return
+	case m.Op == nodes.OpSwitch || m.Op == nodes.OpReturn:
+		s.changeOver(now, &m)
+		return
 	case m.Op == nodes.OpLightLost || m.Op == nodes.OpLightBack:
 		if !s.lightNews(now, &m) {
 			return
@@ -242,6 +248,9 @@ func (s *Site) lightNews(now des.Time, m *nodes.Message) bool {
 			what = "light lost"
 		}
 		s.note(now, what, s.net.plant.Circuits[m.Circuit].Name)
+		if t := s.inputs[i].tail; t != nil {
+			s.tailSees(now, t, s.inputs[i].role)
+		}
 		return true
 	}
 	return false
@@ -277,6 +286,9 @@ func (s *Site) segment(end des.Time) {
 			q.segment(s, end)
 			if q.count.sent != sent {
 				s.dirty = append(s.dirty, q.pipe)
+				if q.copy != nil {
+					s.dirty = append(s.dirty, q.copy)
+				}
 			}
 		}
 	}
@@ -286,6 +298,10 @@ func (s *Site) segment(end des.Time) {
 // only reads the pipe, which its other end may be filling. With sorted, what
 // is delivered waits in the sink.
 func (s *Site) receive(i int, end des.Time, sorted bool) {
+	if s.inputs[i].tail != nil {
+		s.receiveCopies(i, end, sorted)
+		return
+	}
 	p, lat, key := s.inputs[i].pipe, s.inputs[i].lat, int32(i)
 	mask := uint64(len(p.rbuf) - 1)
 	dark := len(p.dark) > 0
@@ -305,6 +321,9 @@ func (s *Site) receive(i int, end des.Time, sorted bool) {
 			s.latencies.Add(uint64(due-k.Due) / 1000)
 		}
 		h := s.hop[k.Way]
+		if h >= hopHeld { // it came back to where its way begins, and is held
+			h = s.resolve(k.Way)
+		}
 		switch {
 		case h >= 0 && k.TTL <= 1:
 			s.lose(k, due, LostTTL)
@@ -379,6 +398,10 @@ func (s *Site) apart() bool {
 
 // deliver counts a packet that leaves the network here.
 func (s *Site) deliver(k *nodes.Packet, due des.Time) {
+	if k.Bits&nodes.BitCopy != 0 {
+		s.surplus(k, due)
+		return
+	}
 	s.delivered++
 	m := &s.net.meters[k.Way]
 	if k.Born >= s.st.from && due < s.st.to {
@@ -393,6 +416,10 @@ func (s *Site) deliver(k *nodes.Packet, due des.Time) {
 //
 //go:noinline
 func (s *Site) lose(k *nodes.Packet, at des.Time, cause Cause) {
+	if k.Bits&nodes.BitCopy != 0 { // nobody misses it
+		s.discard(k.Way)
+		return
+	}
 	s.lost++
 	i := s.lossOf[k.Way]
 	if i == 0 {
@@ -578,14 +605,14 @@ func (s *Site) addPort(c nodes.CircuitID, d nodes.Direction) {
 }
 
 // addInput makes the site receive from p, in the order of circuit, direction
-// and incarnation.
+// and incarnation; of the two pipes of a 1+1 circuit the shorter goes first.
 func (s *Site) addInput(p *pipe) {
 	at, _ := slices.BinarySearchFunc(s.inputs, p, func(in input, p *pipe) int {
 		a, b := in.pipe, p
 		if a.circuit != b.circuit {
 			return int(a.circuit - b.circuit)
 		}
-		return int(a.incarnation - b.incarnation)
+		return int(s.rank(a) - s.rank(b))
 	})
 	s.inputs = slices.Insert(s.inputs, at, input{pipe: p, lat: s.latencyOf(p.circuit)})
 }
