@@ -84,7 +84,8 @@ func (c *call) begin(cmd *cobra.Command, args []string) (scenario, options, erro
 	return sc, opt, nil
 }
 
-// input reads the FILE, or takes the embedded demo.
+// input reads the FILE, takes the embedded scenario of that name where there is
+// no such file, or the embedded demo.
 func (c *call) input(args []string) (input, error) {
 	if len(args) == 0 {
 		in, err := c.env.Studio.Open("")
@@ -94,10 +95,11 @@ func (c *call) input(args []string) (input, error) {
 	if errors.Is(err, fs.ErrNotExist) {
 		for _, e := range c.env.Studio.Library() {
 			if e.name == args[0] {
-				return input{}, fmt.Errorf("%s: there is no such file; for the embedded scenario of that name, first: ferrule scenarios write %s DIR", args[0], args[0])
+				in, err := c.env.Studio.Open(e.name)
+				return in, failed(err)
 			}
 		}
-		return input{}, fmt.Errorf("%s: there is no such file", args[0])
+		return input{}, fmt.Errorf("%s: there is no such file, and no embedded scenario of that name", args[0])
 	}
 	if err != nil {
 		return input{}, err

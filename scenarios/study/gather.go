@@ -2,6 +2,7 @@ package study
 
 import (
 	"fmt"
+	"math"
 	"strings"
 
 	"ferrule/des"
@@ -336,7 +337,7 @@ func (f *fold) outcome() result.Outcome {
 		o.IPDVS = distribution(&f.ipdv)
 	}
 	if f.jitters > 0 {
-		j := ps(f.jitter / float64(f.jitters))
+		j := ps(math.Round(f.jitter / float64(f.jitters))) // below a picosecond it is none
 		o.JitterS = &j
 	}
 	o.ReorderedRatio = ratio(f.reordered, f.exact.N)

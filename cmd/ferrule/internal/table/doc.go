@@ -26,7 +26,7 @@ const Width = 110
 // first 20 ports and events.
 type Options struct {
 	Colour bool // escape sequences for colour; never set for a file or a pipe
-	Rows   int  // ports and events shown before "and n more"; default 20
+	Rows   int  // ports and events shown before "and n more"; default 40
 }
 
 // Text writes r for a terminal.
@@ -41,7 +41,7 @@ func Markdown(w io.Writer, r result.Result, opt Options) error {
 
 func layOut(r result.Result, opt Options) *doc {
 	if opt.Rows == 0 {
-		opt.Rows = 20
+		opt.Rows = 40
 	}
 	d := &doc{rows: opt.Rows}
 	switch r := r.(type) {

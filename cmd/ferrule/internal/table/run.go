@@ -172,10 +172,32 @@ func (d *doc) events(es []result.Event) {
 		return
 	}
 	d.heading(word("EVENTS"))
-	g := columns(right("at"), left("what"), abbreviated("subject"), wrapped("detail"))
-	for _, e := range es[:min(len(es), d.rows)] {
+	g := columns(right("at"), left("what"), wrapped("subject"), wrapped("detail"))
+	together := alike(es)
+	for _, e := range together[:min(len(together), d.rows)] {
 		g.add(instant(e.AtS), name(e.What), name(e.Subject), name(e.Detail))
 	}
 	d.grid(g)
-	d.rest(len(es), "events")
+	d.rest(len(together), "lines")
+}
+
+// alike makes one line of what befell several subjects alike, at one instant
+// and with the same detail, such as every circuit over one fibre.
+func alike(es []result.Event) []result.Event {
+	var out []result.Event
+	from := 0 // first line of the instant
+	for _, e := range es {
+		if from < len(out) && out[from].AtS != e.AtS {
+			from = len(out)
+		}
+		i := from
+		for ; i < len(out) && (out[i].What != e.What || out[i].Detail != e.Detail); i++ {
+		}
+		if i < len(out) {
+			out[i].Subject += ", " + e.Subject
+			continue
+		}
+		out = append(out, e)
+	}
+	return out
 }
