@@ -100,9 +100,9 @@ func (c cutWindows) MaxWindow() des.Time { return min(c.Network.MaxWindow(), c.m
 
 // carry runs a model in windows of its own, and gives the bytes of its result
 // and the number of windows.
-func carry(t testing.TB, sc *scenarios.Scenario, o build.Options, exec des.Executor, most func() des.Time) ([]byte, uint64) {
+func carry(t testing.TB, sc *scenarios.Scenario, name string, o build.Options, exec des.Executor, most func() des.Time) ([]byte, uint64) {
 	t.Helper()
-	plan, err := sc.Plan("moved")
+	plan, err := sc.Plan(name)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -131,7 +131,7 @@ func TestOracleWindows(t *testing.T) {
 	t.Parallel()
 	sc := parse(t, drill)
 	long := func() des.Time { return des.Never }
-	want, windows := carry(t, sc, build.Options{}, des.Serial{}, long)
+	want, windows := carry(t, sc, "moved", build.Options{}, des.Serial{}, long)
 	r, err := result.Decode(want)
 	if err != nil {
 		t.Fatal(err)
@@ -163,7 +163,7 @@ func TestOracleWindows(t *testing.T) {
 		{"some joined", build.Options{JoinBelow: 1400 * des.Microsecond}, long},
 	} {
 		t.Run(c.name, func(t *testing.T) {
-			got, n := carry(t, sc, c.o, des.Serial{}, c.most)
+			got, n := carry(t, sc, "moved", c.o, des.Serial{}, c.most)
 			if n == windows {
 				t.Errorf("%d windows, as without a change: the test shows nothing", n)
 			}
@@ -175,7 +175,7 @@ func TestOracleWindows(t *testing.T) {
 	t.Run("two cores, short windows", func(t *testing.T) {
 		e := study.NewExecutor(2)
 		defer e.Close()
-		if got, _ := carry(t, sc, build.Options{JoinBelow: -1}, e, func() des.Time { return natural / 3 }); !bytes.Equal(got, want) {
+		if got, _ := carry(t, sc, "moved", build.Options{JoinBelow: -1}, e, func() des.Time { return natural / 3 }); !bytes.Equal(got, want) {
 			t.Error(firstDifference(want, got))
 		}
 	})
