@@ -55,6 +55,7 @@ type Report struct {
 	Circuit     nodes.CircuitID
 	State       CircuitState
 	Route       []nodes.FibreID // from Ends[0]; nil when it holds none
+	Second      []nodes.FibreID // 1+1: the route of the copies, from Ends[0]; nil: none
 	Channels    []int32         // number of its channel on each fibre of Route, for a whole channel
 	Slots       int             // tributary slots held on every fibre of Route
 	Rate        nodes.Rate      // what its ports send at

@@ -99,12 +99,12 @@ func (c *Controller) claims() (want []claim, flux []optical.Holder) {
 		k := &c.circuits[i]
 		want = k.held.claim(want, nodes.CircuitID(i))
 		if k.state == controller.Resizing || k.state == controller.TearingDown {
-			flux = append(flux, k.held.holder(nodes.CircuitID(i)))
+			flux = k.held.holders(flux, nodes.CircuitID(i))
 		}
 	}
 	for _, t := range c.tasks {
 		if t != nil && t.phase == phaseConnect {
-			flux = append(flux, t.h.holder(t.circuit))
+			flux = t.h.holders(flux, t.circuit)
 		}
 		if t != nil {
 			want = t.h.claim(want, t.circuit)
@@ -141,6 +141,9 @@ func (h *holding) claim(list []claim, id nodes.CircuitID) []claim {
 			list = append(list, claim{o, s})
 		}
 	}
+	if h.copy != nil {
+		return h.copy.claim(list, id)
+	}
 	return list
 }
 
@@ -149,7 +152,7 @@ func (h *holding) claim(list []claim, id nodes.CircuitID) []claim {
 func (c *Controller) auditFree() (failures []string) {
 	held := make([]int64, len(c.fibres))
 	add := func(h *holding) {
-		for _, f := range h.route {
+		for _, f := range h.routes() {
 			if h.channels == nil {
 				held[f] += int64(h.slots)
 			}
@@ -159,7 +162,7 @@ func (c *Controller) auditFree() (failures []string) {
 		add(&c.circuits[i].held)
 		if t := c.circuits[i].task; t != nodes.None && c.circuits[i].state == controller.Resizing {
 			more := c.circuits[i].held
-			more.slots = max(0, c.tasks[t].slots-more.slots)
+			more = more.withSlots(max(0, c.tasks[t].slots-more.slots))
 			add(&more)
 		}
 	}

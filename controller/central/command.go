@@ -224,11 +224,10 @@ func (c *Controller) repay() {
 			continue
 		case m.Op == opAssign && m.Way&release == 0:
 			h := &c.circuits[m.Circuit].held
-			i := slices.Index(h.sites, o.to)
-			if h.incarnation != m.N || i < 0 {
+			a, ok := h.ownedBy(o.to, m.N)
+			if !ok {
 				continue
 			}
-			a := h.assignmentAt(i)
 			a.flags |= atOnce
 			m = a.message(m.Circuit, m.N, true)
 		case m.Op == opSteer:

@@ -10,13 +10,14 @@ type end struct {
 	circuit     nodes.CircuitID
 	dir         nodes.Direction
 	incarnation int32 // of the route that is open; 0: none
+	copy        int32 // 1+1: of the second one; 0: none
 	state       nodes.PortState
-	dark        bool  // no light on that route
-	told        bool  // the controller has been told of it
-	opening     bool  // traffic is not ready yet
-	timer       int64 // of the hold-off that runs; 0: none
-	draining    int64 // command to drain; 0: none
-	rated       int64 // last command about the rate
+	dark        [2]bool // no light on a route
+	told        [2]bool // the controller has been told of it
+	opening     bool    // traffic is not ready yet
+	timer       int64   // of the hold-off that runs; 0: none
+	draining    int64   // command to drain; 0: none
+	rated       int64   // last command about the rate
 }
 
 // busy says whether the port is about to change.
@@ -64,7 +65,7 @@ func (e *Element) activate(m *nodes.Message) {
 		}
 		return
 	}
-	e.open(n, m.Ref.(*nodes.Trail))
+	e.open(n, m.Ref.(*trails))
 	if d := e.k.cfg.TrafficReady; d > 0 {
 		n.opening = true
 		r := *m
@@ -76,14 +77,21 @@ func (e *Element) activate(m *nodes.Message) {
 	e.answer(m, answerDone)
 }
 
-// open makes t the route of n. Its light is taken for granted until the
-// network says otherwise, and a hold-off that runs for an earlier one ends.
-func (e *Element) open(n *end, t *nodes.Trail) {
-	n.incarnation = t.Incarnation
+// open makes t the route of n, or its two. Its light is taken for granted until
+// the network says otherwise, and a hold-off that runs for an earlier one ends.
+func (e *Element) open(n *end, t *trails) {
+	n.incarnation, n.copy = t.work.Incarnation, 0
 	e.stopTimer(n)
-	n.dark, n.told, n.draining = false, false, 0
-	e.x.OpenTrail(*t)
+	n.dark, n.told, n.draining = [2]bool{}, [2]bool{}, 0
+	e.x.OpenTrail(*t.work)
+	if t.copy != nil {
+		n.copy = t.copy.Incarnation
+		e.x.OpenTrail(*t.copy)
+	}
 }
+
+// blind says whether no route of n has light.
+func (n *end) blind() bool { return n.dark[0] && (n.copy == 0 || n.dark[1]) }
 
 // ready puts the port up after an activation, unless the light is gone again.
 func (e *Element) ready(m *nodes.Message) {
@@ -92,7 +100,7 @@ func (e *Element) ready(m *nodes.Message) {
 		return
 	}
 	n.opening = false
-	if !n.dark {
+	if !n.blind() {
 		e.setPort(n, nodes.PortUp)
 	}
 	e.answer(m, answerDone)
@@ -101,8 +109,8 @@ func (e *Element) ready(m *nodes.Message) {
 // portUp puts the port up on a route whose light came back.
 func (e *Element) portUp(m *nodes.Message) {
 	n := e.end(m.Circuit)
-	if m.N != n.incarnation || n.dark {
-		n.told = true // the return of its light will be news
+	if m.N != n.incarnation || n.blind() {
+		n.told = n.dark // the return of its light will be news
 		e.answer(m, answerRefused)
 		return
 	}
@@ -145,26 +153,37 @@ func (e *Element) drained(m *nodes.Message) {
 	e.answer(m, answerDone)
 }
 
-// light notes that the light of a route went or came back. The packet layer
-// and the controller are told of a loss when the hold-off is over.
+// light notes that the light of a route went or came back. The controller is
+// told at once while another route has light; when none has, it and the packet
+// layer are told once the hold-off is over.
 func (e *Element) light(m *nodes.Message) {
 	n := e.end(m.Circuit)
-	if m.N != n.incarnation {
+	r := 0
+	switch {
+	case m.N == n.incarnation:
+	case n.copy != 0 && m.N == n.copy:
+		r = 1
+	default:
 		return
 	}
 	if m.Op == nodes.OpLightBack {
-		n.dark = false
+		n.dark[r] = false
 		e.stopTimer(n)
-		if n.told {
-			n.told = false
+		if n.told[r] {
+			n.told[r] = false
 			e.raise(nodes.Message{Op: opAlarm, Circuit: m.Circuit, N: m.N, B: alarmBack})
 		}
+		e.tellDark(n)
 		return
 	}
-	if n.dark {
+	if n.dark[r] {
 		return
 	}
-	n.dark = true
+	n.dark[r] = true
+	if !n.blind() {
+		e.tellDark(n)
+		return
+	}
 	e.serial++
 	n.timer = e.serial
 	e.x.Pending(1)
@@ -183,9 +202,20 @@ func (e *Element) heldOff(m *nodes.Message) {
 		return
 	}
 	e.stopTimer(n)
-	n.told = true
 	e.setPort(n, nodes.PortDown)
-	e.raise(nodes.Message{Op: opAlarm, Circuit: m.Circuit, N: n.incarnation, B: alarmLost})
+	n.told = [2]bool{}
+	e.tellDark(n)
+}
+
+// tellDark tells the controller of every route without light of which it has
+// not been told.
+func (e *Element) tellDark(n *end) {
+	for r, incarnation := range [2]int32{n.incarnation, n.copy} {
+		if n.dark[r] && !n.told[r] {
+			n.told[r] = true
+			e.raise(nodes.Message{Op: opAlarm, Circuit: n.circuit, N: incarnation, B: alarmLost})
+		}
+	}
 }
 
 // stopTimer ends the hold-off that runs for n, if any.

@@ -49,7 +49,11 @@ func (c *Controller) fibreDies(f nodes.FibreID, from nodes.SiteID) {
 	c.x.Note("fibre down", c.k.fibreName(f), fmt.Sprintf("told by %s; %d circuits: %s", c.k.siteName(from), len(hit), strings.Join(names, ", ")))
 	for _, id := range hit {
 		c.located(id)
-		c.fails(id, c.k.plant.Circuits[id].HoldOff == 0)
+		if told := c.k.plant.Circuits[id].HoldOff == 0; c.circuits[id].held.copy != nil {
+			c.assess(id, told)
+		} else {
+			c.fails(id, told)
+		}
 	}
 	for i := range c.tasks {
 		if t := c.tasks[i]; t != nil && t.h.over(f) {
@@ -115,7 +119,7 @@ func (c *Controller) restore(list []nodes.CircuitID, avoid []nodes.FibreID) {
 		}
 		if k.held.holds() {
 			c.unreserve(&k.held)
-			c.releaseAll(id, &k.held, len(k.held.sites), true, ownerNone, 0)
+			c.releaseAll(id, &k.held, k.held.parts(), true, ownerNone, 0)
 			k.held = holding{}
 		}
 		c.enter(id, controller.Restoring)
@@ -159,26 +163,32 @@ func (c *Controller) byImportance(list []nodes.CircuitID) {
 func (c *Controller) circuitAlarm(m *nodes.Message) {
 	k := &c.circuits[m.Circuit]
 	e := endOf(c.k.plant.Circuits[m.Circuit].Ends, m.From)
-	if m.A <= k.heard[e] {
-		return // a repetition
+	r := k.routeOf(m.N)
+	if seen := &k.heard[max(r, 0)][e]; r != nodes.None {
+		if m.A <= *seen {
+			return // a repetition
+		}
+		*seen = m.A
 	}
-	k.heard[e] = m.A
-	if m.N != k.active {
-		if k.task != nodes.None && c.tasks[k.task].phase == phaseActivate && c.tasks[k.task].h.incarnation == m.N && m.B == alarmLost {
+	if r == nodes.None {
+		if k.task != nodes.None && m.B == alarmLost && c.tasks[k.task].phase == phaseActivate && c.tasks[k.task].h.is(m.N) {
 			c.crankBack(k.task, "no light at "+c.k.siteName(m.From))
 		}
 		return // else of a route that is no longer in use
 	}
-	k.dark[e] = m.B == alarmLost
+	k.dark[r][e] = m.B == alarmLost
+	if k.held.copy != nil {
+		c.copyAlarm(m, e)
+		return
+	}
 	if m.B == alarmBack {
 		c.revive(m.Circuit)
 		return
 	}
 	placed := !carries(k.state)
 	c.fails(m.Circuit, true)
-	if !k.dark[1-e] { // it sends into the dark, and cannot know
-		far := c.k.plant.Circuits[m.Circuit].Ends[1-e]
-		c.command(far, nodes.Message{Op: opPortDown, Settles: true, Circuit: m.Circuit, N: m.N}, ownerNone, 0)
+	if !k.dark[0][1-e] {
+		c.stopFarEnd(m, e) // it sends into the dark, and cannot know
 	}
 	if placed {
 		return // known already: absorbed
@@ -219,7 +229,7 @@ func (c *Controller) hasDead(route []nodes.FibreID) bool {
 // route, once both have light.
 func (c *Controller) revive(id nodes.CircuitID) {
 	k := &c.circuits[id]
-	if k.state != controller.Down || k.task != nodes.None || !k.held.holds() || k.dark[0] || k.dark[1] {
+	if k.state != controller.Down || k.task != nodes.None || !k.held.holds() || k.endsDark() {
 		return
 	}
 	c.begin(task{kind: taskRevive, circuit: id, step: nodes.None}, rankOrder)
@@ -230,10 +240,10 @@ func (c *Controller) revived(id int32) {
 	t := c.tasks[id]
 	k := &c.circuits[t.circuit]
 	c.end(id, "")
-	if k.dark[0] || k.dark[1] {
+	if k.endsDark() {
 		return
 	}
-	c.comesUp(t.circuit, "up again", fmt.Sprintf("light is back on %s", c.fibreList(k.held.route)), false)
+	c.comesUp(t.circuit, "up again", "light is back on "+c.routeList(&k.held), false)
 }
 
 // fibreLives takes a fibre for lit, and tries again what could not be done
@@ -252,6 +262,8 @@ func (c *Controller) fibreLives(f nodes.FibreID) {
 			again = append(again, id)
 		case k.state == controller.Down:
 			c.revive(id) // unless an end has told that it is dark
+		case k.held.copy != nil && carries(k.state):
+			c.assess(id, true)
 		case k.state == controller.Up && p.Recovery == nodes.RecoveryRestore && !k.held.over(f) && slices.Contains(k.home, f):
 			c.homeMayReturn(id)
 		}

@@ -23,8 +23,7 @@ type Net struct {
 
 // New returns the agents of p with nothing set up. Start books those of orders
 // that it is given: each is handed to the controller at its instant At.
-// Circuits with 1+1 recovery are not for this package. It panics on a
-// configuration that no plan can ask for.
+// It panics on a configuration that no plan can ask for.
 func New(p *nodes.Plant, cfg Config, orders []controller.Order) *Net {
 	k := newKnown(p, cfg.withDefaults(p), orders)
 	n := &Net{k: k}
@@ -90,17 +89,20 @@ func (n *Net) Start(locals []nodes.Local, moves []controller.Order) error {
 func (n *Net) place(locals []nodes.Local, id nodes.CircuitID) string {
 	c := n.ctl
 	p := &n.k.plant.Circuits[id]
-	if p.Recovery == nodes.RecoveryOnePlus {
-		return "1+1 recovery is not supported"
-	}
 	h, why := c.find(id, p.Along, &avoided{})
 	if why != "" {
 		return why
 	}
-	h.incarnation = 1
+	last := int32(1)
+	h.incarnation = last
+	if h.copy != nil {
+		last++
+		h.copy.incarnation = last
+	}
 	c.reserve(&h)
-	for i, s := range h.sites {
-		m := h.assignmentAt(i).message(id, 1, false)
+	for i := range h.parts() {
+		s, a, incarnation := h.part(i)
+		m := a.message(id, incarnation, false)
 		if f := n.elements[s].own(&m); f != nodes.None {
 			panic("central: a cross-connect refuses what the picture has free")
 		}
@@ -109,12 +111,12 @@ func (n *Net) place(locals []nodes.Local, id nodes.CircuitID) string {
 		x, el := locals[s], n.elements[s]
 		el.x = x
 		y := el.end(id)
-		el.open(y, h.trail(id, nodes.Direction(e)))
+		el.open(y, h.trailsOf(id, nodes.Direction(e)))
 		el.setPort(y, nodes.PortUp)
 		el.x = nil
 	}
 	k := &c.circuits[id]
-	k.held, k.active, k.last, k.home = h, 1, 1, h.route
+	k.held, k.active, k.last, k.home = h, 1, last, h.route
 	k.delay, k.usable = c.delayOf(h.route), true
 	k.state, k.upSince = controller.Up, 0
 	return ""
@@ -152,6 +154,9 @@ func (n *Net) Reports() ([]controller.Report, []controller.StepReport) {
 			Circuit: nodes.CircuitID(i), State: k.state, Route: slices.Clone(k.held.route), Channels: slices.Clone(k.held.channels),
 			Slots: k.held.slots, Rate: k.rate, Delay: c.delayOf(k.held.route), SetUp: k.setUp, UpSince: k.upSince,
 			DownSince: k.downSince, DownTime: k.downTime, Outages: k.outages, Resizes: k.resizes, Incarnation: k.active, Reason: k.reason,
+		}
+		if k.held.copy != nil {
+			reports[i].Second = slices.Clone(k.held.copy.route)
 		}
 	}
 	steps := make([]controller.StepReport, len(c.steps))

@@ -36,6 +36,7 @@ type fakeSite struct {
 	rates  []nodes.Rate
 	queue  []nodes.Bytes
 	trails []nodes.Trail
+	copies []nodes.Trail // 1+1
 	upAt   []des.Time
 	table  *nodes.Table
 	ways   []nodes.CircuitID
@@ -75,7 +76,11 @@ func (s *fakeSite) Send(to nodes.SiteID, m nodes.Message) {
 }
 
 func (s *fakeSite) OpenTrail(t nodes.Trail) {
-	s.trails[t.Circuit] = t
+	if t.Copies != 0 {
+		s.copies[t.Circuit] = t
+	} else {
+		s.trails[t.Circuit], s.copies[t.Circuit] = t, nodes.Trail{}
+	}
 	if s.f.isDark(t.Fibres) {
 		s.f.tell(s.f.now, s.id, nodes.Message{Op: nodes.OpLightLost, Circuit: t.Circuit, N: t.Incarnation})
 	}
@@ -116,7 +121,7 @@ func newFakeSite(f *fakeNet, id nodes.SiteID) fakeSite {
 	n, w := len(f.plant.Circuits), 2*len(f.plant.Aggregates)
 	s := fakeSite{
 		f: f, id: id, ports: make([]nodes.PortState, n), rates: make([]nodes.Rate, n), queue: make([]nodes.Bytes, n),
-		trails: make([]nodes.Trail, n), upAt: slices.Repeat([]des.Time{-1}, n),
+		trails: make([]nodes.Trail, n), copies: make([]nodes.Trail, n), upAt: slices.Repeat([]des.Time{-1}, n),
 		ways: slices.Repeat([]nodes.CircuitID{nodes.None}, w), until: make([]des.Time, w), heldAt: make([]des.Time, w),
 	}
 	for c := range f.plant.Circuits {
@@ -235,8 +240,10 @@ func (f *fakeNet) light(at des.Time, fibre nodes.FibreID, lost bool) {
 	}
 	for c := range f.plant.Circuits {
 		for _, s := range f.plant.Circuits[c].Ends {
-			if tr := &f.sites[s].trails[c]; slices.Contains(tr.Fibres, fibre) && !f.isDark(tr.Fibres) {
-				f.tell(at, s, nodes.Message{Op: ops[0], Circuit: nodes.CircuitID(c), N: tr.Incarnation})
+			for _, tr := range [2]*nodes.Trail{&f.sites[s].trails[c], &f.sites[s].copies[c]} {
+				if slices.Contains(tr.Fibres, fibre) && !f.isDark(tr.Fibres) {
+					f.tell(at, s, nodes.Message{Op: ops[0], Circuit: nodes.CircuitID(c), N: tr.Incarnation})
+				}
 			}
 		}
 	}
@@ -258,7 +265,7 @@ func (f *fakeNet) clone() *fakeNet {
 		s := &g.sites[i]
 		s.f = &g
 		s.ports, s.rates, s.queue = slices.Clone(s.ports), slices.Clone(s.rates), slices.Clone(s.queue)
-		s.trails, s.upAt, s.ways = slices.Clone(s.trails), slices.Clone(s.upAt), slices.Clone(s.ways)
+		s.trails, s.copies, s.upAt, s.ways = slices.Clone(s.trails), slices.Clone(s.copies), slices.Clone(s.upAt), slices.Clone(s.ways)
 		s.until, s.heldAt, s.steers = slices.Clone(s.until), slices.Clone(s.heldAt), slices.Clone(s.steers)
 	}
 	return &g

@@ -24,8 +24,8 @@ type circuit struct {
 	home      []nodes.FibreID // first route
 	delay     des.Time        // of light over the route in use, or the last one
 	usable    bool            // packets may go over it
-	dark      [2]bool         // as its ends have told
-	heard     [2]int64        // last alarm of each end
+	dark      [2][2]bool      // by route and end, as its ends have told
+	heard     [2][2]int64     // last alarm of each route and end
 	task      int32           // in hand for it, or None
 	searching bool            // for a fibre that accounts for its loss of light
 	setUp     des.Time
@@ -55,6 +55,7 @@ type holding struct {
 	sites       []nodes.SiteID // one more than route
 	channels    []int32        // number on each fibre; nil: slots
 	slots       int
+	copy        *holding // 1+1: the second route; never changed
 }
 
 // scratch is memory of searches, kept from one to the next.
@@ -117,6 +118,9 @@ func (c *Controller) book(h *holding, sign int64) {
 			c.spare[f].Remove(int(h.channels[i]))
 		}
 	}
+	if h.copy != nil {
+		c.book(h.copy, sign)
+	}
 }
 
 // delayOf is the delay of light over a route.
@@ -163,7 +167,9 @@ func (h *holding) assignmentAt(i int) assignment {
 func (h *holding) holds() bool { return len(h.route) > 0 }
 
 // over says whether it uses fibre f.
-func (h *holding) over(f nodes.FibreID) bool { return slices.Contains(h.route, f) }
+func (h *holding) over(f nodes.FibreID) bool {
+	return slices.Contains(h.route, f) || h.copy != nil && h.copy.over(f)
+}
 
 // find looks for a route of circuit id over fibres that are not believed dead
 // and have enough free, without what avoid names. It returns the holding, not
@@ -174,7 +180,7 @@ func (c *Controller) find(id nodes.CircuitID, along []nodes.FibreID, avoid *avoi
 	if p.Channel {
 		h.slots = 0
 	}
-	if along != nil {
+	if along != nil && p.Recovery != nodes.RecoveryOnePlus {
 		return c.check(h, p, along)
 	}
 	s := &c.scratch
@@ -203,6 +209,9 @@ func (c *Controller) find(id nodes.CircuitID, along []nodes.FibreID, avoid *avoi
 	default:
 		panic("central: unknown choice of route")
 	}
+	if p.Recovery == nodes.RecoveryOnePlus {
+		return c.findPair(h, p, along, &q)
+	}
 	if p.Channel {
 		return c.findChannel(h, &q)
 	}
@@ -222,7 +231,7 @@ type avoided struct {
 // excludeRoute excludes the fibres of h and all that share a risk group.
 func (c *Controller) excludeRoute(h *holding) {
 	g := c.finder.Graph()
-	for _, f := range h.route {
+	for _, f := range h.routes() {
 		c.scratch.mask.Edges.Add(int(f))
 		for _, group := range c.k.plant.Fibres[f].RiskGroups {
 			c.scratch.mask.ExcludeGroup(g, group)
@@ -358,15 +367,15 @@ func attempts(n int) string {
 	return fmt.Sprintf("%d attempts", n)
 }
 
-// releaseAll tells every site of h's route, up to number upto of them, to free
+// releaseAll tells every site of h's routes, up to part upto of them, to free
 // what it owns there. With quick it is a matter of books alone.
 func (c *Controller) releaseAll(id nodes.CircuitID, h *holding, upto int, quick bool, owner ownerKind, index int32) {
-	for i, s := range h.sites[:upto] {
-		a := h.assignmentAt(i)
+	for i := range upto {
+		s, a, incarnation := h.part(i)
 		a.flags |= release
 		if quick {
 			a.flags |= atOnce
 		}
-		c.command(s, a.message(id, h.incarnation, true), owner, index)
+		c.command(s, a.message(id, incarnation, true), owner, index)
 	}
 }

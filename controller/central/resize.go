@@ -19,7 +19,7 @@ func (c *Controller) resize(id int32) {
 		return
 	}
 	more := t.slots - k.held.slots
-	for _, f := range k.held.route {
+	for _, f := range k.held.routes() {
 		if int64(more) > c.free[f] {
 			why := fmt.Sprintf("fibre %s has %d free slots, not %d", c.k.fibreName(f), c.free[f], more)
 			c.x.Note("resize blocked", name, why)
@@ -30,8 +30,7 @@ func (c *Controller) resize(id int32) {
 	c.enter(t.circuit, controller.Resizing)
 	c.x.Note("resize", name, fmt.Sprintf("%d to %d slots, %d to %d bit/s", k.held.slots, t.slots, k.rate, t.rate))
 	if more > 0 {
-		grown := k.held
-		grown.slots = more
+		grown := k.held.withSlots(more)
 		c.reserve(&grown)
 		c.assignSlots(id)
 		return
@@ -43,11 +42,11 @@ func (c *Controller) resize(id int32) {
 // assignSlots has every site of the route hold what was asked for.
 func (c *Controller) assignSlots(id int32) {
 	t := c.tasks[id]
-	h := c.circuits[t.circuit].held
-	h.slots = t.slots
-	t.phase, t.waiting = phaseConnect, len(h.sites)
-	for i, s := range h.sites {
-		c.command(s, h.assignmentAt(i).message(t.circuit, h.incarnation, true), ownerTask, id)
+	h := c.circuits[t.circuit].held.withSlots(t.slots)
+	t.phase, t.waiting = phaseConnect, h.parts()
+	for i := range h.parts() {
+		s, a, incarnation := h.part(i)
+		c.command(s, a.message(t.circuit, incarnation, true), ownerTask, id)
 	}
 }
 
@@ -74,18 +73,17 @@ func (c *Controller) resizeGoesOn(id int32) {
 		k.rate = t.rate
 		c.assignSlots(id)
 	case t.phase == phaseConnect && t.slots > k.held.slots:
-		k.held.slots, k.slots = t.slots, t.slots
+		k.held, k.slots = k.held.withSlots(t.slots), t.slots
 		t.phase = phaseActivate
 		c.sendRate(id)
 	default:
 		if less := k.held.slots - t.slots; less > 0 {
-			gone := k.held
-			gone.slots = less
+			gone := k.held.withSlots(less)
 			c.unreserve(&gone)
 		}
-		k.held.slots, k.slots, k.rate = t.slots, t.slots, t.rate
+		k.held, k.slots, k.rate = k.held.withSlots(t.slots), t.slots, t.rate
 		k.resizes++
-		c.enter(t.circuit, controller.Up)
+		c.enter(t.circuit, c.upState(t.circuit))
 		c.x.Note("resized", c.k.circuitName(t.circuit), fmt.Sprintf("%d slots after %s", t.slots, people(c.now-t.begun)))
 		c.end(id, "")
 	}
@@ -99,15 +97,14 @@ func (c *Controller) resizeFails(id int32, why string) {
 	k := &c.circuits[t.circuit]
 	c.withdraw(ownerTask, id)
 	if t.phase == phaseConnect {
-		differ := k.held
-		differ.slots = max(t.slots, k.held.slots) - min(t.slots, k.held.slots)
+		differ := k.held.withSlots(max(t.slots, k.held.slots) - min(t.slots, k.held.slots))
 		c.unreserve(&differ)
-		k.held.slots = min(t.slots, k.held.slots)
+		k.held = k.held.withSlots(min(t.slots, k.held.slots))
 		k.slots = k.held.slots
-		for i, s := range k.held.sites {
-			a := k.held.assignmentAt(i)
+		for i := range k.held.parts() {
+			s, a, incarnation := k.held.part(i)
 			a.flags |= atOnce
-			c.command(s, a.message(t.circuit, k.held.incarnation, true), ownerNone, 0)
+			c.command(s, a.message(t.circuit, incarnation, true), ownerNone, 0)
 		}
 	}
 	if t.phase == phaseDrain || t.phase == phaseActivate {
@@ -116,7 +113,7 @@ func (c *Controller) resizeFails(id int32, why string) {
 		}
 	}
 	if k.state == controller.Resizing {
-		c.enter(t.circuit, controller.Up)
+		c.enter(t.circuit, c.upState(t.circuit))
 	}
 	c.x.Note("resize failed", c.k.circuitName(t.circuit), why)
 	c.end(id, why)

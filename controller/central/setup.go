@@ -32,17 +32,21 @@ func (c *Controller) route(id int32) {
 	}
 	k.last++
 	h.incarnation = k.last
+	if h.copy != nil {
+		k.last++
+		h.copy.incarnation = k.last
+	}
 	t.h = h
 	c.reserve(&t.h)
-	c.x.Note("route", p.Name, fmt.Sprintf("%s; %d slots, light %s, try %d", c.fibreList(h.route), h.slots, people(c.delayOf(h.route)), t.tries))
+	c.x.Note("route", p.Name, fmt.Sprintf("%s; %d slots, light %s, try %d", c.routeList(&h), h.slots, people(c.delayOf(h.route)), t.tries))
 	t.phase, t.sent = phaseConnect, 0
 	if c.k.cfg.Sequence || p.Channel {
 		t.waiting = 0
 		c.connectNext(id)
 		return
 	}
-	t.waiting = len(t.h.sites)
-	for t.sent < len(t.h.sites) {
+	t.waiting = t.h.parts()
+	for t.sent < t.h.parts() {
 		c.connectSite(id)
 	}
 }
@@ -56,9 +60,9 @@ func (c *Controller) connectNext(id int32) {
 // connectSite commands the next site of the route.
 func (c *Controller) connectSite(id int32) {
 	t := c.tasks[id]
-	m := t.h.assignmentAt(t.sent).message(t.circuit, t.h.incarnation, true)
+	s, a, incarnation := t.h.part(t.sent)
 	t.sent++
-	c.command(t.h.sites[t.sent-1], m, ownerTask, id)
+	c.command(s, a.message(t.circuit, incarnation, true), ownerTask, id)
 }
 
 // connected tells both ends of a route that stands.
@@ -66,10 +70,10 @@ func (c *Controller) connected(id int32) {
 	t := c.tasks[id]
 	k := &c.circuits[t.circuit]
 	k.setUp = c.now - t.begun
-	c.x.Note("connected", c.k.circuitName(t.circuit), fmt.Sprintf("%d sites after %s", len(t.h.sites), people(k.setUp)))
+	c.x.Note("connected", c.k.circuitName(t.circuit), fmt.Sprintf("%d sites after %s", t.h.parts(), people(k.setUp)))
 	t.phase, t.waiting = phaseActivate, 2
 	for e, s := range c.k.plant.Circuits[t.circuit].Ends {
-		m := nodes.Message{Op: opActivate, Settles: true, Circuit: t.circuit, N: t.h.incarnation, Ref: t.h.trail(t.circuit, nodes.Direction(e))}
+		m := nodes.Message{Op: opActivate, Settles: true, Circuit: t.circuit, N: t.h.incarnation, Ref: t.h.trailsOf(t.circuit, nodes.Direction(e))}
 		c.command(s, m, ownerTask, id)
 	}
 }
@@ -80,9 +84,9 @@ func (c *Controller) activated(id int32) {
 	k := &c.circuits[t.circuit]
 	if old := k.held; old.holds() {
 		c.unreserve(&old)
-		c.releaseAll(t.circuit, &old, len(old.sites), false, ownerNone, 0)
+		c.releaseAll(t.circuit, &old, old.parts(), false, ownerNone, 0)
 	}
-	k.held, k.active, k.dark, k.reason = t.h, t.h.incarnation, [2]bool{}, ""
+	k.held, k.active, k.dark, k.reason = t.h, t.h.incarnation, [2][2]bool{}, ""
 	k.delay = c.delayOf(k.held.route)
 	if k.home == nil {
 		k.home = k.held.route
@@ -97,7 +101,7 @@ func (c *Controller) comesUp(id nodes.CircuitID, what, detail string, newRoute b
 	k := &c.circuits[id]
 	was := k.usable
 	k.usable = true
-	c.enter(id, controller.Up)
+	c.enter(id, c.upState(id))
 	c.x.Note(what, c.k.circuitName(id), detail)
 	if c.k.plant.Circuits[id].Carries == nodes.CarriesRouted && (!was || newRoute) {
 		c.wantTables(rankOrder)

@@ -175,9 +175,6 @@ func (c *Controller) take(i int) {
 func (c *Controller) takeSetUp(i int, o *controller.Order) string {
 	switch s := c.circuits[o.Circuit].state; s {
 	case controller.Planned, controller.Blocked, controller.TornDown:
-		if c.k.plant.Circuits[o.Circuit].Recovery == nodes.RecoveryOnePlus {
-			return "1+1 recovery is not supported"
-		}
 		c.enter(o.Circuit, controller.SettingUp)
 		c.begin(task{kind: taskSetUp, circuit: o.Circuit, step: int32(i)}, rankOrder)
 		return ""

@@ -130,7 +130,7 @@ func (c *Controller) run(id int32) {
 func (c *Controller) carriedOut(id int32, cmd *command) {
 	t := c.tasks[id]
 	t.waiting--
-	if t.phase == phaseConnect && t.sent < len(t.h.sites) {
+	if t.phase == phaseConnect && t.sent < t.h.parts() {
 		c.connectNext(id)
 		return
 	}

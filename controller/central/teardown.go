@@ -62,7 +62,11 @@ func (c *Controller) tearDownGoesOn(id int32) {
 		c.disconnect(id)
 	case phaseDrain:
 		t.phase = phaseEmpty
-		c.delayTask(id, c.delayOf(k.held.route))
+		d := c.delayOf(k.held.route)
+		if k.held.copy != nil {
+			d = max(d, c.delayOf(k.held.copy.route))
+		}
+		c.delayTask(id, d)
 	case phaseEmpty:
 		c.disconnect(id)
 	case phaseConnect:
@@ -83,12 +87,12 @@ func (c *Controller) tearDownGoesOn(id int32) {
 func (c *Controller) disconnect(id int32) {
 	t := c.tasks[id]
 	h := &c.circuits[t.circuit].held
-	t.phase, t.waiting = phaseConnect, len(h.sites)
+	t.phase, t.waiting = phaseConnect, h.parts()
 	if !h.holds() {
 		c.tearDownGoesOn(id)
 		return
 	}
-	c.releaseAll(t.circuit, h, len(h.sites), false, ownerTask, id)
+	c.releaseAll(t.circuit, h, h.parts(), false, ownerTask, id)
 }
 
 // quiet goes on with the tear-downs that waited for the tables.
