@@ -452,3 +452,34 @@ func TestMessagesTakeTheWaysInForce(t *testing.T) {
 		t.Errorf("messages %+v, want %d sent and %d lost", m, len(want), lost)
 	}
 }
+
+// Of what comes to an idle line at one instant the highest class goes first,
+// and within a class what comes over a fibre before what a source sends: all
+// arrivals of an instant come before the decision.
+func TestArrivalsOfOneInstant(t *testing.T) {
+	p := plantOf(3, [3]des.Time{0, 1, des.Millisecond}, [3]des.Time{1, 2, des.Millisecond})
+	p.Classes = []nodes.Class{{Name: "high"}, {Name: "low"}}
+	p.Circuits[0].Overhead, p.Circuits[1].Overhead = 0, 0
+	const at = 20 * des.Millisecond
+	tx := nodes.Gbps.TxTime(1000)
+	low, local, over, high := between(p, 1, 1, 2), between(p, 0, 1, 2), between(p, 1, 0, 2), between(p, 0, 1, 2)
+	cfg := packet.Config{Plant: p, Length: des.Second}
+	for _, s := range []struct {
+		way uint16
+		at  des.Time
+	}{{low, at}, {local, at}, {over, at - des.Millisecond - tx}, {high, at}} {
+		cfg.Sources = append(cfg.Sources, packet.Source{Way: s.way, Source: &beat{way: s.way, at: s.at, gap: 1, size: 1000, count: 1}})
+	}
+	n := net(cfg, 0)
+	finish(t, n)
+	light := des.Millisecond + tx
+	for _, c := range []struct {
+		name string
+		way  uint16
+		want des.Time
+	}{{"first source", local, light}, {"second source", high, light + tx}, {"low class over the fibre", over, 2*light + 2*tx}, {"low class", low, light + 3*tx}} {
+		if _, least, _ := exact(n, c.way); least != c.want {
+			t.Errorf("%s: %d ps, want %d ps", c.name, least, c.want)
+		}
+	}
+}
