@@ -140,7 +140,7 @@ func (p *Pages) populate(factor float64) {
 		return
 	}
 	const most = 20e6 / payload // packets of a page
-	farthest := float64(most*float64(p.full)) + 10*p.parse
+	farthest := float64(most*float64(p.full)) + float64(10*p.parse)
 	draws := random.NewStream(p.seed, p.key+"/standing")
 	age := draws.Exp() * p.arrivals.gap
 	for i := uint64(0); age < farthest; i++ {
@@ -151,7 +151,7 @@ func (p *Pages) populate(factor float64) {
 				p.turns.set(id, next)
 			}
 		}
-		age += draws.Exp() * p.arrivals.gap
+		age += float64(draws.Exp() * p.arrivals.gap)
 	}
 }
 

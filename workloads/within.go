@@ -30,7 +30,7 @@ func lognormalWithin(mu, sigma, low, high float64) within {
 	phi := func(x float64) float64 { return math.Erfc(-x/math.Sqrt2) / 2 }
 	a, b := (math.Log(low)-mu)/sigma, (math.Log(high)-mu)/sigma
 	moment := func(k float64) float64 {
-		return math.Exp(float64(k*mu)+k*k*s2/2) * (phi(b-k*sigma) - phi(a-k*sigma))
+		return math.Exp(float64(k*mu)+k*k*s2/2) * (phi(b-float64(k*sigma)) - phi(a-float64(k*sigma)))
 	}
 	w := within{law: law, low: low, high: high, below: phi(a), inside: moment(0)}
 	w.mean = moment(1) / w.inside
