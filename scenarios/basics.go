@@ -22,14 +22,26 @@ const (
 	defaultAtOnce      = 1
 	defaultRestoreWait = 5 * des.Minute
 	defaultConverge    = 200 * des.Millisecond
-	defaultCompute     = 10 * des.Millisecond
-	defaultRetry       = 200 * des.Millisecond
-	defaultPoll        = des.Second
-	defaultAttempts    = 3
-	defaultBuffer      = 50 * des.Millisecond
-	defaultFrames      = 25
-	defaultPictures    = 12
-	defaultCodec       = "G.711"
+
+	// What ITU-T G.808.1 and G.841 allow a protection switch to take after
+	// detection; value from memory.
+	defaultSwitch = 50 * des.Millisecond
+
+	// A coherent receiver tunes its laser, searches the dispersion and locks in
+	// 1 to 60 s, and the power of an added wavelength is levelled in seconds per
+	// station (D. C. Kilper et al., 2009 to 2012). Values from memory; the lower
+	// ends.
+	defaultRelock = des.Second
+	defaultLevel  = des.Second
+
+	defaultCompute  = 10 * des.Millisecond
+	defaultRetry    = 200 * des.Millisecond
+	defaultPoll     = des.Second
+	defaultAttempts = 3
+	defaultBuffer   = 50 * des.Millisecond
+	defaultFrames   = 25
+	defaultPictures = 12
+	defaultCodec    = "G.711"
 
 	// A fibre is longer than the straight line: by 1.2, as routes of the
 	// 17-node German reference network are by 1.183 on average (computed from
@@ -136,6 +148,12 @@ func (r *resolver) timing(p *place, raw rawTiming) {
 	t := &r.s.Timing
 	t.Detect = span("detect", raw.Detect, defaultDetect)
 	t.WaitToRestore = span("wait-to-restore", raw.WaitToRestore, defaultRestoreWait)
+	t.Switch = span("switch", raw.Switch, defaultSwitch)
+	t.Relock = span("re-lock", raw.Relock, defaultRelock)
+	t.Level = span("level", raw.Level, defaultLevel)
+	t.Report = Report(r.choice(p.field("report"), raw.Report, reportWords, int(ReportFibre)))
+	r.unless(p, "report", ReportFibre.String())
+	t.Correlation = span("correlation", raw.Correlation, 0)
 	t.TrafficReady = span("traffic-ready", raw.TrafficReady, 0)
 	t.Converge = span("converge", raw.Converge, defaultConverge)
 	t.Command = random.Spec(value(raw.Command, timeLaw(defaultCommand)))

@@ -58,6 +58,7 @@ func (r *resolver) circuit(p *place, raw *rawCircuit) Circuit {
 	}
 	c.SetUpPriority, c.HoldingPriority = r.priorities(p, raw.SetUpPriority, raw.HoldingPriority, nodes.None)
 	r.fits(p, &c, value(raw.Channel, 0))
+	r.twoRoutes(p, &c)
 	return c
 }
 

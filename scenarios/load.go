@@ -11,6 +11,8 @@ import (
 
 	"go.yaml.in/yaml/v3"
 
+	"ferrule/controller/path"
+
 	"ferrule/nodes"
 )
 
@@ -83,6 +85,7 @@ type resolver struct {
 	base     base
 	moved    int          // ways named by patterns so far
 	over     map[int]bool // fibres over their capacity as it is
+	finder   *path.Finder // of routes over fibres; nil: not made yet
 
 	sites, fibres, groups, circuits, classes, traffic, aggregates, requests, plans *index
 }

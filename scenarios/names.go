@@ -118,6 +118,7 @@ var (
 		"pdv-p50", "pdv-p95", "pdv-p99", "pdv-p99.9", "ipdv-p99.9", "jitter", "loss", "out",
 	}
 	commandWords   = []string{"by-kind", "parallel", "sequence"}
+	reportWords    = []string{"fibre", "circuit"}
 	sizeWords      = []string{"slots", "container", "channel"}
 	framingWords   = []string{"gfp", "none"}
 	orderWords     = []string{"free", "kept"}
@@ -144,6 +145,9 @@ func (f Figure) String() string { return word(figureWords, uint8(f)) }
 
 // String returns the word of the file.
 func (c CommandOrder) String() string { return word(commandWords, uint8(c)) }
+
+// String returns the word of the file.
+func (r Report) String() string { return word(reportWords, uint8(r)) }
 
 // String returns the word of the file.
 func (s CircuitSize) String() string { return word(sizeWords, uint8(s)) }

@@ -66,6 +66,11 @@ type rawTiming struct {
 	CommandsAtOnce *int      `mapstructure:"commands-at-once"`
 	Commands       string    `mapstructure:"commands"`
 	WaitToRestore  *des.Time `mapstructure:"wait-to-restore"`
+	Switch         *des.Time `mapstructure:"switch"`
+	Relock         *des.Time `mapstructure:"re-lock"`
+	Level          *des.Time `mapstructure:"level"`
+	Report         string    `mapstructure:"report"`
+	Correlation    *des.Time `mapstructure:"correlation"`
 	TrafficReady   *des.Time `mapstructure:"traffic-ready"`
 	Converge       *des.Time `mapstructure:"converge"`
 	LossOfMessage  *ratio    `mapstructure:"loss-of-message"`

@@ -59,10 +59,24 @@ type Timing struct {
 	CommandsAtOnce int         // commands a node carries out at a time, at least 1
 	Commands       CommandOrder
 	WaitToRestore  des.Time // from repair to reversion
+	Switch         des.Time // from loss of light to the other copy, at the tail of a 1+1 circuit
+	Relock         des.Time // a receiver's on a wavelength that is new to it
+	Level          des.Time // of optical power after a wavelength is added, for each fibre of its route
+	Report         Report   // what the controller is told of when a fibre is cut
+	Correlation    des.Time // how long it gathers reports before it restores anything
 	TrafficReady   des.Time // from the last command done to the circuit fit for traffic
 	Converge       des.Time // until the management way is known again after a cut
 	LossOfMessage  float64  // probability in [0, 1) that a control message is lost
 }
+
+// Report says what the controller takes for the report of a fault.
+type Report uint8
+
+// Kinds of report.
+const (
+	ReportFibre   Report = iota // a fibre went dark: all circuits over it are down
+	ReportCircuit               // each circuit's loss of light for itself
+)
 
 // Class is a class of service.
 type Class struct {

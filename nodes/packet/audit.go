@@ -25,13 +25,18 @@ type Totals struct {
 	Ports      int // ports whose queues were checked against Little's law
 }
 
-// Inside calls f for every packet still under way or waiting.
+// Inside calls f for every packet still under way or waiting. Second copies on
+// 1+1 circuits, and duplicates, have nodes.BitCopy set.
 func (n *Network) Inside(f func(p *nodes.Packet)) {
 	for _, s := range n.sites {
 		for i := range s.inputs {
 			p := s.inputs[i].pipe
 			for j := p.head; j != p.tail; j++ {
-				f(&p.buf[j&uint64(len(p.buf)-1)])
+				k := p.buf[j&uint64(len(p.buf)-1)]
+				if p.copies != 0 {
+					k.Bits |= nodes.BitCopy
+				}
+				f(&k)
 			}
 		}
 		for i := range s.ports {

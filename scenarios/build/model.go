@@ -48,7 +48,7 @@ func NewWith(sc *scenarios.Scenario, plan *scenarios.Plan, seed uint64, o Option
 	cfg := packet.Config{
 		Plant: m.Plant, Seed: seed, WarmUp: sc.Run.WarmUp, Length: sc.Run.Length,
 		Detect: sc.Timing.Detect, Converge: sc.Timing.Converge, MessageLoss: sc.Timing.LossOfMessage,
-		JoinBelow: o.JoinBelow,
+		JoinBelow: o.JoinBelow, Switch: sc.Timing.Switch, Revert: true, Wait: sc.Timing.WaitToRestore,
 	}
 	for i := range sc.Sites {
 		f, err := forwarding(&sc.Sites[i])

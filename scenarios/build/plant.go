@@ -76,9 +76,6 @@ func Plant(sc *scenarios.Scenario, plan *scenarios.Plan) (*nodes.Plant, error) {
 
 func circuit(sc *scenarios.Scenario, plan *scenarios.Plan, id nodes.CircuitID) (nodes.Circuit, error) {
 	c := &plan.Circuits[id]
-	if c.Recovery == nodes.RecoveryOnePlus {
-		return nodes.Circuit{}, fmt.Errorf("%s:%d: circuit %s: recovery 1+1 is not in this version; write restore or none", c.Pos.File, c.Pos.Line, c.Name)
-	}
 	n := nodes.Circuit{
 		Name: c.Name, Ends: [2]nodes.SiteID{c.A, c.B}, Slots: c.Slots, Channel: c.Size == scenarios.SizeChannel,
 		Payload: c.Payload, Rate: c.Rate, Along: c.Along, Choose: c.Choose, ApartFrom: c.ApartFrom,

@@ -2,10 +2,15 @@ package result
 
 // A Circuit is how one circuit stood at the end of a run.
 type Circuit struct {
-	Name        string   `json:"name"`
-	Ends        []string `json:"ends,omitempty"`    // sites; the first is that of Turns
-	Route       []string `json:"route"`             // sites in order, from its first end; empty when never set up
-	Fibres      []string `json:"fibres,omitempty"`  // in the order of Route
+	Name   string   `json:"name"`
+	Ends   []string `json:"ends,omitempty"`   // sites; the first is that of Turns
+	Route  []string `json:"route"`            // sites in order, from its first end; empty when never set up
+	Fibres []string `json:"fibres,omitempty"` // in the order of Route
+
+	// SecondFibres is the route of the copies of a 1+1 circuit, from its first
+	// end.
+	SecondFibres []string `json:"second_fibres,omitempty"`
+
 	Carries     string   `json:"carries,omitempty"` // "routed" or "moved"
 	Recovery    string   `json:"recovery,omitempty"`
 	Slots       *int64   `json:"slots,omitempty"` // on each fibre; absent for a whole channel

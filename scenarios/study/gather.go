@@ -118,6 +118,9 @@ func (g *gatherer) collectLosses() {
 	})
 	now := g.n.Now()
 	g.n.Inside(func(p *nodes.Packet) {
+		if p.Bits&nodes.BitCopy != 0 { // its first copy counts
+			return
+		}
 		if g.inside[p.Way] == nil {
 			g.inside[p.Way] = make([]uint64, stretches)
 		}
@@ -264,6 +267,7 @@ type fold struct {
 	exact      measure.Moments
 	bytes      uint64
 	reordered  uint64
+	duplicates uint64
 	jitter     float64
 	jitters    uint64
 	losses     lossCell
@@ -291,6 +295,10 @@ func (f *fold) add(c *packet.Cell, floor des.Time) {
 		f.delay, f.base = h, floor
 	}
 	f.cells++
+	f.duplicates += c.Surplus
+	if c.Exact.N == 0 {
+		return
+	}
 	if floor == f.base {
 		f.delay.Merge(&c.Delay)
 	} else {
@@ -306,7 +314,7 @@ func (f *fold) add(c *packet.Cell, floor des.Time) {
 }
 
 func (f *fold) outcome() result.Outcome {
-	o := result.Outcome{DeliveredPackets: int64(f.exact.N), InsidePackets: int64(f.inside)}
+	o := result.Outcome{DeliveredPackets: int64(f.exact.N), DuplicatePackets: int64(f.duplicates), InsidePackets: int64(f.inside)}
 	lost := uint64(0)
 	for c, n := range f.losses {
 		o.LostPackets.Add(packet.Cause(c).String(), int64(n))

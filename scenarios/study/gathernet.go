@@ -40,6 +40,9 @@ func (g *gatherer) circuits() {
 			at = g.m.Plant.Fibres[f].Other(at)
 			x.Route = append(x.Route, g.m.Plant.Sites[at].Name)
 		}
+		for _, f := range rep.Second {
+			x.SecondFibres = append(x.SecondFibres, g.m.Plant.Fibres[f].Name)
+		}
 		if !c.Channel {
 			slots := int64(c.Slots)
 			if rep.Slots > 0 {
@@ -115,7 +118,7 @@ func (g *gatherer) holding() []int64 {
 	used := make([]int64, len(g.m.Plant.Fibres))
 	reports, _ := g.m.Control.Reports()
 	for i := range reports {
-		for _, f := range reports[i].Route {
+		for _, f := range slices.Concat(reports[i].Route, reports[i].Second) {
 			used[f] += int64(reports[i].Slots)
 		}
 	}
@@ -229,7 +232,7 @@ func (g *gatherer) price() {
 			continue
 		}
 		p.Ports += 2
-		for _, f := range rep.Route {
+		for _, f := range slices.Concat(rep.Route, rep.Second) {
 			p.Slots += int64(rep.Slots)
 			p.SlotKm += float64(float64(rep.Slots) * float64(g.m.Plant.Fibres[f].Length) / float64(nodes.Kilometre))
 		}
@@ -252,6 +255,7 @@ func (g *gatherer) audit() {
 	t, failures := g.n.Audit()
 	a := &g.r.Audit
 	a.OfferedPackets, a.DeliveredPackets, a.InsidePackets = int64(t.Offered), int64(t.Delivered), int64(t.Inside)
+	a.CopyPackets, a.DiscardedCopiesPackets, a.DuplicatePackets = int64(t.Copies), int64(t.Discarded), int64(t.Duplicates)
 	for c, n := range t.Lost {
 		a.LostPackets.Add(packet.Cause(c).String(), int64(n))
 	}
@@ -259,8 +263,9 @@ func (g *gatherer) audit() {
 	a.SlotsOwned, a.SlotsUsed = g.m.Control.SlotsOwned()
 	a.PacketHops = int64(t.Hops)
 	a.Failures = append(failures, g.m.Control.Audit()...)
-	if a.OfferedPackets != a.DeliveredPackets+a.Lost()+a.InsidePackets {
-		a.Failures = append(a.Failures, fmt.Sprintf("offered %d packets, delivered %d, lost %d, inside %d", a.OfferedPackets, a.DeliveredPackets, a.Lost(), a.InsidePackets))
+	if a.OfferedPackets+a.CopyPackets != a.DeliveredPackets+a.DiscardedCopiesPackets+a.DuplicatePackets+a.Lost()+a.InsidePackets {
+		a.Failures = append(a.Failures, fmt.Sprintf("offered %d packets, copied %d, delivered %d, discarded %d copies, %d duplicates, lost %d, inside %d",
+			a.OfferedPackets, a.CopyPackets, a.DeliveredPackets, a.DiscardedCopiesPackets, a.DuplicatePackets, a.Lost(), a.InsidePackets))
 	}
 	a.OK = len(a.Failures) == 0
 }
