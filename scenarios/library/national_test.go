@@ -152,8 +152,9 @@ func reached(sc *scenarios.Scenario, site nodes.SiteID, fibre nodes.FibreID) int
 	return len(seen)
 }
 
-// The busiest circuit of the country carries two thirds of its payload at most
-// and more than half, and the express takes what it says off the road east.
+// The busiest circuit of the country carries more than half of its payload and
+// less than two thirds; the express carries all between its ends; no two ways
+// are equally long, so nothing overtakes.
 func TestNationalLoads(t *testing.T) {
 	sc := load(t, "nineteen-towns")
 	c, err := study.Check(context.Background(), sc, study.Options{})
@@ -164,8 +165,8 @@ func TestNationalLoads(t *testing.T) {
 	for _, l := range c.Links {
 		busiest = max(busiest, *l.Utilisation)
 	}
-	if busiest < 0.55 || busiest > 0.70 {
-		t.Errorf("the busiest circuit is used to %.3f, want 0.55 to 0.70", busiest)
+	if busiest < 0.55 || busiest > 0.66 {
+		t.Errorf("the busiest circuit is used to %.3f, want 0.55 to 0.66", busiest)
 	}
 	sc = load(t, "nineteen-towns", short["nineteen-towns"]...)
 	plan, err := sc.Plan("express-east")
@@ -176,6 +177,13 @@ func TestNationalLoads(t *testing.T) {
 	for _, x := range r.Circuits {
 		if x.Name == "express" && !(x.Utilisation != nil && *x.Utilisation > 0.1) {
 			t.Errorf("the express carries next to nothing: %v", x.Utilisation)
+		}
+	}
+	for _, c := range r.Classes {
+		for _, p := range c.Periods {
+			if p.ReorderedRatio == nil || *p.ReorderedRatio > 0 {
+				t.Errorf("%s out of order: %v", c.Name, p.ReorderedRatio)
+			}
 		}
 	}
 }
