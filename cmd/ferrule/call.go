@@ -30,6 +30,7 @@ type call struct {
 	format string
 	outs   []string
 	level  string
+	again  string // the command that makes the same again
 }
 
 // flags adds the flags that all studies share to cmd.
@@ -39,7 +40,7 @@ func (c *call) flags(cmd *cobra.Command) {
 	f.StringArrayVar(&c.cuts, "cut", nil, "cut a fibre, as NAME[:120km]@6s[..9s]; may be repeated")
 	f.StringArrayVar(&c.sets, "set", nil, "lay PATH=VALUE over the scenario, as circuits.vx.slots=4; may be repeated")
 	f.StringVar(&c.format, "format", "text", "of standard output: text, json, csv or md")
-	f.StringArrayVar(&c.outs, "out", nil, "write a file too, by suffix .json, .csv, .md or .txt; may be repeated")
+	f.StringArrayVar(&c.outs, "out", nil, "write a file too, by suffix .html (a report), .json, .csv, .md or .txt; may be repeated")
 	f.StringVar(&c.level, "log", "warn", "least level logged on standard error: debug, info, warn or error")
 }
 
@@ -54,7 +55,7 @@ func (c *call) begin(cmd *cobra.Command, args []string) (scenario, options, erro
 		return nil, options{}, fmt.Errorf("--format: %w", err)
 	}
 	for _, path := range c.outs {
-		if _, err := formatOf(path); err != nil {
+		if _, err := c.formatOf(path); err != nil {
 			return nil, options{}, fmt.Errorf("--out: %w", err)
 		}
 	}
@@ -74,7 +75,8 @@ func (c *call) begin(cmd *cobra.Command, args []string) (scenario, options, erro
 	if err != nil {
 		return nil, options{}, fmt.Errorf("the scenario is not sound:\n%w", err)
 	}
-	opt := options{seed: c.seed, cores: c.cores, log: log, progress: newProgress(c.env).show}
+	c.again = commandLine(cmd, args)
+	opt := options{seed: c.seed, cores: c.cores, log: log, runs: c.asksPage(), progress: newProgress(c.env).show}
 	if !cmd.Flags().Changed("seed") {
 		opt.seed = sc.Seed()
 	}

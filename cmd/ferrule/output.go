@@ -4,7 +4,13 @@ import (
 	"bytes"
 	"fmt"
 	"path/filepath"
+	"slices"
+	"strings"
 
+	"github.com/spf13/cobra"
+	"github.com/spf13/pflag"
+
+	"ferrule/cmd/ferrule/internal/page"
 	"ferrule/cmd/ferrule/internal/table"
 	"ferrule/scenarios/result"
 )
@@ -29,7 +35,7 @@ func formatNamed(name string) (format, error) {
 }
 
 // formatOf finds the format that the suffix of a file asks for.
-func formatOf(path string) (format, error) {
+func (c *call) formatOf(path string) (format, error) {
 	switch filepath.Ext(path) {
 	case ".txt":
 		return asText, nil
@@ -39,8 +45,10 @@ func formatOf(path string) (format, error) {
 		return asCSV, nil
 	case ".md":
 		return asMarkdown, nil
+	case ".html":
+		return c.asPage, nil
 	default:
-		return nil, fmt.Errorf("%q has no suffix that says its format; end it in .json, .csv, .md or .txt", path)
+		return nil, fmt.Errorf("%q has no suffix that says its format; end it in .html, .json, .csv, .md or .txt", path)
 	}
 }
 
@@ -62,7 +70,70 @@ func asCSV(r result.Result, _ bool) ([]byte, error) {
 	return b.Bytes(), err
 }
 
-func asJSON(r result.Result, _ bool) ([]byte, error) { return result.Encode(r) }
+func asJSON(r result.Result, _ bool) ([]byte, error) { return result.Encode(withoutRuns(r)) }
+
+// withoutRuns is r without the runs that only a page shows, so that a file is
+// the same whatever is written beside it.
+func withoutRuns(r result.Result) result.Result {
+	switch r := r.(type) {
+	case *result.Batch:
+		c := *r
+		c.Runs = nil
+		return &c
+	case *result.Comparison:
+		c := *r
+		c.Runs = nil
+		return &c
+	default:
+		return r
+	}
+}
+
+func (c *call) asPage(r result.Result, _ bool) ([]byte, error) {
+	return page.Report(r, page.Options{Command: c.again})
+}
+
+// asksPage reports whether a page is to be written.
+func (c *call) asksPage() bool {
+	return slices.ContainsFunc(c.outs, func(path string) bool { return filepath.Ext(path) == ".html" })
+}
+
+// commandLine is the command that was given, without where files are and what
+// is written: enough to make the same result again.
+func commandLine(cmd *cobra.Command, args []string) string {
+	words := strings.Fields(cmd.CommandPath())
+	for _, a := range args {
+		words = append(words, quoted(filepath.Base(a)))
+	}
+	cmd.Flags().Visit(func(f *pflag.Flag) {
+		var values []string
+		switch v := f.Value.(type) {
+		case pflag.SliceValue:
+			values = v.GetSlice()
+		default:
+			values = []string{f.Value.String()}
+		}
+		switch f.Name {
+		case "out", "format", "log", "cores":
+			return // they do not change the result
+		}
+		for _, v := range values {
+			words = append(words, "--"+f.Name, quoted(v))
+		}
+	})
+	return strings.Join(words, " ")
+}
+
+// quoted is a word as a shell takes it.
+func quoted(s string) string {
+	plain := strings.IndexFunc(s, func(r rune) bool {
+		return !(r >= 'a' && r <= 'z' || r >= 'A' && r <= 'Z' || r >= '0' && r <= '9' || strings.ContainsRune("-_./:=@%+,", r))
+	}) < 0
+	if plain && s != "" {
+		return s
+	}
+	return "'" + strings.ReplaceAll(s, "'", `'\''`) + "'"
+}
 
 // write shows r on standard output and writes the files asked for. Every form
 // is made before the first byte is written, so a result that cannot be written
@@ -80,7 +151,7 @@ func (c *call) write(r result.Result) error {
 		return err
 	}
 	for i, path := range c.outs {
-		if f, err = formatOf(path); err != nil {
+		if f, err = c.formatOf(path); err != nil {
 			return err
 		}
 		if forms[1+i], err = f(r, false); err != nil {

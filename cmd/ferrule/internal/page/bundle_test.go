@@ -1,0 +1,59 @@
+package page
+
+import (
+	"bytes"
+	"flag"
+	"os"
+	"strings"
+	"testing"
+
+	"github.com/evanw/esbuild/pkg/api"
+)
+
+var update = flag.Bool("update", false, "write the bundle anew")
+
+// The committed bundle is what its sources give, byte for byte.
+func TestBundleIsFresh(t *testing.T) {
+	r := api.Build(api.BuildOptions{
+		EntryPoints: []string{"web/main.ts"}, Bundle: true, Format: api.FormatIIFE, Target: api.ES2022, Charset: api.CharsetASCII,
+		MinifyWhitespace: true, MinifyIdentifiers: true, MinifySyntax: true, LegalComments: api.LegalCommentsNone,
+		Banner: map[string]string{"js": licences(t)}, Outfile: "page.js", LogLevel: api.LogLevelSilent,
+	})
+	for _, e := range append(r.Errors, r.Warnings...) {
+		at := ""
+		if e.Location != nil {
+			at = e.Location.File
+		}
+		t.Errorf("%s: %s", at, e.Text)
+	}
+	if t.Failed() {
+		return
+	}
+	built := r.OutputFiles[0].Contents
+	if *update {
+		if err := os.WriteFile("dist/page.js", built, 0o644); err != nil {
+			t.Fatal(err)
+		}
+	}
+	committed, err := os.ReadFile("dist/page.js")
+	if err != nil {
+		t.Fatal(err)
+	}
+	if !bytes.Equal(built, committed) {
+		t.Errorf("dist/page.js has %d bytes, its sources give %d other ones: run go generate", len(committed), len(built))
+	}
+	if low := strings.ToLower(string(committed)); strings.Contains(low, "</script") || strings.Contains(low, "<!--") || strings.Contains(low, "sourcemappingurl") {
+		t.Error("the bundle cannot stand inside a page")
+	}
+}
+
+// licences is the comment at the head of the bundle: that of what is in it and
+// is not ours.
+func licences(t *testing.T) string {
+	t.Helper()
+	b, err := os.ReadFile("web/vendor/uplot/LICENSE")
+	if err != nil {
+		t.Fatal(err)
+	}
+	return "/* Contains uPlot 1.6.32 under this licence:\n\n" + strings.TrimSpace(string(b)) + "\n*/"
+}

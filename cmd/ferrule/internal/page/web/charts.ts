@@ -1,0 +1,158 @@
+// Charts of time series and of the tails of delay distributions.
+
+import uPlot from "./vendor/uplot/uPlot.esm.js";
+import { Period, Run, Series, Tail } from "./contract";
+import { colour, html, quantity, share } from "./dom";
+
+// A look tells the base from a plan by colour and by stroke.
+export interface Look { name: string; colour: string; dash?: number[]; width: number }
+
+export function looks(runs: Run[]): Look[] {
+  return runs.map((r, i) => ({
+    name: r.plan, colour: colour(i === 0 && runs.length > 1 ? "base" : "plan"), dash: i === 0 && runs.length > 1 ? [5, 3] : undefined, width: i === 0 ? 1.5 : 1.75,
+  }));
+}
+
+// what a panel shows over time.
+export type Figure = "delay" | "loss" | "load";
+
+export const figures: { id: Figure; title: string; unit: "s" | "share" | "bit/s" }[] = [
+  { id: "delay", title: "Delay: mean, and greatest (thin)", unit: "s" },
+  { id: "loss", title: "Lost share of what was sent", unit: "share" },
+  { id: "load", title: "Delivered rate", unit: "bit/s" },
+];
+
+type Column = (number | null)[];
+
+function column(s: Series, figure: Figure | "most"): Column {
+  switch (figure) {
+    case "delay": return s.mean_delay_s;
+    case "most": return s.max_delay_s;
+    case "loss": return s.offered_packets.map((n, i) => (n > 0 ? s.lost_packets[i] / n : null));
+    case "load": return s.delivered_bits.map((b) => b / s.width_s);
+  }
+}
+
+const write = { s: (v: number) => quantity(v, "s"), share, "bit/s": (v: number) => quantity(v, "bit/s") };
+
+// hatch marks the periods as bands behind a chart, and acts as lines.
+function bands(periods: Period[]): uPlot.Plugin {
+  return {
+    hooks: {
+      drawClear: (u: uPlot) => {
+        const { ctx } = u;
+        const { left, top, width, height } = u.bbox;
+        const x = (t: number) => Math.min(Math.max(u.valToPos(t, "x", true), left), left + width);
+        ctx.save();
+        for (const p of periods) {
+          if (p.kind !== "normal") {
+            ctx.fillStyle = colour("band-" + p.kind);
+            ctx.fillRect(x(p.from_s), top, x(p.to_s) - x(p.from_s), height);
+          }
+          if (p.act && u.scales.x.min! <= p.from_s && p.from_s <= u.scales.x.max!) {
+            ctx.strokeStyle = colour("act");
+            ctx.lineWidth = devicePixelRatio;
+            ctx.beginPath();
+            ctx.moveTo(x(p.from_s), top);
+            ctx.lineTo(x(p.from_s), top + height);
+            ctx.stroke();
+          }
+        }
+        ctx.restore();
+      },
+    },
+  };
+}
+
+function axes(x: (v: number) => string, y: (v: number) => string): uPlot.Axis[] {
+  const both = { stroke: colour("quiet"), grid: { stroke: colour("grid"), width: 1 }, ticks: { stroke: colour("grid"), width: 1, size: 4 }, font: "11px system-ui, sans-serif" };
+  return [
+    { ...both, size: 26, gap: 2, space: 60, values: (_u: uPlot, v: (number | null)[]) => v.map((a) => (a === null ? "" : x(a))) },
+    { ...both, size: 62, gap: 4, space: 26, values: (_u: uPlot, v: (number | null)[]) => v.map((a) => (a === null ? "" : y(a))) },
+  ];
+}
+
+const seconds = (v: number) => String(Number(v.toFixed(6))) + " s";
+
+export interface Panel { make(into: HTMLElement): uPlot }
+
+// overTime is a panel of one figure of one class over from..to.
+export function overTime(runs: Run[], all: Look[], cls: string, figure: Figure, from: number, to: number, close: boolean, sync: string): Panel {
+  const unit = figures.find((f) => f.id === figure)!.unit;
+  const xs: number[][] = [];
+  const tables: uPlot.AlignedData[] = [];
+  const series: uPlot.Series[] = [{ label: "sent", value: (_u: uPlot, v: number | null) => (v === null ? "" : seconds(v)) }];
+  runs.forEach((run, i) => {
+    const s = (run.series ?? []).find((x) => x.class === cls && !!x.close === close && x.from_s < to && x.from_s + x.width_s * x.offered_packets.length > from);
+    if (!s) return;
+    const x = s.offered_packets.map((_, k) => s.from_s + s.width_s * (k + 0.5));
+    const columns: Column[] = [column(s, figure)];
+    const value = (_u: uPlot, v: number | null) => (v === null ? "–" : write[unit](v));
+    const stepped = figure !== "delay" && close ? uPlot.paths.stepped!({ align: 1 }) : undefined;
+    series.push({ label: all[i].name, stroke: all[i].colour, width: all[i].width, dash: all[i].dash, points: { show: false }, value, paths: stepped });
+    if (figure === "delay") {
+      columns.push(column(s, "most"));
+      series.push({ label: all[i].name + " greatest", stroke: all[i].colour, width: 0.6, dash: all[i].dash, points: { show: false }, value });
+    }
+    xs.push(x);
+    tables.push([x, ...columns] as uPlot.AlignedData);
+  });
+  const data = tables.length > 0 ? uPlot.join(tables) : ([[]] as unknown as uPlot.AlignedData);
+  const last = runs[runs.length - 1];
+  return {
+    make: (into) => new uPlot({
+      ...size(into), series, axes: axes(seconds, write[unit]), legend: { show: false }, plugins: [bands(last.periods), readout(into)],
+      cursor: { sync: { key: sync }, drag: { x: true, y: false }, points: { size: 5 } },
+      scales: { x: { time: false, range: (_u, lo, hi) => (lo === hi || lo === null ? [from, to] : [Math.max(lo, from), Math.min(hi, to)]) }, y: { range: (_u, _lo, hi) => [0, hi > 0 ? hi * 1.05 : 1] } },
+    }, data, into),
+  };
+}
+
+// tail is a panel of the delay distribution of one class in one period, of
+// each run: the share of packets that took so long or longer.
+export function tail(runs: Run[], all: Look[], cls: string, period: string): Panel {
+  const tables: uPlot.AlignedData[] = [];
+  const series: uPlot.Series[] = [{ label: "delay", value: (_u: uPlot, v: number | null) => (v === null ? "" : quantity(v, "s")) }];
+  let [least, most] = [Infinity, 0];
+  runs.forEach((run, i) => {
+    const t: Tail | undefined = (run.tails ?? []).find((x) => x.class === cls && x.period === period);
+    if (!t) return;
+    const [x, y] = [[...t.delay_s], [...t.at_least_ratio]];
+    for (let k = 1; k < x.length; k++) if (x[k] <= x[k - 1]) x[k] = x[k - 1] * (1 + 1e-9); // a scale wants them apart
+    least = Math.min(least, x[0]);
+    most = Math.max(most, x[x.length - 1]);
+    tables.push([x, y]);
+    series.push({ label: all[i].name, stroke: all[i].colour, width: all[i].width + 0.25, dash: all[i].dash, spanGaps: true, points: { show: false },
+      value: (_u: uPlot, v: number | null) => (v === null ? "–" : share(v)) });
+  });
+  const data = tables.length > 0 ? uPlot.join(tables, tables.map((t) => t.map(() => 2))) : ([[]] as unknown as uPlot.AlignedData);
+  const tenth = (v: number) => (Math.abs(Math.log10(v) - Math.round(Math.log10(v))) < 1e-6 ? share(v) : "");
+  const one25 = (v: number) => (/^[125]/.test(v.toExponential()) ? quantity(v, "s") : "");
+  return {
+    make: (into) => new uPlot({
+      ...size(into), series, axes: axes(one25, tenth), legend: { show: false }, plugins: [readout(into)], cursor: { drag: { x: true, y: false }, points: { size: 5 } },
+      scales: { x: { time: false, distr: 3, range: () => [least * 0.95, Math.max(most * 1.05, least * 1.2)] }, y: { distr: 3, range: () => [1e-5, 1] } },
+    }, data, into),
+  };
+}
+
+const size = (into: HTMLElement) => ({ width: Math.max(into.clientWidth, 220), height: 150 });
+
+// readout writes the values under the cursor into the caption of a chart.
+function readout(into: HTMLElement): uPlot.Plugin {
+  const out = html("output", { class: "readout" });
+  into.before(out);
+  return {
+    hooks: {
+      setLegend: (u: uPlot) => {
+        const at = u.legend.idxs?.[0];
+        if (at === null || at === undefined) {
+          out.textContent = "";
+          return;
+        }
+        out.textContent = (u.legend.values ?? []).map((v, i) => `${u.series[i].label} ${v["_"] ?? ""}`).join(" · ");
+      },
+      destroy: () => out.remove(),
+    },
+  };
+}
