@@ -218,28 +218,48 @@ func TestTalkGaps(t *testing.T) {
 	}
 }
 
-// The number of active speakers at any instant is binomial: for 24 of activity
-// 0.3874952 more than 12 are active with a chance of 0.0913448 (computed from
-// the binomial law), at the start and 5 s later.
+// The number of active speakers at any instant is binomial: of 24, 30 or 100 of
+// activity 0.3874952 more than 12, 16 or 50 are active with the chances given
+// (computed from the binomial law), at the start and 5 s later.
 func TestTalkersAreBinomial(t *testing.T) {
-	const want, runs = 0.09134479, 2000
-	for _, from := range []des.Time{0, 5 * des.Second} {
-		hits := 0.0
-		for seed := range uint64(runs) {
-			s := talkOf(t, TalkConfig{Common: Common{Seed: seed}, Calls: 24})
-			s.Emit(from, nil)
-			// Packets of a call are at least 20 ms apart, so 20 ms hold one of
-			// it or none: one with the chance of the activity.
-			if len(s.Emit(from+20*des.Millisecond, nil)) > 12 {
-				hits++
+	const runs = 1500
+	for _, x := range []struct {
+		calls, above int
+		want         float64
+	}{{24, 12, 0.09134479}, {30, 16, 0.03539225}, {100, 50, 0.00852924}} {
+		for _, from := range []des.Time{0, 5 * des.Second} {
+			hits := 0.0
+			for seed := range uint64(runs) {
+				s := talkOf(t, TalkConfig{Common: Common{Seed: seed}, Calls: x.calls})
+				s.Emit(from, nil)
+				// Packets of a call are at least 20 ms apart, so 20 ms hold one of
+				// it or none: one with the chance of the activity.
+				if len(s.Emit(from+20*des.Millisecond, nil)) > x.above {
+					hits++
+				}
+			}
+			if p := hits / runs; math.Abs(p-x.want) > 3.29*math.Sqrt(x.want*(1-x.want)/runs) {
+				t.Errorf("at %v more than %d of %d are active with %.4f, want %.4f", from, x.above, x.calls, p, x.want)
+			}
+			if x.calls == 100 {
+				break // the start alone, to be quick
 			}
 		}
-		if p := hits / runs; math.Abs(p-want) > 3.29*math.Sqrt(want*(1-want)/runs) {
-			t.Errorf("at %v more than 12 of 24 are active with %.4f, want %.4f", from, p, want)
-		}
 	}
-	if a := (TalkConfig{Spurt: 1004 * des.Millisecond, Silence: 1587 * des.Millisecond}).Activity(); math.Abs(a-0.3874952) > 1e-7 {
-		t.Errorf("activity %v", a)
+}
+
+// Activities from published means: ITU-T P.59 (1993), and G.729B speech as
+// measured by W. Jiang, H. Schulzrinne (ICCCN 2000): spurts of 362 ms, silences
+// of 488 ms.
+func TestActivity(t *testing.T) {
+	for _, x := range []struct {
+		spurt, silence des.Time
+		want           float64
+	}{{1004, 1587, 0.3874952}, {362, 488, 0.4258824}} {
+		c := TalkConfig{Spurt: x.spurt * des.Millisecond, Silence: x.silence * des.Millisecond}
+		if a := c.Activity(); math.Abs(a-x.want) > 1e-7 {
+			t.Errorf("activity %v, want %v", a, x.want)
+		}
 	}
 }
 

@@ -350,20 +350,28 @@ func TestVoiceAndFilesFaults(t *testing.T) {
 	}
 }
 
-// Checking a checked configuration changes nothing.
-func TestCheckTwice(t *testing.T) {
-	once, err := VoiceConfig{Common: Common{Name: "v"}, Calls: 7, Codec: G729, Interval: 30 * des.Millisecond}.Check()
+// checkTwice holds a Check method to changing nothing of what it has checked.
+func checkTwice[C interface{ Check() (C, error) }](t *testing.T, c C) {
+	t.Helper()
+	once, err := c.Check()
 	if err != nil {
 		t.Fatal(err)
 	}
 	if twice, err := once.Check(); err != nil || !reflect.DeepEqual(once, twice) {
 		t.Errorf("%+v, then %+v, %v", once, twice, err)
 	}
-	video, err := VideoConfig{Common: Common{Name: "w", Load: 100_000_001}, Rate: 7_654_321}.Check()
-	if err != nil {
-		t.Fatal(err)
-	}
-	if twice, err := video.Check(); err != nil || !reflect.DeepEqual(video, twice) {
-		t.Errorf("%+v, then %+v, %v", video, twice, err)
-	}
+}
+
+func TestCheckTwice(t *testing.T) {
+	named, loaded := Common{Name: "v"}, Common{Name: "w", Load: 100_000_001}
+	checkTwice(t, VoiceConfig{Common: named, Calls: 7, Codec: G729, Interval: 30 * des.Millisecond})
+	checkTwice(t, TalkConfig{Common: named, Calls: 7})
+	checkTwice(t, TalkConfig{Common: loaded})
+	checkTwice(t, VideoConfig{Common: loaded, Rate: 7_654_321})
+	checkTwice(t, VideoConfig{Common: loaded, Rate: 7_654_321, Pattern: Regular})
+	checkTwice(t, StreamConfig{Common: loaded})
+	checkTwice(t, MMPPConfig{Common: loaded})
+	checkTwice(t, OnOffConfig{Common: loaded})
+	checkTwice(t, FilesConfig{Common: loaded})
+	checkTwice(t, PagesConfig{Common: loaded})
 }
