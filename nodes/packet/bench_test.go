@@ -31,7 +31,14 @@ func (p *poisson) Next() des.Time { return p.at }
 
 func (p *poisson) Emit(end des.Time, buf []nodes.Packet) []nodes.Packet {
 	for p.at < end {
-		buf = append(buf, nodes.Packet{Born: p.at, Due: p.at, Seq: p.seq, Flow: uint16(p.seq), Way: p.way, Size: p.sizes.Pick(p.r.Uint64()), TTL: nodes.InitialTTL})
+		if n := len(buf); n < cap(buf) {
+			buf = buf[:n+1]
+		} else {
+			buf = append(buf, nodes.Packet{})
+		}
+		k := &buf[len(buf)-1] // field by field: a literal would be put together elsewhere and copied
+		k.Due, k.Born, k.Word, k.Seq, k.Flow, k.Way = p.at, p.at, 0, p.seq, uint16(p.seq), p.way
+		k.Size, k.TTL, k.Bits = p.sizes.Pick(p.r.Uint64()), nodes.InitialTTL, 0
 		p.seq++
 		p.at += des.Time(p.r.Exp() * p.mean)
 	}

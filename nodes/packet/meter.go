@@ -57,8 +57,7 @@ type Meter struct {
 	Outages []Outage
 	jitter  measure.Jitter
 	pairs   measure.Consecutive
-	order   measure.Order
-	next    uint32   // sequence number after the last delivered in order
+	next    uint32   // sequence number expected next
 	last    des.Time // when that one was sent
 	trace   *trace   // of its class where it arrives
 }
@@ -87,8 +86,7 @@ func (m *Meter) add(p *nodes.Packet, at des.Time, stretch, fault int32) {
 		c.Jitter += j
 		c.Jitters++
 	}
-	late := m.order.Add(p.Seq)
-	if late {
+	if p.Seq < m.next { // below the next expected: reordered (RFC 4737, section 3.3)
 		c.Reordered++
 		m.overtaken(c, p.Seq, delay)
 		return
