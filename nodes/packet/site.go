@@ -42,7 +42,6 @@ type Site struct {
 	now     des.Time
 
 	st        view
-	stEnd     des.Time
 	losses    []Loss
 	traces    []trace  // by class
 	lossOf    []int32  // way -> index in losses plus one
