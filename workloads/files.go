@@ -18,6 +18,7 @@ type FilesConfig struct {
 	Common
 	Size random.Spec // bytes of a file; default Pareto of mean 80 kB and shape 1.3, at most 100 MB
 	Pace nodes.Rate  // of one transfer, bit/s of IP bytes; default 100 Mbit/s
+	Like *Files      // a source made with the same Size, whose table of that law is shared; default none
 }
 
 // Check fills the defaults and reports every fault at once.
@@ -32,14 +33,21 @@ func (c FilesConfig) Check() (FilesConfig, error) {
 	if c.Pace < 0 || c.Pace > MaxLoad {
 		faults = append(faults, fmt.Errorf("pace: %d bit/s is not between 1 bit/s and %d Tbit/s", c.Pace, MaxLoad/(1000*nodes.Gbps)))
 	}
-	if _, err := c.lengths(); err != nil {
-		faults = append(faults, fmt.Errorf("size: %w", err))
+	if c.Like == nil {
+		if l, err := c.lengths(); err != nil {
+			faults = append(faults, fmt.Errorf("size: %w", err))
+		} else {
+			c.Like = &Files{flows: l}
+		}
 	}
 	return c, errors.Join(faults...)
 }
 
 // lengths returns the law of the packets of a file.
 func (c FilesConfig) lengths() (*lengths, error) {
+	if c.Like != nil {
+		return c.Like.flows, nil
+	}
 	law, err := c.Size.Law()
 	if err != nil {
 		return nil, err
@@ -51,7 +59,10 @@ func (c FilesConfig) lengths() (*lengths, error) {
 }
 
 // Files sends the packets of files.
-type Files struct{ train }
+type Files struct {
+	train
+	flows *lengths
+}
 
 // NewFiles returns a source of files, or the faults of c.
 //
@@ -70,7 +81,7 @@ func NewFiles(c FilesConfig) (*Files, error) {
 	if err != nil {
 		return nil, err
 	}
-	f := &Files{newTrain(c.Common, c.Pace.TxTime(mtu), mtu)}
+	f := &Files{newTrain(c.Common, c.Pace.TxTime(mtu), mtu), flows}
 	bytes := flows.law.Mean() + float64(header*flows.mean)
 	f.arrive(Poisson, bytes*8/float64(c.Load)*float64(des.Second), flows)
 	return f, nil
@@ -83,4 +94,4 @@ func lastOfFile(x float64) uint16 {
 }
 
 // Clone implements nodes.Source.
-func (f *Files) Clone() nodes.Source { return &Files{f.clone()} }
+func (f *Files) Clone() nodes.Source { return &Files{f.clone(), f.flows} }

@@ -35,21 +35,37 @@ func inSeconds(s random.Spec) random.Spec {
 	return s
 }
 
+// maker makes the sources of a replication. The table of a law of file sizes is
+// large and is shared by all that have the same traffic.
+type maker struct {
+	sc    *scenarios.Scenario
+	seed  uint64
+	files []*workloads.Files // by traffic
+}
+
+func newMaker(sc *scenarios.Scenario, seed uint64) *maker {
+	return &maker{sc: sc, seed: seed, files: make([]*workloads.Files, len(sc.Traffic))}
+}
+
 // A constructor makes the source of one way from what the file says of it.
-type constructor func(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error)
+type constructor func(m *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error)
 
 // constructors is the one table from the models of files to sources.
 var constructors = [...]constructor{
-	scenarios.ModelConstant: func(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+	scenarios.ModelConstant: func(m *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
 		return workloads.NewStream(workloads.StreamConfig{Common: c, Gaps: workloads.Constant, Size: t.Packet, Flows: streamFlows(a, t)})
 	},
-	scenarios.ModelPoisson: func(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+	scenarios.ModelPoisson: func(m *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
 		return workloads.NewStream(workloads.StreamConfig{Common: c, Gaps: workloads.Poisson, Size: t.Packet, Flows: streamFlows(a, t)})
 	},
 	scenarios.ModelVoice: voice,
 	scenarios.ModelVideo: video,
-	scenarios.ModelFiles: func(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
-		return workloads.NewFiles(workloads.FilesConfig{Common: c, Size: t.Size, Pace: t.Pace})
+	scenarios.ModelFiles: func(m *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+		f, err := workloads.NewFiles(workloads.FilesConfig{Common: c, Size: t.Size, Pace: t.Pace, Like: m.files[a.Traffic]})
+		if err == nil {
+			m.files[a.Traffic] = f
+		}
+		return f, err
 	},
 }
 
@@ -87,7 +103,10 @@ func flowPattern(f scenarios.FlowArrival) workloads.Pattern {
 	}
 }
 
-func voice(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+// callInterval is from packet to packet of a call (RFC 3551, section 4.5).
+const callInterval = 20 * des.Millisecond
+
+func voice(_ *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
 	v := workloads.VoiceConfig{Common: c, Codec: workloads.G711}
 	if t.Codec == "G.729" {
 		v.Codec = workloads.G729
@@ -100,13 +119,14 @@ func voice(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (wo
 		if v.Pattern == workloads.Standing {
 			v.Load, v.Calls = 0, a.Flows
 		} else {
+			v.Interval = callInterval
 			v.Load = nodes.Rate(math.Round(float64(a.Flows) * v.CallRate()))
 		}
 	}
 	return workloads.NewVoice(v)
 }
 
-func video(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+func video(_ *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
 	v := workloads.VideoConfig{Common: c, Rate: t.Rate, Frames: t.Frames}
 	if v.Pattern = flowPattern(t.FlowsArrive); v.Pattern != workloads.Standing {
 		v.Hold = inSeconds(t.Hold)
@@ -146,17 +166,17 @@ func WayName(a *scenarios.Aggregate, d nodes.Direction) string {
 }
 
 // source makes the source of one way of an aggregate.
-func source(sc *scenarios.Scenario, id nodes.AggID, d nodes.Direction, seed uint64) (workloads.Source, error) {
-	a := &sc.Aggregates[id]
-	t := &sc.Traffic[a.Traffic]
+func (m *maker) source(id nodes.AggID, d nodes.Direction) (workloads.Source, error) {
+	a := &m.sc.Aggregates[id]
+	t := &m.sc.Traffic[a.Traffic]
 	c := workloads.Common{
-		Name: WayName(a, d), Way: nodes.WayOf(id, d), Seed: seed,
+		Name: WayName(a, d), Way: nodes.WayOf(id, d), Seed: m.seed,
 		Start: max(a.Start, t.Start), Stop: min(a.Stop, t.Stop), Load: a.Load,
 	}
 	if a.Flows > 0 {
 		c.Load = nodes.Rate(a.Flows) * t.Rate
 	}
-	s, err := constructors[t.Model](c, a, t)
+	s, err := constructors[t.Model](m, c, a, t)
 	if err != nil {
 		return nil, fmt.Errorf("%s:%d: aggregate %s: %w", a.Pos.File, a.Pos.Line, a.Name, err)
 	}

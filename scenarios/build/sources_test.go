@@ -20,6 +20,7 @@ traffic:
   - { name: films,  model: video, rate: 1Mbps, frames: 25/s, flows-arrive: poisson, hold: { exponential: { mean: 2s } } }
   - { name: shows,  model: video, rate: 1Mbps, frames: 25/s, flows-arrive: regular, hold: 2s }
   - { name: walls,  model: video, rate: 1Mbps, frames: 25/s }
+  - { name: talks,  model: voice, codec: G.711, flows-arrive: poisson, hold: { exponential: { mean: 2s } } }
 sites: [ { name: a, position: [0km, 0km] }, { name: b, position: [30km, 40km] } ]
 fibres: [ { between: [a, b] } ]
 circuits: [ { name: ab, along: [a-b], slots: 1 } ]
@@ -32,6 +33,7 @@ aggregates:
   - { name: films,  between: [a, b], class: gold, traffic: films, load: 40Mbps }
   - { name: shows,  between: [a, b], class: gold, traffic: shows, flows: 40 }
   - { name: walls,  between: [a, b], class: gold, traffic: walls, flows: 40 }
+  - { name: talks,  between: [a, b], class: gold, traffic: talks, flows: 40 }
 `
 
 // packetsOf returns what way Out of the named aggregate sends up to end.
@@ -43,7 +45,7 @@ func packetsOf(t *testing.T, name string, end des.Time) []nodes.Packet {
 	}
 	for i := range sc.Aggregates {
 		if sc.Aggregates[i].Name == name {
-			s, err := source(sc, nodes.AggID(i), nodes.Out, 1)
+			s, err := newMaker(sc, 1).source(nodes.AggID(i), nodes.Out)
 			if err != nil {
 				t.Fatal(err)
 			}
@@ -97,5 +99,16 @@ func TestVideoFlowsArrive(t *testing.T) {
 		if got := flowsOf(packetsOf(t, x.name, 10*des.Second)); got < x.low || got > x.top {
 			t.Errorf("%s: %d flows, want %d to %d", x.name, got, x.low, x.top)
 		}
+	}
+}
+
+// Forty calls on average, 50 packets a second each: 20 s hold 40,000 packets.
+// The number of calls has variance 40 and a correlation time of 2 s, so the
+// mean over 20 s has a standard deviation of about 40*50*20*sqrt(2*2/20/40),
+// 2,800 packets; four of them are allowed.
+func TestCallsThatArriveByNumber(t *testing.T) {
+	n := len(packetsOf(t, "talks", 20*des.Second))
+	if n < 40_000-11_200 || n > 40_000+11_200 {
+		t.Errorf("%d packets in 20 s, want about 40,000", n)
 	}
 }
