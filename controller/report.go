@@ -66,6 +66,7 @@ type Report struct {
 	DownTime    des.Time        // total of outages that have ended
 	Outages     int
 	Resizes     int
+	Preempted   int    // how often others have pushed it out
 	Incarnation int32  // of the route in use, or of the last one; 0: none yet
 	Reason      string // why it is blocked or could not be restored
 }

@@ -103,6 +103,7 @@ type Circuit struct {
 	Recovery  Recovery
 	Setup     uint8 // priority 0..7, 0 highest (RFC 3209 section 4.7)
 	Hold      uint8
+	Shrink    bool // may be restored with fewer slots
 	Carries   Carriage
 	Metric    int64 // 0: the delay of its route in ps
 	HoldOff   des.Time

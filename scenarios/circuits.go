@@ -38,6 +38,7 @@ func (r *resolver) circuitBase(p *place, raw rawCircuit, or Circuit) Circuit {
 	or.WhenDown = nodes.WhenDown(r.choice(p.field("when-down"), raw.WhenDown, whenDownWords, int(or.WhenDown)))
 	or.Framing = Framing(r.choice(p.field("framing"), raw.Framing, framingWords, int(or.Framing)))
 	or.HoldOff = within(p.field("hold-off"), raw.HoldOff, 0, maxSpan, or.HoldOff, FormatTime)
+	or.Shrink = value(raw.Shrink, or.Shrink)
 	or.MTU = within(p.field("mtu"), raw.MTU, 64, maxPacket, or.MTU, FormatBytes)
 	return or
 }

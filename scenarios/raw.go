@@ -149,6 +149,7 @@ type rawCircuit struct {
 	SetUpPriority   *int         `mapstructure:"set-up-priority"`
 	HoldingPriority *int         `mapstructure:"holding-priority"`
 	HoldOff         *des.Time    `mapstructure:"hold-off"`
+	Shrink          *bool        `mapstructure:"shrink"`
 	WhenDown        string       `mapstructure:"when-down"`
 	MTU             *nodes.Bytes `mapstructure:"mtu"`
 	Framing         string       `mapstructure:"framing"`

@@ -168,6 +168,7 @@ type Circuit struct {
 	Metric          int64 // at least 1; 0 means the delay of its route in ps
 	SetUpPriority   int   // 0 (highest) to 7; nodes.None: from the highest class it carries
 	HoldingPriority int   // likewise
+	Shrink          bool  // may be restored with fewer slots
 	HoldOff         des.Time
 	WhenDown        nodes.WhenDown
 	MTU             nodes.Bytes

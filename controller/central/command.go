@@ -16,6 +16,7 @@ const (
 	ownerTask                     // a task, by number
 	ownerRequest                  // a request, by place
 	ownerTable                    // the table of the site it went to
+	ownerAsk                      // a question that is asked again when a fibre is lit
 )
 
 // command is one message that wants an answer.
@@ -168,7 +169,7 @@ func (c *Controller) answered(m *nodes.Message) {
 	done := *cmd
 	c.drop(cmd)
 	switch done.owner {
-	case ownerNone:
+	case ownerNone, ownerAsk:
 	case ownerTask:
 		if m.N == answerDone {
 			c.carriedOut(done.index, &done)
@@ -189,7 +190,9 @@ func (c *Controller) unanswered(cmd *command) {
 	if cmd.m.Settles {
 		c.x.Note("no answer", c.k.siteName(cmd.to), attempts(cmd.tries))
 	}
+	c.deaf = c.deaf || cmd.m.Settles
 	switch cmd.owner {
+	case ownerAsk:
 	case ownerNone:
 		c.owed = append(c.owed, owed{to: cmd.to, m: cmd.m})
 	case ownerTask:

@@ -32,6 +32,10 @@ type Config struct {
 	TrafficReady   des.Time   // from the route's opening at an end to its port's first packet
 	Revert         bool       // restored circuits return to their first route once it is whole again
 	WaitToRestore  des.Time   // how long it must have been whole before
+	Relock         des.Time   // a receiver's on a wavelength that is new to it, before traffic is ready
+	Level          des.Time   // of power after a wavelength is added, for each fibre of its route, likewise
+	PerCircuit     bool       // a fault is what the ends of each circuit report, not what those of a fibre do
+	Correlate      des.Time   // how long reports are gathered before anything is restored
 	OrderBound     des.Time   // what is added to the difference of delays to keep order; default 5 ms
 	Streams        []Stream   // circuit demand without packets
 }
@@ -76,7 +80,8 @@ func (c Config) withDefaults(p *nodes.Plant) Config {
 	if c.Site < 0 || int(c.Site) >= len(p.Sites) {
 		panic("central: the controller stands at no site")
 	}
-	if c.Compute < 0 || c.Retry < 0 || c.Attempts < 0 || c.CommandsAtOnce < 0 || c.TrafficReady < 0 || c.WaitToRestore < 0 || c.OrderBound < 0 {
+	if c.Compute < 0 || c.Retry < 0 || c.Attempts < 0 || c.CommandsAtOnce < 0 || c.TrafficReady < 0 || c.WaitToRestore < 0 || c.OrderBound < 0 ||
+		c.Relock < 0 || c.Level < 0 || c.Correlate < 0 {
 		panic("central: a negative duration or number in the configuration")
 	}
 	for i := range p.Fibres {

@@ -15,27 +15,29 @@ type Controller struct {
 
 	circuits []circuit
 	fibres   []fibre
-	free     []int64         // slots it believes free on each fibre, each way
-	spare    []path.Set      // whole channels it believes free on each fibre
-	ways     []way           // by way
-	tables   []*nodes.Table  // last sent to each site; nil: unknown
-	version  int32           // of the last table
-	finder   *path.Finder    // over fibres
-	scratch  scratch         // of searches
-	commands commands        // not answered yet
-	owed     []owed          // given up, to be repeated when a fibre is lit
-	tasks    []*task         // in hand, by number; nil: free
-	number   int64           // of the last task or timer
-	jobs     jobs            // waiting to be decided
-	steps    []step          // orders, those known in advance first
-	streams  []stream        // circuit demand; the last is that of single orders
-	requests []request       // slots held without packets
-	unused   []int32         // free places in requests
-	classes  []nodes.ClassID // see carriedClasses; nil: not up to date
+	free     []int64           // slots it believes free on each fibre, each way
+	spare    []path.Set        // whole channels it believes free on each fibre
+	ways     []way             // by way
+	tables   []*nodes.Table    // last sent to each site; nil: unknown
+	version  int32             // of the last table
+	finder   *path.Finder      // over fibres
+	scratch  scratch           // of searches
+	commands commands          // not answered yet
+	gathered []nodes.CircuitID // hit by a fault that is still being reported
+	owed     []owed            // given up, to be repeated when a fibre is lit
+	tasks    []*task           // in hand, by number; nil: free
+	number   int64             // of the last task or timer
+	jobs     jobs              // waiting to be decided
+	steps    []step            // orders, those known in advance first
+	streams  []stream          // circuit demand; the last is that of single orders
+	requests []request         // slots held without packets
+	unused   []int32           // free places in requests
+	classes  []nodes.ClassID   // see carriedClasses; nil: not up to date
 
 	tablesQueued bool // a job for new tables waits
 	tablesSent   int  // tables not confirmed yet
 	changed      bool // steps may have become possible
+	deaf         bool // a command has gone without an answer since all sites were last asked
 
 	x   nodes.Local // during Handle only
 	now des.Time    // during Handle only
@@ -64,6 +66,8 @@ func (c *Controller) Handle(x nodes.Local, now des.Time, m nodes.Message) {
 		c.computed()
 	case opUnplaced:
 		c.unplaced(m.Circuit, m.N)
+	case opGathered:
+		c.gatherEnds()
 	case opAfter:
 		c.afterwards(m.N, m.A)
 	case opSweep:

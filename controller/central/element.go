@@ -26,8 +26,9 @@ type Element struct {
 
 	ends    []end // of the circuits that end here, as in known.endsAt
 	alarms  []alarm
-	serial  int64 // of the last alarm or timer
-	version int32 // of the table in force
+	unheard []nodes.Message // alarms given up, oldest first
+	serial  int64           // of the last alarm or timer
+	version int32           // of the table in force
 	steered map[uint16]int64
 
 	x   nodes.Local // during Handle only
@@ -69,6 +70,7 @@ func (e *Element) clone() *Element {
 	c.books = maps.Clone(e.books)
 	c.ends = slices.Clone(e.ends)
 	c.alarms = slices.Clone(e.alarms)
+	c.unheard = slices.Clone(e.unheard)
 	c.steered = maps.Clone(e.steered)
 	return &c
 }
@@ -122,6 +124,9 @@ func (e *Element) dispatch(m *nodes.Message) {
 		e.raise(nodes.Message{Op: opFibreAlarm, Fibre: m.Fibre, B: alarmBack})
 	case opHeard:
 		e.heard(m.A)
+	case opAsk:
+		e.sayAgain()
+		e.answer(m, answerDone)
 	case opAlarmAgain:
 		e.alarmAgain(m.A)
 	default:

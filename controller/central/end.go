@@ -1,6 +1,8 @@
 package central
 
 import (
+	"slices"
+
 	"ferrule/des"
 	"ferrule/nodes"
 )
@@ -66,7 +68,7 @@ func (e *Element) activate(m *nodes.Message) {
 		return
 	}
 	e.open(n, m.Ref.(*trails))
-	if d := e.k.cfg.TrafficReady; d > 0 {
+	if d := e.untilReady(m.Circuit, m.Ref.(*trails)); d > 0 {
 		n.opening = true
 		r := *m
 		r.Op = opReady
@@ -75,6 +77,21 @@ func (e *Element) activate(m *nodes.Message) {
 	}
 	e.setPort(n, nodes.PortUp)
 	e.answer(m, answerDone)
+}
+
+// untilReady is how long after its opening a route takes no traffic yet. On a
+// wavelength the receiver has to lock, and the power is levelled station by
+// station.
+func (e *Element) untilReady(c nodes.CircuitID, t *trails) des.Time {
+	d := e.k.cfg.TrafficReady
+	if !e.k.plant.Circuits[c].Channel {
+		return d
+	}
+	fibres := len(t.work.Fibres)
+	if t.copy != nil {
+		fibres = max(fibres, len(t.copy.Fibres))
+	}
+	return d + e.k.cfg.Relock + e.k.cfg.Level*des.Time(fibres)
 }
 
 // open makes t the route of n, or its two. Its light is taken for granted until
@@ -230,6 +247,7 @@ func (e *Element) stopTimer(n *end) {
 func (e *Element) raise(m nodes.Message) {
 	e.serial++
 	m.From, m.A = e.site, e.serial
+	e.outdate(&m)
 	e.x.Pending(1)
 	e.alarms = append(e.alarms, alarm{serial: m.A, m: m})
 	e.alarmAgain(m.A)
@@ -243,6 +261,7 @@ func (e *Element) alarmAgain(serial int64) {
 			continue
 		}
 		if a.tries == e.k.cfg.Attempts {
+			e.unheard = append(e.unheard, a.m)
 			e.heard(serial)
 			e.x.Note("alarm unheard", e.k.siteName(e.site), "no answer from the controller")
 			return
@@ -251,6 +270,29 @@ func (e *Element) alarmAgain(serial int64) {
 		e.x.Send(e.k.cfg.Site, a.m)
 		later(e.x, e.now+e.k.cfg.Retry, nodes.Message{Op: opAlarmAgain, A: serial})
 		return
+	}
+}
+
+// outdate forgets what was to be told, or has gone unheard, about the thing
+// that m is about.
+func (e *Element) outdate(m *nodes.Message) {
+	same := func(o *nodes.Message) bool {
+		return o.Op == m.Op && o.Circuit == m.Circuit && o.N == m.N && o.Fibre == m.Fibre
+	}
+	e.unheard = slices.DeleteFunc(e.unheard, func(o nodes.Message) bool { return same(&o) })
+	for i := len(e.alarms) - 1; i >= 0; i-- {
+		if same(&e.alarms[i].m) {
+			e.heard(e.alarms[i].serial)
+		}
+	}
+}
+
+// sayAgain raises what has gone unheard: the controller can hear again.
+func (e *Element) sayAgain() {
+	list := e.unheard
+	e.unheard = nil
+	for _, m := range list {
+		e.raise(m)
 	}
 }
 

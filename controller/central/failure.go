@@ -46,10 +46,15 @@ func (c *Controller) fibreDies(f nodes.FibreID, from nodes.SiteID) {
 			names = append(names, c.k.circuitName(nodes.CircuitID(i)))
 		}
 	}
+	c.seeWhoIsCutOff()
 	c.x.Note("fibre down", c.k.fibreName(f), fmt.Sprintf("told by %s; %d circuits: %s", c.k.siteName(from), len(hit), strings.Join(names, ", ")))
 	for _, id := range hit {
+		k := &c.circuits[id]
+		if c.k.cfg.PerCircuit && !k.searching {
+			continue // its ends will tell
+		}
 		c.located(id)
-		if told := c.k.plant.Circuits[id].HoldOff == 0; c.circuits[id].held.copy != nil {
+		if told := c.k.plant.Circuits[id].HoldOff == 0; k.held.copy != nil {
 			c.assess(id, told)
 		} else {
 			c.fails(id, told)
@@ -60,8 +65,7 @@ func (c *Controller) fibreDies(f nodes.FibreID, from nodes.SiteID) {
 			c.crankBack(int32(i), "fibre "+c.k.fibreName(f)+" went dark")
 		}
 	}
-	c.byImportance(hit)
-	c.restore(hit, nil)
+	c.gather(slices.DeleteFunc(hit, func(id nodes.CircuitID) bool { return c.circuits[id].state != controller.Down }))
 }
 
 // fails takes a circuit for down. With told, the packet layer is told too: its
@@ -193,6 +197,10 @@ func (c *Controller) circuitAlarm(m *nodes.Message) {
 	if placed {
 		return // known already: absorbed
 	}
+	if c.hasDead(k.held.route) {
+		c.gather([]nodes.CircuitID{m.Circuit})
+		return
+	}
 	if c.k.plant.Circuits[m.Circuit].Recovery == nodes.RecoveryRestore {
 		k.searching = true
 		c.x.Pending(1)
@@ -252,14 +260,12 @@ func (c *Controller) fibreLives(f nodes.FibreID) {
 	c.x.Note("fibre up", c.k.fibreName(f), "light is back both ways")
 	c.repay()
 	c.resendTables()
-	var again []nodes.CircuitID
+	c.ask()
 	for i := range c.circuits {
 		id := nodes.CircuitID(i)
 		k := &c.circuits[i]
 		p := &c.k.plant.Circuits[i]
 		switch {
-		case k.state == controller.Down && p.Recovery == nodes.RecoveryRestore && !k.held.holds():
-			again = append(again, id)
 		case k.state == controller.Down:
 			c.revive(id) // unless an end has told that it is dark
 		case k.held.copy != nil && carries(k.state):
@@ -268,8 +274,45 @@ func (c *Controller) fibreLives(f nodes.FibreID) {
 			c.homeMayReturn(id)
 		}
 	}
-	c.byImportance(again)
-	c.restore(again, nil)
+	c.tryAgain()
+}
+
+// seeWhoIsCutOff names the sites that no fibre believed lit joins to the
+// controller's.
+func (c *Controller) seeWhoIsCutOff() {
+	p := c.k.plant
+	joined := make([]bool, len(p.Sites))
+	joined[c.k.cfg.Site] = true
+	for range p.Sites {
+		for f := range p.Fibres {
+			if e := p.Fibres[f].Ends; !c.fibres[f].dead() && joined[e[0]] != joined[e[1]] {
+				joined[e[0]], joined[e[1]] = true, true
+			}
+		}
+	}
+	var names []string
+	for s := range joined {
+		if !joined[s] {
+			names = append(names, c.k.siteName(nodes.SiteID(s)))
+		}
+	}
+	if len(names) > 0 && !c.deaf {
+		c.x.Note("cut off", c.k.siteName(c.k.cfg.Site), "no lit way to "+strings.Join(names, ", "))
+	}
+	c.deaf = c.deaf || len(names) > 0
+}
+
+// ask has every site say again what has gone unheard, when some command has
+// gone without an answer: its site may have been cut off, or this one.
+func (c *Controller) ask() {
+	if !c.deaf {
+		return
+	}
+	c.deaf = false
+	c.seeWhoIsCutOff()
+	for s := range c.k.plant.Sites {
+		c.command(nodes.SiteID(s), nodes.Message{Op: opAsk, Settles: true}, ownerAsk, 0)
+	}
 }
 
 // homeMayReturn lets wait-to-restore of a restored circuit begin, or says that

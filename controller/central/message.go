@@ -18,6 +18,7 @@ const (
 	opInstall                              // Ref = *nodes.Table
 	opSteer                                // Way by Circuit, held for B ps first
 	opHeard                                // an agent's alarm A has been heard
+	opAsk                                  // say again what has gone unheard
 
 	// Messages of the agents.
 	opAnswer     // to command A: N is an answer, Fibre what was refused
@@ -35,6 +36,7 @@ const (
 	opComputed // the job in hand is decided
 	opOverdue  // look for unanswered commands
 	opUnplaced // the fault of Circuit, incarnation N, is still not located
+	opGathered // the correlation window is over
 	opAfter    // task N, of number A, goes on
 	opSweep    // the chain that Way left is empty: A
 	opWhole    // wait-to-restore of Circuit is over: N

@@ -89,7 +89,7 @@ func (n *Net) Start(locals []nodes.Local, moves []controller.Order) error {
 func (n *Net) place(locals []nodes.Local, id nodes.CircuitID) string {
 	c := n.ctl
 	p := &n.k.plant.Circuits[id]
-	h, why := c.find(id, p.Along, &avoided{})
+	h, why := c.find(id, &search{along: p.Along, avoid: &avoided{}, width: c.free, slots: c.circuits[id].slots})
 	if why != "" {
 		return why
 	}
@@ -154,6 +154,7 @@ func (n *Net) Reports() ([]controller.Report, []controller.StepReport) {
 			Circuit: nodes.CircuitID(i), State: k.state, Route: slices.Clone(k.held.route), Channels: slices.Clone(k.held.channels),
 			Slots: k.held.slots, Rate: k.rate, Delay: c.delayOf(k.held.route), SetUp: k.setUp, UpSince: k.upSince,
 			DownSince: k.downSince, DownTime: k.downTime, Outages: k.outages, Resizes: k.resizes, Incarnation: k.active, Reason: k.reason,
+			Preempted: k.preempted,
 		}
 		if k.held.copy != nil {
 			reports[i].Second = slices.Clone(k.held.copy.route)
@@ -219,6 +220,7 @@ func (c *Controller) clone() *Controller {
 	d.scratch = scratch{mask: path.NewMask(c.finder.Graph()), sites: slices.Clone(c.scratch.sites)}
 	d.commands = c.commands.clone()
 	d.owed = slices.Clone(c.owed)
+	d.gathered = slices.Clone(c.gathered)
 	d.tasks = make([]*task, len(c.tasks))
 	for i, t := range c.tasks {
 		if t != nil {
@@ -266,5 +268,5 @@ func (n *Net) Settled() bool {
 			return false
 		}
 	}
-	return c.jobs.head == len(c.jobs.list) && !c.jobs.busy && len(c.owed) == 0
+	return c.jobs.head == len(c.jobs.list) && !c.jobs.busy && len(c.owed) == 0 && len(c.gathered) == 0
 }

@@ -16,11 +16,13 @@ import (
 // circuit is what the controller believes of a circuit.
 type circuit struct {
 	state     controller.CircuitState
-	held      holding // what it holds; no route: nothing
-	active    int32   // incarnation that is open at its ends; 0: none
-	last      int32   // incarnations numbered so far
-	slots     int
-	rate      nodes.Rate
+	held      holding    // what it holds; no route: nothing
+	active    int32      // incarnation that is open at its ends; 0: none
+	last      int32      // incarnations numbered so far
+	slots     int        // it should hold
+	rate      nodes.Rate // its ports send at
+	whole     nodes.Rate // with all slots it should hold
+	preempted int
 	home      []nodes.FibreID // first route
 	delay     des.Time        // of light over the route in use, or the last one
 	usable    bool            // packets may go over it
@@ -72,7 +74,7 @@ func (c *Controller) newPicture() {
 	p := c.k.plant
 	for i := range p.Circuits {
 		c.circuits = append(c.circuits, circuit{
-			slots: p.Circuits[i].Slots, rate: p.Circuits[i].Rate,
+			slots: p.Circuits[i].Slots, rate: p.Circuits[i].Rate, whole: p.Circuits[i].Rate,
 			task: nodes.None, setUp: -1, upSince: des.Never, downSince: des.Never,
 		})
 	}
@@ -172,16 +174,17 @@ func (h *holding) over(f nodes.FibreID) bool {
 }
 
 // find looks for a route of circuit id over fibres that are not believed dead
-// and have enough free, without what avoid names. It returns the holding, not
-// reserved, or the reason why there is none.
-func (c *Controller) find(id nodes.CircuitID, along []nodes.FibreID, avoid *avoided) (holding, string) {
+// and have enough to take, without what is to be avoided. It returns the
+// holding, not reserved, or the reason why there is none.
+func (c *Controller) find(id nodes.CircuitID, want *search) (holding, string) {
 	p := &c.k.plant.Circuits[id]
-	h := holding{slots: c.circuits[id].slots}
+	avoid := want.avoid
+	h := holding{slots: want.slots}
 	if p.Channel {
 		h.slots = 0
 	}
-	if along != nil && p.Recovery != nodes.RecoveryOnePlus {
-		return c.check(h, p, along)
+	if want.along != nil && p.Recovery != nodes.RecoveryOnePlus {
+		return c.check(h, p, want)
 	}
 	s := &c.scratch
 	s.mask.Clear()
@@ -193,24 +196,15 @@ func (c *Controller) find(id nodes.CircuitID, along []nodes.FibreID, avoid *avoi
 	for _, v := range avoid.sites {
 		s.mask.Nodes.Add(int(v))
 	}
-	q := path.Query{From: int32(p.Ends[0]), To: int32(p.Ends[1]), Avoid: s.mask, Width: c.free, Need: int64(h.slots)}
-	switch p.Choose {
-	case nodes.ChooseLeastDelay:
-		q.By = path.LeastCost
-	case nodes.ChooseFewestRouters:
-		q.By = path.FewestHops
-	case nodes.ChooseMostSpare:
-		q.By = path.Widest
-	case nodes.ChooseApart:
-		q.By = path.LeastCost
+	q := path.Query{From: int32(p.Ends[0]), To: int32(p.Ends[1]), Avoid: s.mask, Width: want.width, Need: int64(h.slots)}
+	q.By = c.objective(p, want.slots < c.circuits[id].slots)
+	if p.Choose == nodes.ChooseApart {
 		for _, o := range p.ApartFrom {
 			c.excludeRoute(&c.circuits[o].held)
 		}
-	default:
-		panic("central: unknown choice of route")
 	}
 	if p.Recovery == nodes.RecoveryOnePlus {
-		return c.findPair(h, p, along, &q)
+		return c.findPair(h, p, want, &q)
 	}
 	if p.Channel {
 		return c.findChannel(h, &q)
@@ -274,7 +268,8 @@ func (c *Controller) findChannel(h holding, q *path.Query) (holding, string) {
 }
 
 // check sees whether the route asked for will do.
-func (c *Controller) check(h holding, p *nodes.Circuit, along []nodes.FibreID) (holding, string) {
+func (c *Controller) check(h holding, p *nodes.Circuit, want *search) (holding, string) {
+	along := want.along
 	sites, ok := c.k.sitesAlong(along, p.Ends[0], p.Ends[1])
 	if !ok {
 		return h, "the fibres asked for do not join its ends"
@@ -283,8 +278,8 @@ func (c *Controller) check(h holding, p *nodes.Circuit, along []nodes.FibreID) (
 		if c.fibres[f].dead() {
 			return h, "fibre " + c.k.fibreName(f) + " is believed dead"
 		}
-		if !p.Channel && c.free[f] < int64(h.slots) {
-			return h, fmt.Sprintf("fibre %s has %d free slots, not %d", c.k.fibreName(f), c.free[f], h.slots)
+		if !p.Channel && want.width[f] < int64(h.slots) {
+			return h, fmt.Sprintf("fibre %s has %d free slots, not %d", c.k.fibreName(f), want.width[f], h.slots)
 		}
 	}
 	h.route, h.sites = slices.Clone(along), sites

@@ -75,9 +75,9 @@ func (k *circuit) routeOf(incarnation int32) int {
 }
 
 // findPair looks for two routes of a 1+1 circuit that share no fibre, no risk
-// group and, where that is possible, no site between the ends. With along, the
-// first is given. The query says what to keep away from.
-func (c *Controller) findPair(h holding, p *nodes.Circuit, along []nodes.FibreID, q *path.Query) (holding, string) {
+// group and, where that is possible, no site between the ends. One may be
+// given. The query says what to keep away from.
+func (c *Controller) findPair(h holding, p *nodes.Circuit, want *search, q *path.Query) (holding, string) {
 	s := &c.scratch
 	if p.Channel {
 		s.width = path.Spare(c.spare, s.width[:0])
@@ -85,9 +85,9 @@ func (c *Controller) findPair(h holding, p *nodes.Circuit, along []nodes.FibreID
 	}
 	var pair path.Pair
 	found := false
-	if along != nil {
+	if want.along != nil {
 		var why string
-		if h, why = c.check(h, p, along); why != "" {
+		if h, why = c.check(h, p, want); why != "" {
 			return h, why
 		}
 		found = c.besideGiven(&h, q, &pair)

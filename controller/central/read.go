@@ -52,3 +52,19 @@ func (n *Net) SlotsOwned() (picture, owned int64) {
 	}
 	return picture, owned
 }
+
+// SlotsOnFibres reports, for each fibre, the slots that the cross-connects at
+// its ends say are owned, the larger of its two directions.
+func (n *Net) SlotsOnFibres() []int64 {
+	most := make([]int64, len(n.k.plant.Fibres))
+	for _, e := range n.elements {
+		here := make([]int64, len(most))
+		for _, o := range e.xc.Ownerships() {
+			here[o.Fibre] += int64(o.Slots)
+		}
+		for f, slots := range here {
+			most[f] = max(most[f], slots)
+		}
+	}
+	return most
+}

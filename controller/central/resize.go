@@ -19,6 +19,7 @@ func (c *Controller) resize(id int32) {
 		return
 	}
 	more := t.slots - k.held.slots
+	t.had = k.held.slots
 	for _, f := range k.held.routes() {
 		if int64(more) > c.free[f] {
 			why := fmt.Sprintf("fibre %s has %d free slots, not %d", c.k.fibreName(f), c.free[f], more)
@@ -70,7 +71,7 @@ func (c *Controller) resizeGoesOn(id int32) {
 	k := &c.circuits[t.circuit]
 	switch {
 	case t.phase == phaseDrain && t.slots < k.held.slots:
-		k.rate = t.rate
+		k.rate, k.whole = t.rate, t.rate
 		c.assignSlots(id)
 	case t.phase == phaseConnect && t.slots > k.held.slots:
 		k.held, k.slots = k.held.withSlots(t.slots), t.slots
@@ -81,11 +82,15 @@ func (c *Controller) resizeGoesOn(id int32) {
 			gone := k.held.withSlots(less)
 			c.unreserve(&gone)
 		}
-		k.held, k.slots, k.rate = k.held.withSlots(t.slots), t.slots, t.rate
+		k.held, k.slots, k.rate, k.whole = k.held.withSlots(t.slots), t.slots, t.rate, t.rate
 		k.resizes++
 		c.enter(t.circuit, c.upState(t.circuit))
 		c.x.Note("resized", c.k.circuitName(t.circuit), fmt.Sprintf("%d slots after %s", t.slots, people(c.now-t.begun)))
+		fewer := k.held.slots < t.had
 		c.end(id, "")
+		if fewer {
+			c.tryAgain()
+		}
 	}
 }
 

@@ -24,7 +24,7 @@ func (c *Controller) route(id int32) {
 		c.blocked(id, "refused on the route asked for")
 		return
 	}
-	h, why := c.find(t.circuit, along, &t.avoid)
+	h, out, why := c.seek(t, along)
 	t.tries++
 	if why != "" {
 		c.blocked(id, why)
@@ -37,9 +37,11 @@ func (c *Controller) route(id int32) {
 		h.copy.incarnation = k.last
 	}
 	t.h = h
+	c.pushOut(out, t.circuit)
 	c.reserve(&t.h)
 	c.x.Note("route", p.Name, fmt.Sprintf("%s; %d slots, light %s, try %d", c.routeList(&h), h.slots, people(c.delayOf(h.route)), t.tries))
 	t.phase, t.sent = phaseConnect, 0
+	defer c.restore(out, nil)
 	if c.k.cfg.Sequence || p.Channel {
 		t.waiting = 0
 		c.connectNext(id)
@@ -72,6 +74,13 @@ func (c *Controller) connected(id int32) {
 	k.setUp = c.now - t.begun
 	c.x.Note("connected", c.k.circuitName(t.circuit), fmt.Sprintf("%d sites after %s", t.h.parts(), people(k.setUp)))
 	t.phase, t.waiting = phaseActivate, 2
+	if r := c.rateFor(t.circuit, t.h.slots); r != k.rate && !c.k.plant.Circuits[t.circuit].Channel {
+		k.rate = r
+		t.waiting = 4
+		for _, s := range c.k.plant.Circuits[t.circuit].Ends {
+			c.command(s, c.rateMessage(t.circuit, r), ownerTask, id)
+		}
+	}
 	for e, s := range c.k.plant.Circuits[t.circuit].Ends {
 		m := nodes.Message{Op: opActivate, Settles: true, Circuit: t.circuit, N: t.h.incarnation, Ref: t.h.trailsOf(t.circuit, nodes.Direction(e))}
 		c.command(s, m, ownerTask, id)
@@ -82,7 +91,8 @@ func (c *Controller) connected(id int32) {
 func (c *Controller) activated(id int32) {
 	t := c.tasks[id]
 	k := &c.circuits[t.circuit]
-	if old := k.held; old.holds() {
+	old := k.held
+	if old.holds() {
 		c.unreserve(&old)
 		c.releaseAll(t.circuit, &old, old.parts(), false, ownerNone, 0)
 	}
@@ -93,6 +103,9 @@ func (c *Controller) activated(id int32) {
 	}
 	c.end(id, "")
 	c.comesUp(t.circuit, "up", fmt.Sprintf("incarnation %d, light %s", k.active, people(k.delay)), true)
+	if old.holds() {
+		c.tryAgain()
+	}
 }
 
 // comesUp takes a circuit for up, on a new route or the one it had, and routes

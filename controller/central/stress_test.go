@@ -20,7 +20,11 @@ func mesh() *nodes.Plant {
 		v.Slots, v.InPlace = 1+i%3, i < 9
 		v.Recovery = nodes.Recovery(i % 2 * int(nodes.RecoveryRestore))
 		v.HoldOff = ms(des.Time(i%3) * 20)
-		v.Setup = uint8(i % 4)
+		v.Setup, v.Hold = uint8(i%4), uint8(i%4/2)
+		v.Shrink = i%4 == 1
+		if i == 7 || i == 11 {
+			v.Recovery = nodes.RecoveryOnePlus
+		}
 		if i < 6 {
 			v.Carries = nodes.CarriesRouted
 		}
@@ -71,6 +75,7 @@ func TestAllAgreeInTheEnd(t *testing.T) {
 			TrafficReady: ms(des.Time(r.IntN(2) * 3)), Revert: r.IntN(2) == 0, WaitToRestore: des.Second, Attempts: 3 + r.IntN(3),
 			Streams: []Stream{{Name: "q", Ends: [2]nodes.SiteID{0, 3}, Slots: 1, Demand: newPoisson(seed, "q", 10, ms(200))}},
 		}
+		cfg.PerCircuit, cfg.Correlate = r.IntN(2) == 0, ms(des.Time(r.IntN(2)*20))
 		cfg.Streams[0].Demand.(*poisson).until = 25 * des.Second
 		f := newFake(p, cfg, hops(ms(1))).start(t)
 		loss := r.IntN(3) * 10 // per cent

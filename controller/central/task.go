@@ -55,6 +55,7 @@ type task struct {
 	sent int     // sites commanded, in sequence
 
 	slots int // resize: asked for
+	had   int // resize: before
 	rate  nodes.Rate
 
 	ways   []uint16 // moves

@@ -78,6 +78,7 @@ func (c *Controller) tearDownGoesOn(id int32) {
 		c.enter(t.circuit, controller.TornDown)
 		c.x.Note("torn down", c.k.circuitName(t.circuit), "after "+people(c.now-t.begun))
 		c.end(id, "")
+		c.tryAgain()
 	default:
 		panic("central: a tear-down has no such phase")
 	}

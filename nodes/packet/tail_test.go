@@ -228,3 +228,39 @@ func TestOnePlusRepeats(t *testing.T) {
 		t.Errorf("from a copy: %+v, want %+v", got, want)
 	}
 }
+
+// The timeline of a revertive switch: service is back detection + switching
+// after the fault (10 + 50 ms), and reverts one wait-to-restore (5 min) after
+// the repair at 4 h is seen; a second fault at 4 h 3 min, cleared at 4 h 10
+// min, moves that to 4 h 15 min (computed from the rules of RFC 4428 section
+// 6.1). The break is at the site looked at, so light takes no time.
+func TestOnePlusTimeline(t *testing.T) {
+	const detect, wait = 10 * des.Millisecond, 5 * des.Minute
+	for _, again := range []bool{false, true} {
+		n, _ := onePlus(2*des.Millisecond, 7*des.Millisecond, des.Minute, packet.Config{
+			Length: 5 * des.Hour, Detect: detect, Switch: 50 * des.Millisecond, Revert: true, Wait: wait,
+		})
+		const fault = des.Second
+		n.Schedule(packet.Act{At: fault, Kind: packet.ActCut})
+		n.Schedule(packet.Act{At: fault + 4*des.Hour, Kind: packet.ActRepair})
+		back := fault + 4*des.Hour + 5*des.Minute + detect
+		if again {
+			n.Schedule(packet.Act{At: fault + 4*des.Hour + 3*des.Minute, Kind: packet.ActCut})
+			n.Schedule(packet.Act{At: fault + 4*des.Hour + 10*des.Minute, Kind: packet.ActRepair})
+			back += 10 * des.Minute
+		}
+		finish(t, n)
+		var switched, returned []des.Time
+		for _, e := range n.Events() {
+			switch {
+			case e.Site == 0 && e.What == "tail switched":
+				switched = append(switched, e.At)
+			case e.Site == 0 && e.What == "tail returned":
+				returned = append(returned, e.At)
+			}
+		}
+		if !slices.Equal(switched, []des.Time{fault + 60*des.Millisecond}) || !slices.Equal(returned, []des.Time{back}) {
+			t.Errorf("second fault %v: over at %v, back at %v; want %v and %v", again, switched, returned, fault+60*des.Millisecond, back)
+		}
+	}
+}

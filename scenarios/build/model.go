@@ -58,12 +58,13 @@ func NewWith(sc *scenarios.Scenario, plan *scenarios.Plan, seed uint64, o Option
 		cfg.Forwarding = append(cfg.Forwarding, f)
 	}
 	m.Asked = make([]float64, 2*len(sc.Aggregates))
+	sources := newMaker(sc, seed)
 	for i := range sc.Aggregates {
 		for d := range nodes.Direction(2) {
 			if d == nodes.Back && !sc.Aggregates[i].BothWays {
 				continue
 			}
-			s, err := source(sc, nodes.AggID(i), d, seed)
+			s, err := sources.source(nodes.AggID(i), d)
 			if err != nil {
 				return nil, err
 			}
@@ -94,6 +95,7 @@ func (m *Model) control() error {
 		Site: sc.Controller.At, Seed: m.Seed, Compute: sc.Controller.Compute, Retry: sc.Controller.Retry, Attempts: sc.Controller.Attempts,
 		Command: command, CommandsAtOnce: sc.Timing.CommandsAtOnce, Sequence: sc.Timing.Commands == scenarios.CommandsSequence,
 		TrafficReady: sc.Timing.TrafficReady, Revert: true, WaitToRestore: sc.Timing.WaitToRestore,
+		Relock: sc.Timing.Relock, Level: sc.Timing.Level, PerCircuit: sc.Timing.Report == scenarios.ReportCircuit, Correlate: sc.Timing.Correlation,
 	}
 	for i := range sc.Requests {
 		s, err := m.stream(&sc.Requests[i])

@@ -79,11 +79,12 @@ func circuit(sc *scenarios.Scenario, plan *scenarios.Plan, id nodes.CircuitID) (
 	n := nodes.Circuit{
 		Name: c.Name, Ends: [2]nodes.SiteID{c.A, c.B}, Slots: c.Slots, Channel: c.Size == scenarios.SizeChannel,
 		Payload: c.Payload, Rate: c.Rate, Along: c.Along, Choose: c.Choose, ApartFrom: c.ApartFrom,
-		Recovery: c.Recovery, Carries: c.Carries, Metric: c.Metric, HoldOff: c.HoldOff, WhenDown: c.WhenDown,
+		Recovery: c.Recovery, Shrink: c.Shrink, Carries: c.Carries, Metric: c.Metric, HoldOff: c.HoldOff, WhenDown: c.WhenDown,
 		MTU: c.MTU, Overhead: Overhead(c), InPlace: c.InPlace,
 	}
 	n.Setup = priority(c.SetUpPriority, sc, plan, id)
 	n.Hold = priority(c.HoldingPriority, sc, plan, id)
+	n.Setup = max(n.Setup, n.Hold) // one given and one by default; RFC 3209 forbids the contrary
 	return n, nil
 }
 
