@@ -113,20 +113,8 @@ func (g *gatherer) ports() {
 	}
 }
 
-// holding reports, for each fibre, the slots that circuits hold on it.
-func (g *gatherer) holding() []int64 {
-	used := make([]int64, len(g.m.Plant.Fibres))
-	reports, _ := g.m.Control.Reports()
-	for i := range reports {
-		for _, f := range slices.Concat(reports[i].Route, reports[i].Second) {
-			used[f] += int64(reports[i].Slots)
-		}
-	}
-	return used
-}
-
 func (g *gatherer) fibres() {
-	used := g.holding()
+	used := g.m.Control.SlotsOnFibres()
 	for i := range g.m.Plant.Fibres {
 		f := &g.m.Plant.Fibres[i]
 		g.r.Fibres = append(g.r.Fibres, result.Fibre{
@@ -237,7 +225,7 @@ func (g *gatherer) price() {
 			p.SlotKm += float64(float64(rep.Slots) * float64(g.m.Plant.Fibres[f].Length) / float64(nodes.Kilometre))
 		}
 	}
-	for i, used := range g.holding() {
+	for i, used := range g.m.Control.SlotsOnFibres() {
 		f := &g.m.Plant.Fibres[i]
 		if free := int64(f.Slots) - used; f.Slots > 0 && (p.Tightest == nil || free < p.Tightest.FreeSlots) {
 			p.Tightest = &result.Tightest{Fibre: f.Name, FreeSlots: free}

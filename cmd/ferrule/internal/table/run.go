@@ -19,6 +19,7 @@ func (d *doc) run(r *result.Run) {
 	d.circuits(r.Circuits)
 	d.ports(r.Ports)
 	d.asked(r.Asked)
+	d.demands(r.Demands)
 	d.steps(r.Steps)
 	d.events(r.Events)
 	d.heading(word("PRICE AND AUDIT"))
@@ -163,6 +164,19 @@ func (d *doc) steps(ss []result.Step) {
 	g := columns(left("act"), abbreviated("subject"), right("ordered at"), right("done at"), left("state"), wrapped("detail"))
 	for _, s := range ss {
 		g.add(name(s.Act), name(s.Subject), optionalInstant(s.OrderedS), optionalInstant(s.DoneS), name(s.State), name(s.Detail))
+	}
+	d.grid(g)
+}
+
+// demands lays out what became of requests for circuits.
+func (d *doc) demands(ds []result.Demand) {
+	if len(ds) == 0 {
+		return
+	}
+	d.heading(word("REQUESTS FOR CIRCUITS"))
+	g := columns(abbreviated("stream"), right("asked for"), right("blocked"), right("share blocked"), right("held at the end"))
+	for _, x := range ds {
+		g.add(name(x.Name), count(x.Offered, ""), count(x.Blocked, ""), number(x.BlockedRatio, result.UnitRatio), count(x.Active, ""))
 	}
 	d.grid(g)
 }
