@@ -48,18 +48,16 @@ func spoken(plan *result.Compared) []result.Period {
 }
 
 func verdictSentence(plan *result.Compared) string {
-	words := []struct {
-		verdict      result.Verdict
-		one, several string
-	}{
-		{result.Better, "gets better", "get better"}, {result.Worse, "gets worse", "get worse"},
-		{result.Undecided, "gains here and loses there, or nothing is proven", "gain here and lose there, or nothing is proven"}, {result.Same, "stays as it is", "stay as they are"},
+	words := []struct{ style, one, several string }{
+		{"better", "gets better", "get better"}, {"worse", "gets worse", "get worse"},
+		{"mixed", "gains in one period and loses in another", "gain in one period and lose in another"},
+		{"undecided", "is undecided", "are undecided"}, {"same", "stays as it is", "stay as they are"},
 	}
 	var parts []string
 	for _, w := range words {
 		var names []string
 		for _, v := range plan.Verdicts {
-			if v.Verdict == w.verdict {
+			if _, style := chipOf(plan, v); style == w.style {
 				names = append(names, v.Class)
 			}
 		}
@@ -104,7 +102,7 @@ func costOf(base string, x *result.PriceChange) []cost {
 	}
 	out := []cost{
 		{"slots", signed(x.Slots, result.UnitSlots), fmt.Sprintf("%d under %s, %d now", x.Base.Slots, base, x.Plan.Slots)},
-		{"slot-kilometres", table.Change(x.SlotKm, nil, result.UnitSlotKm), fmt.Sprintf("%.0f under %s", x.Base.SlotKm, base)},
+		{"slot-kilometres", table.Change(x.SlotKm, nil, result.UnitSlotKm), table.Number(x.Base.SlotKm, result.UnitCount).Text + " under " + base},
 		{"router ports", signed(x.Ports, result.UnitPorts), fmt.Sprintf("%d under %s", x.Base.Ports, base)},
 	}
 	if t := x.Plan.Tightest; t != nil {
@@ -137,9 +135,50 @@ func chip(v result.Verdict) (word, style string) {
 	}
 }
 
+// chipOf tells a class that gains here and loses there from one of which
+// nothing is known.
+func chipOf(plan *result.Compared, v result.ClassVerdict) (word, style string) {
+	has := func(x result.Verdict) bool {
+		return slices.ContainsFunc(plan.Figures, func(d result.Difference) bool { return d.Class == v.Class && d.Verdict == x })
+	}
+	if v.Verdict == result.Undecided && has(result.Better) && has(result.Worse) {
+		return "▲▼ mixed", "mixed"
+	}
+	return chip(v.Verdict)
+}
+
+// limitsOf counts the limits of a class that a plan misses.
+func limitsOf(plan *result.Compared, v result.ClassVerdict) said {
+	limits, missed, fresh := 0, 0, 0
+	for _, d := range plan.Figures {
+		if d.Class != v.Class || d.Limit == nil {
+			continue
+		}
+		limits++
+		if d.PlanMet != nil && !*d.PlanMet {
+			missed++
+			if d.BaseMet != nil && *d.BaseMet {
+				fresh++
+			}
+		}
+	}
+	switch {
+	case limits == 0:
+		return said{"", "no limits"}
+	case fresh > 0:
+		return said{"missed", fmt.Sprintf("misses %d of %d, %d newly", missed, limits, fresh)}
+	case missed > 0:
+		return said{"missed", fmt.Sprintf("misses %d of %d, none newly", missed, limits)}
+	case v.PlanMet != nil && *v.PlanMet:
+		return said{"met", "keeps all limits"}
+	default:
+		return said{"", "not all decided"}
+	}
+}
+
 func comparedRow(plan *result.Compared, v result.ClassVerdict, periods []result.Period) row {
 	r := row{Class: v.Class}
-	r.Chip, r.Style = chip(v.Verdict)
+	r.Chip, r.Style = chipOf(plan, v)
 	met, missed := []string{}, []string{}
 	for _, p := range periods {
 		var figures []result.Difference
@@ -198,6 +237,12 @@ func telling(figures []result.Difference, head string) gain {
 		case result.FigThroughput, result.FigReordered, result.FigDelayMean:
 			s *= 1e-3
 		}
+		if d.Limit != nil {
+			s *= 3
+		}
+		if d.Kind == result.Hit && (d.Figure == result.FigLoss || d.Figure == result.FigOut) {
+			s *= 3 // what a fault is about
+		}
 		if d.BaseMet != nil && d.PlanMet != nil && *d.BaseMet != *d.PlanMet {
 			s += 100
 		}
@@ -210,7 +255,11 @@ func telling(figures []result.Difference, head string) gain {
 	}
 	d := figures[best]
 	a, b := table.Pair(*d.Base, *d.Plan, d.Unit)
-	return gain{Head: head, Figure: table.FigureName(d.Figure), Move: []table.Cell{a, b}, Sure: table.Change(*d.Difference, d.Interval, d.Unit)}
+	sign, tone := "▲", "good"
+	if d.Verdict == result.Worse {
+		sign, tone = "▼", "bad"
+	}
+	return gain{Head: head, Sign: sign, Tone: tone, Figure: table.FigureName(d.Figure), Move: []table.Cell{a, b}, Sure: table.Change(*d.Difference, d.Interval, d.Unit)}
 }
 
 func matrixOf(c *result.Comparison) *matrix {
@@ -227,12 +276,8 @@ func matrixOf(c *result.Comparison) *matrix {
 				if v.Class != first.Class {
 					continue
 				}
-				cell.Chip, cell.Style = chip(v.Verdict)
-				if v.PlanMet != nil && !*v.PlanMet {
-					cell.Limits = []said{{"missed", "misses a limit"}}
-				} else if v.PlanMet != nil {
-					cell.Limits = []said{{"met", "limits met"}}
-				}
+				cell.Chip, cell.Style = chipOf(&c.Plans[i], v)
+				cell.Limits = []said{limitsOf(&c.Plans[i], v)}
 			}
 			r.Chips = append(r.Chips, cell)
 		}
@@ -267,14 +312,17 @@ func changes(base, plan *result.Run) []string {
 		if c.Slots == nil {
 			return "a whole channel"
 		}
-		return fmt.Sprintf("slots: %d", *c.Slots)
+		if *c.Slots == 1 {
+			return "1 slot"
+		}
+		return fmt.Sprintf("%d slots", *c.Slots)
 	}
 	for i := range plan.Circuits {
 		c := &plan.Circuits[i]
 		old := find(base, c.Name)
 		switch {
 		case (old == nil || len(old.Turns) == 0) && len(c.Turns) > 0:
-			out = append(out, fmt.Sprintf("Circuit %s is new, from %s: %s on each of %s; recovery: %s; at the end %s.",
+			out = append(out, fmt.Sprintf("Circuit %s is new, between %s: %s on %s; recovery: %s; at the end %s.",
 				c.Name, list(c.Ends), size(c), list(c.Turns[0].Fibres), c.Recovery, c.State))
 		case old != nil && size(old) != size(c):
 			out = append(out, fmt.Sprintf("Circuit %s has another size (%s, was %s).", c.Name, size(c), size(old)))
@@ -299,7 +347,7 @@ func changes(base, plan *result.Run) []string {
 				if len(a.CarriedBy) > 0 {
 					now = list(a.CarriedBy)
 				}
-				out = append(out, fmt.Sprintf("Aggregate %s (%s, %s to %s) is carried by %s at the end; before by %s.", a.Name, a.Class, a.From, a.To, now, was))
+				out = append(out, fmt.Sprintf("Aggregate %s (%s, %s to %s) is carried by %s at the end; under %s it is by %s.", a.Name, a.Class, a.From, a.To, now, base.Plan, was))
 			}
 		}
 	}

@@ -1,19 +1,26 @@
 package page
 
-import "ferrule/scenarios/result"
+import (
+	"strconv"
+
+	"ferrule/scenarios/result"
+)
 
 // Bins that a page keeps of a series, and how long after a close-up's act has
 // settled it goes on.
 const (
-	mostBins  = 512
+	mostBins  = 400
 	afterCare = 0.25 // s
+	fewest    = 50   // packets to a bin of a close-up, on average, if 10 ms have so many
 )
 
 // thinned is r without what the page does not draw. Series of the whole run
 // are folded until few enough bins are left: packets and bits add up and the
-// greatest delay stays, so no extreme is hidden. Close-ups keep their bins
-// and end soon after their period has settled.
-func thinned(r *result.Run) *result.Run {
+// greatest delay stays, so no extreme is hidden. Close-ups of classes that send
+// little are folded too, or a single packet would look like a rate; close-ups
+// end soon after their period has settled in all runs, as until says by the
+// instant at which the period begins. Delays are rounded to four digits.
+func thinned(r *result.Run, until map[float64]float64) *result.Run {
 	x := &result.Run{Head: r.Head, Plan: r.Plan, Seed: r.Seed, Periods: r.Periods, Circuits: r.Circuits, Fibres: r.Fibres,
 		Sites: r.Sites, Cuts: r.Cuts, Loads: r.Loads, Tails: r.Tails}
 	for _, c := range r.Classes {
@@ -22,12 +29,14 @@ func thinned(r *result.Run) *result.Run {
 	for i := range r.Series {
 		s := &r.Series[i]
 		if !s.Close {
-			x.Series = append(x.Series, folded(s))
+			n := len(s.OfferedPackets)
+			x.Series = append(x.Series, folded(s, (n+mostBins-1)/mostBins))
 			continue
 		}
 		for _, p := range r.Periods {
 			if p.Kind == result.Hit && inside(s, p.FromS) {
-				x.Series = append(x.Series, clipped(s, p.FromS-1, p.ToS+afterCare))
+				c := clipped(s, p.FromS-1, until[p.FromS]+afterCare)
+				x.Series = append(x.Series, folded(&c, sparse(&c)))
 			}
 		}
 	}
@@ -48,14 +57,24 @@ func clipped(s *result.Series, from, to float64) result.Series {
 		DeliveredBits: s.DeliveredBits[a:b], MeanDelayS: s.MeanDelayS[a:b], MaxDelayS: s.MaxDelayS[a:b]}
 }
 
-// folded joins as many bins as are needed to leave at most mostBins.
-func folded(s *result.Series) result.Series {
-	n := len(s.OfferedPackets)
-	by := (n + mostBins - 1) / mostBins
-	if by < 2 {
-		return *s
+// sparse is how many bins of a close-up must be joined.
+func sparse(s *result.Series) int {
+	var sent int64
+	for _, n := range s.OfferedPackets {
+		sent += n
 	}
-	x := result.Series{Class: s.Class, FromS: s.FromS, WidthS: s.WidthS * float64(by)}
+	for _, by := range []int{1, 2, 5} {
+		if sent*int64(by) >= fewest*int64(len(s.OfferedPackets)) {
+			return by
+		}
+	}
+	return 10
+}
+
+// folded joins so many bins to one.
+func folded(s *result.Series, by int) result.Series {
+	n := len(s.OfferedPackets)
+	x := result.Series{Class: s.Class, Close: s.Close, FromS: s.FromS, WidthS: s.WidthS * float64(by)}
 	for at := 0; at < n; at += by {
 		var offered, delivered, lost, bits int64
 		var sum float64
@@ -74,11 +93,23 @@ func folded(s *result.Series) result.Series {
 		}
 		var mean *float64
 		if delivered > 0 {
-			mean = new(float64(int64(sum/float64(delivered)*1e9+0.5)) / 1e9)
+			mean = new(sum / float64(delivered))
 		}
 		x.OfferedPackets, x.DeliveredPackets = append(x.OfferedPackets, offered), append(x.DeliveredPackets, delivered)
 		x.LostPackets, x.DeliveredBits = append(x.LostPackets, lost), append(x.DeliveredBits, bits)
-		x.MeanDelayS, x.MaxDelayS = append(x.MeanDelayS, mean), append(x.MaxDelayS, most)
+		x.MeanDelayS, x.MaxDelayS = append(x.MeanDelayS, rounded(mean)), append(x.MaxDelayS, rounded(most))
 	}
 	return x
+}
+
+// rounded is v to four significant digits, more than a drawing shows.
+func rounded(v *float64) *float64 {
+	if v == nil {
+		return nil
+	}
+	x, err := strconv.ParseFloat(strconv.FormatFloat(*v, 'e', 3, 64), 64)
+	if err != nil {
+		panic("page: " + err.Error())
+	}
+	return &x
 }

@@ -58,6 +58,8 @@ type row struct {
 // A gain is one figure in one period.
 type gain struct {
 	Head   string
+	Sign   string // which way it goes, and its tone
+	Tone   string
 	Figure string
 	Move   []table.Cell // before and after, or one
 	Sure   table.Cell
@@ -85,7 +87,7 @@ type matrix struct {
 
 type matrixRow struct {
 	Class string
-	Chips []row // Chip and Style only
+	Chips []row // Chip, Style and Limits only
 }
 
 type matrixCost struct {
@@ -128,8 +130,14 @@ func newView(r result.Result, opt Options) *view {
 	default:
 		panic(fmt.Sprintf("page: %T has no report", r))
 	}
+	until := map[float64]float64{} // looked up only
 	for _, run := range runs {
-		v.Document.Runs = append(v.Document.Runs, thinned(run))
+		for _, p := range run.Periods {
+			until[p.FromS] = max(until[p.FromS], p.ToS)
+		}
+	}
+	for _, run := range runs {
+		v.Document.Runs = append(v.Document.Runs, thinned(run, until))
 	}
 	if v.Drawn = len(runs) > 0; v.Drawn {
 		for _, c := range runs[0].Classes {

@@ -35,7 +35,7 @@ function column(s: Series, figure: Figure | "most"): Column {
 
 const write = { s: (v: number) => quantity(v, "s"), share, "bit/s": (v: number) => quantity(v, "bit/s") };
 
-// hatch marks the periods as bands behind a chart, and acts as lines.
+// bands marks the periods as bands behind a chart, and acts as lines over it.
 function bands(periods: Period[]): uPlot.Plugin {
   return {
     hooks: {
@@ -49,14 +49,21 @@ function bands(periods: Period[]): uPlot.Plugin {
             ctx.fillStyle = colour("band-" + p.kind);
             ctx.fillRect(x(p.from_s), top, x(p.to_s) - x(p.from_s), height);
           }
-          if (p.act && u.scales.x.min! <= p.from_s && p.from_s <= u.scales.x.max!) {
-            ctx.strokeStyle = colour("act");
-            ctx.lineWidth = devicePixelRatio;
-            ctx.beginPath();
-            ctx.moveTo(x(p.from_s), top);
-            ctx.lineTo(x(p.from_s), top + height);
-            ctx.stroke();
-          }
+        }
+        ctx.restore();
+      },
+      draw: (u: uPlot) => {
+        const { ctx } = u;
+        ctx.save();
+        ctx.strokeStyle = colour("act");
+        ctx.lineWidth = 1.5 * devicePixelRatio;
+        for (const p of periods) {
+          if (!p.act || p.from_s < u.scales.x.min! || p.from_s > u.scales.x.max!) continue;
+          const x = u.valToPos(p.from_s, "x", true);
+          ctx.beginPath();
+          ctx.moveTo(x, u.bbox.top);
+          ctx.lineTo(x, u.bbox.top + u.bbox.height);
+          ctx.stroke();
         }
         ctx.restore();
       },
@@ -126,17 +133,34 @@ export function tail(runs: Run[], all: Look[], cls: string, period: string): Pan
       value: (_u: uPlot, v: number | null) => (v === null ? "–" : share(v)) });
   });
   const data = tables.length > 0 ? uPlot.join(tables, tables.map((t) => t.map(() => 2))) : ([[]] as unknown as uPlot.AlignedData);
-  const tenth = (v: number) => (Math.abs(Math.log10(v) - Math.round(Math.log10(v))) < 1e-6 ? share(v) : "");
-  const one25 = (v: number) => (/^[125]/.test(v.toExponential()) ? quantity(v, "s") : "");
+  const lines = axes((v) => quantity(v, "s"), share);
+  lines[0].splits = (_u: uPlot, _a: number, lo: number, hi: number) => rounds(lo, hi);
+  lines[1].splits = () => [1e-5, 1e-4, 1e-3, 1e-2, 1e-1, 1];
+  for (const a of lines) a.filter = (_u: uPlot, v: number[]) => v;
   return {
     make: (into) => new uPlot({
-      ...size(into), series, axes: axes(one25, tenth), legend: { show: false }, plugins: [readout(into)], cursor: { drag: { x: true, y: false }, points: { size: 5 } },
+      ...size(into, 170), series, axes: lines, legend: { show: false }, plugins: [readout(into)], cursor: { drag: { x: true, y: false }, points: { size: 5 } },
       scales: { x: { time: false, distr: 3, range: () => [least * 0.95, Math.max(most * 1.05, least * 1.2)] }, y: { distr: 3, range: () => [1e-5, 1] } },
     }, data, into),
   };
 }
 
-const size = (into: HTMLElement) => ({ width: Math.max(into.clientWidth, 220), height: 150 });
+// rounds are a few round numbers between two.
+function rounds(lo: number, hi: number): number[] {
+  const out: number[] = [];
+  const steps = hi / lo > 40 ? [1, 10] : hi / lo > 4 ? [1, 2, 5, 10] : undefined;
+  if (steps) {
+    for (let d = 10 ** Math.floor(Math.log10(lo)); d <= hi; d *= 10) for (const k of steps.slice(0, -1)) if (k * d >= lo && k * d <= hi) out.push(k * d);
+    return out;
+  }
+  const rough = (hi - lo) / 4;
+  const size = 10 ** Math.floor(Math.log10(rough));
+  const step = size * [1, 2, 5, 10].find((k) => k * size >= rough)!;
+  for (let k = Math.ceil(lo / step); k * step <= hi; k++) out.push(k * step);
+  return out;
+}
+
+const size = (into: HTMLElement, height = 150) => ({ width: Math.max(into.clientWidth, 220), height });
 
 // readout writes the values under the cursor into the caption of a chart.
 function readout(into: HTMLElement): uPlot.Plugin {

@@ -10,9 +10,9 @@ import { classColours, quantity, share, svg } from "./dom";
 type Point = [number, number];
 
 const width = 1000;
-const deckHeight = 250;
+const deckHeight = 270;
 const margin = 70;
-const gap = 90; // between the decks
+const gap = 100; // between the decks
 const tilt = 0.55; // how far a deck leans back
 
 interface Ground {
@@ -78,6 +78,20 @@ function aside(points: Point[], offsets: number[]): Point[] {
   });
 }
 
+// lane is a polyline moved aside that still begins and ends where the line
+// does: at the routers, from which it fans out.
+function lane(line: Point[], offsets: number[]): Point[] {
+  const points = aside(line, offsets);
+  const draw = (end: number, next: number) => {
+    const d = Math.hypot(points[next][0] - points[end][0], points[next][1] - points[end][1]) || 1;
+    points[end] = mix(points[end], points[next], Math.min(30 / d, 0.3));
+  };
+  const last = points.length - 1;
+  draw(0, 1);
+  draw(last, last - 1);
+  return [line[0], ...points, line[last]];
+}
+
 const path = (points: Point[]) => "M" + points.map((p) => p[0].toFixed(1) + " " + p[1].toFixed(1)).join("L");
 
 // other is the end of a fibre that is not the given one.
@@ -118,7 +132,7 @@ const words: Record<Look, string> = {
 export function draw(into: SVGElement, run: Run, t: number, used: Map<string, number>): void {
   const g = ground(run);
   into.setAttribute("viewBox", `0 0 ${width} ${Math.round(g.height)}`);
-  into.replaceChildren(decks(g), stems(run, g), lower(run, g, t, used), upper(run, g, t));
+  into.replaceChildren(decks(g), stems(g), lower(run, g, t, used), upper(run, g, t));
 }
 
 // slotsAt counts the slots that circuits hold on each fibre at t.
@@ -138,14 +152,14 @@ function decks(g: Ground): SVGElement {
     const lean = 26;
     return [
       svg("path", { class: "deck", d: path([[lean, y], [width - lean, y], [width - 4, y + height], [4, y + height]]) + "Z" }),
-      svg("text", { class: "deck-name", x: lean + 10, y: y + 18 }, label),
+      svg("text", { class: "deck-name", x: 20, y: y + height - 10 }, label),
     ];
   };
   const height = g.height - top - 8;
-  return svg("g", {}, ...deck(top, height, "Fibres and slots"), ...deck(top - g.lift, height, "Routers and circuits"));
+  return svg("g", {}, ...deck(top, height, "Fibres and slots"), ...deck(top - g.lift, height - 12, "Routers and circuits"));
 }
 
-function stems(run: Run, g: Ground): SVGElement {
+function stems(g: Ground): SVGElement {
   return svg("g", {}, ...[...g.at.values()].map((p) => {
     const q = raise(p, g.lift);
     return svg("line", { class: "stem", x1: p[0], y1: p[1], x2: q[0], y2: q[1] });
@@ -179,15 +193,15 @@ function lower(run: Run, g: Ground, t: number, used: Map<string, number>): SVGEl
     }
     const m = mix(a, b, 0.5);
     const n = normal(a[0] <= b[0] ? a : b, a[0] <= b[0] ? b : a);
-    const steep = Math.abs(n[0]) > 0.7;
-    item.append(svg("text", { class: "small", x: m[0] + n[0] * (steep ? -16 : 22), y: m[1] + n[1] * 22 + 4, "text-anchor": steep ? (n[0] < 0 ? "start" : "end") : "middle" },
+    const steep = Math.abs(n[0]) > 0.35;
+    item.append(svg("text", { class: "small", x: m[0] + n[0] * 24, y: m[1] + n[1] * 24 + 4, "text-anchor": steep ? (n[0] < 0 ? "end" : "start") : "middle" },
       `${f.length_km} km · ${taken}/${f.slots}` + (f.risk_groups ? ` · ${f.risk_groups.join(", ")}` : "")));
     layer.append(item);
   }
   for (const k of run.cuts ?? []) if (k.from_s <= t && t < (k.to_s ?? Infinity)) layer.append(cutMark(run, g, k));
   for (const [name, p] of g.at) {
     layer.append(svg("ellipse", { class: "site", cx: p[0], cy: p[1], rx: 11, ry: 7 }));
-    layer.append(svg("text", { class: "site-name", x: p[0], y: p[1] + 24, "text-anchor": "middle" }, name));
+    layer.append(svg("text", { class: "site-name", x: p[0], y: p[1] + 25, "text-anchor": "middle" }, name));
   }
   return layer;
 }
@@ -206,7 +220,7 @@ function cutMark(run: Run, g: Ground, k: Cut): SVGElement {
   return mark;
 }
 
-const band = 17; // width of a circuit, casing included
+const band = 24; // width of a circuit, casing included
 
 function upper(run: Run, g: Ground, t: number): SVGElement {
   const fibres = new Map(run.fibres.map((f) => [f.name, f]));
@@ -228,7 +242,7 @@ function upper(run: Run, g: Ground, t: number): SVGElement {
       const sign = fibres.get(f)!.ends![0] === sites[i] ? 1 : -1; // a lane is a side of the fibre, not of the way
       return sign * (peers.indexOf(c) - (peers.length - 1) / 2) * (band + 3);
     });
-    const centre = aside(line, offsets);
+    const centre = lane(line, offsets);
     const item = svg("g", { class: "circuit " + look }, svg("title", {}, describe(run, c, look, period?.name)));
     item.append(svg("path", { class: "casing", d: path(centre), "stroke-width": band }));
     item.append(svg("path", { class: "inside", d: path(centre), "stroke-width": band - 4 }));
@@ -260,7 +274,7 @@ const sum = (classes: { bps: number }[]) => classes.reduce((a, x) => a + x.bps, 
 // circuit.
 function ribbons(item: SVGElement, run: Run, c: Circuit, line: Point[], offsets: number[], period: string | undefined): void {
   const side = (band - 5) / 2;
-  item.append(svg("path", { class: "middle", d: path(aside(line, offsets)) }));
+  item.append(svg("path", { class: "middle", d: path(lane(line, offsets)) }));
   c.ends!.forEach((from, way) => {
     let at = 0.5;
     for (const load of loadOf(run, c, from, period)) {
@@ -268,7 +282,7 @@ function ribbons(item: SVGElement, run: Run, c: Circuit, line: Point[], offsets:
       if (wide < 0.25) continue;
       const by = (at + wide / 2) * (way === 0 ? 1 : -1);
       const k = run.classes.findIndex((x) => x.name === load.class) % classColours;
-      item.append(svg("path", { class: "ribbon class-" + k, d: path(aside(line, offsets.map((o) => o + by))), "stroke-width": wide.toFixed(2) }));
+      item.append(svg("path", { class: "ribbon class-" + k, d: path(lane(line, offsets.map((o) => o + by))), "stroke-width": wide.toFixed(2) }));
       at += wide;
     }
   });
@@ -284,9 +298,9 @@ function describe(run: Run, c: Circuit, look: Look, period: string | undefined):
 
 // label names a circuit in the middle of its longest stretch.
 function label(run: Run, c: Circuit, look: Look, centre: Point[], along: string[], period: string | undefined): SVGElement {
-  let best = 0;
+  let best = 1;
   let length = 0;
-  for (let i = 0; i < along.length; i++) {
+  for (let i = 1; i <= along.length; i++) { // the first and the last stretch fan out
     const d = Math.hypot(centre[i + 1][0] - centre[i][0], centre[i + 1][1] - centre[i][1]);
     if (d > length) [best, length] = [i, d];
   }
