@@ -102,14 +102,17 @@ func ctxOr(ctx context.Context, now bool) <-chan struct{} {
 
 func (s *fakeScenario) Batch(ctx context.Context, opt options, seeds []uint64) (*result.Batch, error) {
 	h, a, err := s.outcome(ctx)
-	return &result.Batch{Head: h, Plan: opt.plan, Seeds: seeds, Audit: a}, err
+	return &result.Batch{Head: h, Plan: opt.plan, Seeds: seeds, Audit: a, Gates: fakeGates(string(s.in.data), opt.plan)}, err
 }
 
 func (s *fakeScenario) Compare(ctx context.Context, opt options, base string, plans []string, seeds []uint64) (*result.Comparison, error) {
 	h, a, err := s.outcome(ctx)
-	c := &result.Comparison{Head: h, Base: base, Seeds: seeds, Audit: a}
+	c := &result.Comparison{Head: h, Base: base, Seeds: seeds, Audit: a, Gates: fakeGates(string(s.in.data), append([]string{base}, plans...)...)}
 	for _, p := range plans {
 		c.Plans = append(c.Plans, result.Compared{Plan: p})
+	}
+	if opt.runs {
+		c.Runs = []*result.Run{{Head: h, Plan: base, Seed: seeds[0]}}
 	}
 	return c, err
 }

@@ -8,6 +8,7 @@ import (
 	"fmt"
 	"html"
 	"image/png"
+	"math"
 	"os"
 	"os/exec"
 	"path/filepath"
@@ -296,6 +297,22 @@ func TestHostileNames(t *testing.T) {
 	}
 }
 
+// A comparison that was interrupted before it had a run of each plan has a
+// report all the same.
+func TestReportWithoutRuns(t *testing.T) {
+	c := *samples(t)["comparison"].(*result.Comparison)
+	c.Runs, c.Partial = nil, true
+	for _, plans := range [][]result.Compared{c.Plans, c.Plans[:1]} {
+		c.Plans = plans
+		v := open(t, browser(t), &c, "light", 1200, 900)
+		if !ask[bool](v, `document.querySelector(".verdicts").checkVisibility() && document.querySelector(".partial").checkVisibility()`) {
+			t.Errorf("%d plans: the verdict is not shown as partial", len(plans))
+		}
+		ask[bool](v, `document.querySelector("[data-choose]")?.click(), true`)
+		v.clean()
+	}
+}
+
 // A reader chooses a plan and an instant: what is shown follows, with the
 // keyboard too.
 func TestChoices(t *testing.T) {
@@ -384,5 +401,28 @@ func TestPolicy(t *testing.T) {
 	}
 	if clear := html.UnescapeString(s); !strings.Contains(clear, "script-src '"+hash(program)+"';") || !strings.Contains(clear, "content=\"default-src 'none'; ") {
 		t.Errorf("no strict policy in %.600s", s)
+	}
+}
+
+// A report of 30 classes and 80,000 points is painted within a second of being
+// opened: charts below the window wait until they are near.
+func TestFirstPaint(t *testing.T) {
+	b, r := browser(t), many(t, 30, 80_000)
+	best := math.Inf(1)
+	for range 3 { // the machine may be busy with something else
+		v := open(t, b, r, "light", 1200, 900)
+		v.call(chromedp.Sleep(200 * time.Millisecond))
+		best = min(best, ask[float64](v, `performance.getEntriesByName("first-contentful-paint")[0]?.startTime ?? 1e9`))
+		if n := ask[int](v, `document.querySelectorAll("canvas").length`); n > 60 {
+			t.Errorf("%d charts are drawn before anyone looks", n)
+		}
+		v.clean()
+		if best < 1000 {
+			break
+		}
+	}
+	t.Logf("first paint after %.0f ms", best)
+	if best >= 1000 {
+		t.Errorf("first paint after %.0f ms, want 1000", best)
 	}
 }

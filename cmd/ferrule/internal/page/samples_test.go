@@ -2,6 +2,7 @@ package page
 
 import (
 	"context"
+	"fmt"
 	"strings"
 	"sync"
 	"testing"
@@ -56,7 +57,7 @@ func load(t testing.TB) *scenarios.Scenario {
 // and must not be changed.
 func samples(t testing.TB) map[string]result.Result {
 	t.Helper()
-	made.Do(func() { all = make3(t) })
+	made.Do(func() { all = study3(t) })
 	if all == nil {
 		t.Fatal("there are no samples: see the first failure")
 	}
@@ -68,7 +69,7 @@ var (
 	all  map[string]result.Result
 )
 
-func make3(t testing.TB) map[string]result.Result {
+func study3(t testing.TB) map[string]result.Result {
 	t.Helper()
 	sc, ctx := load(t), context.Background()
 	r, err := study.Run(ctx, sc, study.Options{})
@@ -106,4 +107,38 @@ func hostile(t testing.TB, r result.Result) result.Result {
 		t.Fatal(err)
 	}
 	return back
+}
+
+// many is a run with so many classes, each with series of points bins in all.
+func many(t testing.TB, classes, points int) *result.Run {
+	t.Helper()
+	small := samples(t)["run"].(*result.Run)
+	r := *small
+	r.Classes, r.Tails, r.Series, r.Aggregates = nil, nil, nil, nil
+	for i := range classes {
+		name := fmt.Sprintf("class-%02d", i)
+		c := small.Classes[i%2]
+		c.Name = name
+		r.Classes = append(r.Classes, c)
+		for _, x := range small.Tails {
+			if x.Class == small.Classes[i%2].Name {
+				x.Class = name
+				r.Tails = append(r.Tails, x)
+			}
+		}
+		a := small.Aggregates[0]
+		a.Name, a.Class = "of "+name, name
+		r.Aggregates = append(r.Aggregates, a)
+		for _, s := range small.Series {
+			if s.Class == small.Classes[i%2].Name {
+				s.Class = name
+				r.Series = append(r.Series, s)
+				points -= len(s.OfferedPackets)
+			}
+		}
+	}
+	if points > 0 {
+		t.Fatalf("%d points are missing", points)
+	}
+	return &r
 }

@@ -14,12 +14,13 @@ let charts: { destroy(): void }[] = [];
 
 function start(): void {
   doc = JSON.parse(byId("document").textContent!) as Doc;
-  chosen = doc.runs.length > 1 ? 1 : 0;
+  chosen = Number(document.querySelector<HTMLElement>("[data-of]")?.dataset.of ?? 0);
   const from = location.hash.slice(1);
-  doc.runs.forEach((r, i) => {
-    if (i > 0 && encodeURIComponent(r.plan) === from) chosen = i;
-  });
-  for (const b of document.querySelectorAll<HTMLElement>("[data-choose]")) b.addEventListener("click", () => choose(Number(b.dataset.choose)));
+  for (const b of document.querySelectorAll<HTMLElement>("[data-choose]")) {
+    const plan = encodeURIComponent(b.textContent!);
+    if (plan === from) chosen = Number(b.dataset.choose);
+    b.addEventListener("click", () => choose(Number(b.dataset.choose), plan));
+  }
   matchMedia("(prefers-color-scheme: dark)").addEventListener("change", show);
   let wait = 0;
   let wide = document.body.clientWidth;
@@ -33,9 +34,9 @@ function start(): void {
   show();
 }
 
-function choose(run: number): void {
+function choose(run: number, plan: string): void {
   chosen = run;
-  history.replaceState(null, "", "#" + encodeURIComponent(doc.runs[run].plan));
+  history.replaceState(null, "", "#" + plan);
   show();
 }
 
@@ -45,7 +46,7 @@ function show(): void {
   for (const e of document.querySelectorAll<HTMLElement>("[data-of]")) e.hidden = Number(e.dataset.of) !== chosen;
   for (const c of charts.splice(0)) c.destroy();
   pending = [];
-  if (doc.runs.length === 0) return;
+  if (doc.runs.length <= chosen) return; // an interrupted study has none
   const runs = chosen === 0 ? [doc.runs[0]] : [doc.runs[0], doc.runs[chosen]];
   const all = looks(runs);
   showMap(runs);

@@ -130,6 +130,10 @@ const words: Record<Look, string> = {
 
 // draw fills a drawing with the network of run as it stood at t.
 export function draw(into: SVGElement, run: Run, t: number, used: Map<string, number>): void {
+  if (!run.sites?.length) {
+    into.replaceChildren();
+    return;
+  }
   const g = ground(run);
   into.setAttribute("viewBox", `0 0 ${width} ${Math.round(g.height)}`);
   into.replaceChildren(decks(g), stems(g), lower(run, g, t, used), upper(run, g, t));
