@@ -16,6 +16,8 @@ const (
 	Move                      // send Ways over the chain Circuits
 	Return                    // let Ways go by the tables again
 	Request                   // hold Slots between Ends for Hold; no packets
+	Drain                     // lead everything round Site that does not begin or end there
+	Undrain                   // let Site be passed again
 )
 
 // String names the kind as a step of a plan does.
@@ -33,6 +35,10 @@ func (k OrderKind) String() string {
 		return "return"
 	case Request:
 		return "request"
+	case Drain:
+		return "drain"
+	case Undrain:
+		return "undrain"
 	default:
 		panic("controller: unknown kind of order")
 	}
@@ -48,6 +54,7 @@ const (
 	CircuitDown                      // Circuit is down
 	MoveDone                         // Way goes over circuits of its own
 	StepDone                         // the step named Step is done
+	StepOver                         // the step named Step is done, or has failed
 )
 
 // Condition is what must hold before an order is taken up. It is looked at
@@ -73,5 +80,7 @@ type Order struct {
 	Rate      nodes.Rate        // Resize: what its ports send at; 0: in proportion to Slots
 	KeepOrder bool              // Move, Return: hold packets so that none overtakes another
 	Ends      [2]nodes.SiteID   // Request
+	Site      nodes.SiteID      // Drain, Undrain
+	Undo      bool              // when a step with Undo fails, those with Undo that are done are taken back
 	Hold      des.Time          // Request: how long the slots are held
 }

@@ -8,15 +8,17 @@ type Op uint16
 
 // Ops that the network itself books at a site.
 const (
-	OpNone      Op = iota
-	OpLightLost    // a circuit's receive side went dark: Circuit, N = incarnation
-	OpLightBack    // light came back on it: Circuit, N = incarnation
-	OpFibreDark    // the receive side of an adjacent fibre went dark: Fibre
-	OpFibreLit     // light came back on it: Fibre
-	OpOrder        // an order from outside: Ref
-	OpRelease      // a hold at the ingress ends; no agent sees it
-	OpSwitch       // the tail of a 1+1 circuit changes over: Circuit, N = incarnation it passes then; no agent sees it
-	OpReturn       // it goes back to its first trail: Circuit, A = number; no agent sees it
+	OpNone          Op = iota
+	OpLightLost        // a circuit's receive side went dark: Circuit, N = incarnation
+	OpLightBack        // light came back on it: Circuit, N = incarnation
+	OpFibreDark        // the receive side of an adjacent fibre went dark: Fibre
+	OpFibreLit         // light came back on it: Fibre
+	OpOrder            // an order from outside: Ref
+	OpRelease          // a hold at the ingress ends; no agent sees it
+	OpEquipmentLost    // the router here stopped working, or the port of Circuit
+	OpEquipmentBack    // it works again
+	OpSwitch           // the tail of a 1+1 circuit changes over: Circuit, N = incarnation it passes then; no agent sees it
+	OpReturn           // it goes back to its first trail: Circuit, A = number; no agent sees it
 	OpFirstAgent
 )
 

@@ -25,34 +25,37 @@ const (
 	inSteps
 )
 
-// verbKeys are the keys of verbs with their details and the lists they may
-// stand in; those without a verb are not carried out yet.
-var verbKeys = []struct {
+// verbKey is a key of an act that says what is done.
+type verbKey struct {
 	key     string
 	verb    Verb
 	details []string
 	in      []kindOfList
-	ready   bool
-}{
-	{"cut", VerbCut, []string{"where", "from", "to"}, []kindOfList{inTimeline}, true},
-	{"repair", VerbRepair, []string{"where", "from", "to"}, []kindOfList{inTimeline}, true},
-	{"set-up", VerbSetUp, nil, []kindOfList{inTimeline, inSteps}, true},
-	{"circuit", VerbSetUp, nil, []kindOfList{inPlace}, true},
-	{"tear-down", VerbTearDown, nil, []kindOfList{inTimeline, inPlace, inSteps}, true},
-	{"resize", VerbResize, []string{"slots", "container", "channel"}, []kindOfList{inTimeline, inPlace, inSteps}, true},
-	{"move", VerbMove, []string{"onto", "order"}, []kindOfList{inTimeline, inPlace, inSteps}, true},
-	{"return", VerbReturn, []string{"order"}, []kindOfList{inTimeline, inPlace, inSteps}, true},
-	{"scale", VerbScale, []string{"by"}, []kindOfList{inTimeline}, true},
-	{"fail", 0, nil, []kindOfList{inTimeline}, false},
-	{"mend", 0, nil, []kindOfList{inTimeline}, false},
-	{"drain", 0, nil, []kindOfList{inTimeline, inSteps}, false},
+}
+
+// verbKeys are the keys of verbs with their details and the lists they may
+// stand in.
+var verbKeys = []verbKey{
+	{"cut", VerbCut, []string{"where", "from", "to"}, []kindOfList{inTimeline}},
+	{"repair", VerbRepair, []string{"where", "from", "to"}, []kindOfList{inTimeline}},
+	{"set-up", VerbSetUp, nil, []kindOfList{inTimeline, inSteps}},
+	{"circuit", VerbSetUp, nil, []kindOfList{inPlace}},
+	{"tear-down", VerbTearDown, nil, []kindOfList{inTimeline, inPlace, inSteps}},
+	{"resize", VerbResize, []string{"slots", "container", "channel"}, []kindOfList{inTimeline, inPlace, inSteps}},
+	{"move", VerbMove, []string{"onto", "order"}, []kindOfList{inTimeline, inPlace, inSteps}},
+	{"return", VerbReturn, []string{"order"}, []kindOfList{inTimeline, inPlace, inSteps}},
+	{"scale", VerbScale, []string{"by"}, []kindOfList{inTimeline}},
+	{"fail", VerbFail, []string{"where", "from", "to"}, []kindOfList{inTimeline}},
+	{"mend", VerbMend, []string{"where", "from", "to"}, []kindOfList{inTimeline}},
+	{"drain", VerbDrain, nil, []kindOfList{inTimeline, inSteps}},
+	{"undrain", VerbUndrain, nil, []kindOfList{inTimeline, inSteps}},
 }
 
 // events are what an act can wait for, and the verb that brings it about.
 var events = []struct {
 	word string
 	verb Verb
-}{{"up", VerbSetUp}, {"gone", VerbTearDown}, {"resized", VerbResize}, {"moved", VerbMove}, {"returned", VerbReturn}}
+}{{"up", VerbSetUp}, {"gone", VerbTearDown}, {"resized", VerbResize}, {"moved", VerbMove}, {"returned", VerbReturn}, {"drained", VerbDrain}, {"undrained", VerbUndrain}}
 
 // actList is one list of acts at work, and the circuits it knows.
 type actList struct {
@@ -124,12 +127,13 @@ func (l *actList) resolve(earlier []Act) []Act {
 	}
 	for j, i := range waits {
 		v := acts[len(earlier)+j].Verb
-		outside := v == VerbCut || v == VerbRepair || v == VerbScale // noted by when
+		outside := v.Outside() // noted by when
 		if q := l.list.item(i).field("after"); q.given() && l.kind != inPlace && !outside {
 			acts[len(earlier)+j].After = l.after(q, l.raw[i].After, acts, len(earlier)+j)
 		}
 	}
 	l.rings(acts, len(earlier), waits)
+	l.agree(acts, len(earlier), waits)
 	return acts
 }
 
@@ -187,6 +191,16 @@ func (l *actList) act(i int) (a Act, ok bool) {
 		a.Factor = float64(within(p.field("by"), raw.By, 0, 1000, 1, func(x percent) string {
 			return fmt.Sprintf("%g%%", float64(x)*100)
 		}))
+	case VerbFail:
+		l.fail(p, q, raw.Fail, raw, &a)
+	case VerbMend:
+		l.fail(p, q, raw.Mend, raw, &a)
+	case VerbDrain:
+		a.Subject = raw.Drain
+		a.Site = nodes.SiteID(l.r.sites.find(q, raw.Drain))
+	case VerbUndrain:
+		a.Subject = raw.Undrain
+		a.Site = nodes.SiteID(l.r.sites.find(q, raw.Undrain))
 	default:
 		panic("scenarios: unknown verb " + a.Verb.String())
 	}
@@ -200,7 +214,7 @@ func (l *actList) verb(p *place) int {
 	var words []string
 	for i := range verbKeys {
 		v := &verbKeys[i]
-		if slices.Contains(v.in, l.kind) && v.ready {
+		if slices.Contains(v.in, l.kind) {
 			words = append(words, v.key)
 		}
 		q := p.field(v.key)
@@ -221,8 +235,6 @@ func (l *actList) verb(p *place) int {
 	v := &verbKeys[found]
 	q := p.field(v.key)
 	switch {
-	case !v.ready:
-		q.fault("a later version will carry it out; use cut and repair meanwhile", "%s is not available yet", v.key)
 	case slices.Contains(v.in, l.kind):
 		return found
 	case v.key == "set-up":
@@ -250,7 +262,7 @@ func (l *actList) when(p *place, raw *rawAct, a *Act) {
 	switch {
 	case at.given() && after.given():
 		after.fault("write at or after", "stands beside at")
-	case after.given() && (p.field("cut").given() || p.field("repair").given() || p.field("scale").given()):
+	case after.given() && slices.ContainsFunc(verbKeys, func(v verbKey) bool { return v.verb.Outside() && p.field(v.key).given() }):
 		after.fault("write at: and an instant", "what happens from outside waits for nothing")
 	case at.given():
 		a.At = value(raw.At, 0)

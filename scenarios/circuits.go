@@ -10,10 +10,11 @@ import (
 
 // Words for the types that nodes has, in the order of their values.
 var (
-	carriesWords  = []string{"routed", "moved"}
-	recoveryWords = []string{"none", "1+1", "restore"}
-	whenDownWords = []string{"return", "wait", "drop"}
-	chooseWords   = []string{"least-delay", "fewest-routers", "most-spare", "apart-from"}
+	carriesWords     = []string{"routed", "moved"}
+	recoveryWords    = []string{"none", "1+1", "restore"}
+	whenDownWords    = []string{"return", "wait", "drop"}
+	whenBlockedWords = []string{"stop", "undo"}
+	chooseWords      = []string{"least-delay", "fewest-routers", "most-spare", "apart-from"}
 )
 
 // resolveCircuits reads the circuits that stand from the start.

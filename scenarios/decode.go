@@ -187,8 +187,6 @@ func decodeValue(data any, typ reflect.Type) (out any, f *fault, done bool) {
 	case reflect.TypeFor[codePoint]():
 		c, f := decodeCodePoint(data)
 		return c, f, true
-	case reflect.TypeFor[anything]():
-		return anything{true}, nil, true
 	}
 	return decodePlain(data, typ)
 }

@@ -108,6 +108,23 @@ const (
 	VerbMove
 	VerbReturn
 	VerbScale
+	VerbFail
+	VerbMend
+	VerbDrain
+	VerbUndrain
+)
+
+// Part is what fails or is mended.
+type Part uint8
+
+// Parts of the network. A router fails without the cross-connect beside it, a
+// site as a whole; a port is one end of a circuit.
+const (
+	PartNone Part = iota
+	PartRouter
+	PartSite
+	PartPort
+	PartFibre
 )
 
 var (
@@ -123,7 +140,7 @@ var (
 	framingWords   = []string{"gfp", "none"}
 	orderWords     = []string{"free", "kept"}
 	fibreWaysWords = []string{"both", "out", "back"}
-	verbWords      = []string{"cut", "repair", "set-up", "tear-down", "resize", "move", "return", "scale"}
+	verbWords      = []string{"cut", "repair", "set-up", "tear-down", "resize", "move", "return", "scale", "fail", "mend", "drain", "undrain"}
 )
 
 // word returns the word of value i, which must be one of words.
@@ -163,3 +180,16 @@ func (w FibreWays) String() string { return word(fibreWaysWords, uint8(w)) }
 
 // String returns the word of the file.
 func (v Verb) String() string { return word(verbWords, uint8(v)) }
+
+// Outside reports whether an act of this verb happens from outside, at an
+// instant and without the controller.
+func (v Verb) Outside() bool {
+	switch v {
+	case VerbCut, VerbRepair, VerbScale, VerbFail, VerbMend:
+		return true
+	case VerbSetUp, VerbTearDown, VerbResize, VerbMove, VerbReturn, VerbDrain, VerbUndrain:
+		return false
+	default:
+		panic("scenarios: unknown verb " + v.String())
+	}
+}

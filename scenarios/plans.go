@@ -105,6 +105,10 @@ func (r *resolver) plan(p *place, raw *rawPlan, on, out *Plan) {
 	out.Steps = steps.resolve(on.Steps)
 	out.Circuits = steps.circuits
 	out.Moves = slices.Clone(on.Moves)
+	out.Undo = on.Undo
+	if q := p.field("when-blocked"); q.given() {
+		out.Undo = r.choice(q, raw.WhenBlocked, whenBlockedWords, 0) == 1
+	}
 	r.putInPlace(out, len(on.InPlace), p.field("in-place"))
 	r.capacity(out.Circuits, out)
 }

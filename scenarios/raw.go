@@ -199,6 +199,8 @@ type rawPlan struct {
 	On      string   `mapstructure:"on"`
 	InPlace []rawAct `mapstructure:"in-place"`
 	Steps   []rawAct `mapstructure:"steps"`
+
+	WhenBlocked string `mapstructure:"when-blocked"`
 }
 
 // rawAct has one field for each verb and all their details.
@@ -215,9 +217,10 @@ type rawAct struct {
 	Move     string     `mapstructure:"move"`
 	Return   string     `mapstructure:"return"`
 	Scale    string     `mapstructure:"scale"`
-	Fail     anything   `mapstructure:"fail"`
-	Mend     anything   `mapstructure:"mend"`
-	Drain    anything   `mapstructure:"drain"`
+	Fail     string     `mapstructure:"fail"`
+	Mend     string     `mapstructure:"mend"`
+	Drain    string     `mapstructure:"drain"`
+	Undrain  string     `mapstructure:"undrain"`
 
 	Where     string      `mapstructure:"where"`
 	From      string      `mapstructure:"from"`
@@ -245,13 +248,12 @@ type (
 		Bytes   nodes.Bytes
 		Packets int
 	}
-	anything struct{ given bool } // is not read yet
 )
 
 // Types of leaves that may be mappings in the file though they are decoded in
 // one go.
 var opaque = map[reflect.Type]bool{
-	reflect.TypeFor[timeLaw](): true, reflect.TypeFor[byteLaw](): true, reflect.TypeFor[anything](): true,
+	reflect.TypeFor[timeLaw](): true, reflect.TypeFor[byteLaw](): true,
 }
 
 // Types of leaves that are one word or number in the file though they are

@@ -230,6 +230,11 @@ type Act struct {
 	Where  nodes.Length // from end A of the fibre; the middle if not given; 0 if several fibres: use WhereOn
 	Ways   FibreWays
 
+	// VerbFail, VerbMend: the part; for PartFibre Fibres, Where and Ways too,
+	// for PartPort also Circuit. VerbDrain, VerbUndrain: the site.
+	Part Part
+	Site nodes.SiteID
+
 	// VerbSetUp, VerbTearDown, VerbResize: the circuit, and for a resize its
 	// new size.
 	Circuit nodes.CircuitID
@@ -276,6 +281,7 @@ type Plan struct {
 
 	InPlace []Act // done before the run starts: set-up, tear-down, resize, move, return
 	Steps   []Act // done by the controller during the run
+	Undo    bool  // when a step fails, what the others have done is taken back
 
 	// Moves is the outcome of InPlace: which ways are carried by which chain
 	// when the run starts, ascending by way.

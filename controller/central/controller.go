@@ -15,6 +15,8 @@ type Controller struct {
 
 	circuits []circuit
 	fibres   []fibre
+	sites    []site
+	drains   []drain
 	free     []int64           // slots it believes free on each fibre, each way
 	spare    []path.Set        // whole channels it believes free on each fibre
 	ways     []way             // by way
@@ -37,6 +39,7 @@ type Controller struct {
 	tablesQueued bool // a job for new tables waits
 	tablesSent   int  // tables not confirmed yet
 	changed      bool // steps may have become possible
+	undoing      bool // a step has failed, and those that belong to it are taken back
 	deaf         bool // a command has gone without an answer since all sites were last asked
 
 	x   nodes.Local // during Handle only
@@ -62,6 +65,9 @@ func (c *Controller) Handle(x nodes.Local, now des.Time, m nodes.Message) {
 	case opFibreAlarm:
 		c.hear(&m)
 		c.fibreAlarm(&m)
+	case opEquipment:
+		c.hear(&m)
+		c.equipmentAlarm(&m)
 	case opComputed:
 		c.computed()
 	case opUnplaced:
@@ -81,6 +87,7 @@ func (c *Controller) Handle(x nodes.Local, now des.Time, m nodes.Message) {
 	default:
 		c.el.Handle(x, now, m)
 	}
+	c.checkDrains()
 	c.wake()
 	c.x = nil
 }

@@ -122,6 +122,10 @@ func (e *Element) dispatch(m *nodes.Message) {
 		e.raise(nodes.Message{Op: opFibreAlarm, Fibre: m.Fibre, B: alarmLost})
 	case nodes.OpFibreLit:
 		e.raise(nodes.Message{Op: opFibreAlarm, Fibre: m.Fibre, B: alarmBack})
+	case nodes.OpEquipmentLost:
+		e.raise(nodes.Message{Op: opEquipment, Circuit: m.Circuit, B: alarmLost})
+	case nodes.OpEquipmentBack:
+		e.raise(nodes.Message{Op: opEquipment, Circuit: m.Circuit, B: alarmBack})
 	case opHeard:
 		e.heard(m.A)
 	case opAsk:

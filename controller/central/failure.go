@@ -115,6 +115,10 @@ func (c *Controller) restore(list []nodes.CircuitID, avoid []nodes.FibreID) {
 		if k.state != controller.Down || c.k.plant.Circuits[id].Recovery != nodes.RecoveryRestore {
 			continue
 		}
+		if why := c.unfit(id); why != "" {
+			k.reason = why
+			continue
+		}
 		if k.task != nodes.None {
 			if c.tasks[k.task].kind != taskRevive {
 				continue
@@ -237,7 +241,7 @@ func (c *Controller) hasDead(route []nodes.FibreID) bool {
 // route, once both have light.
 func (c *Controller) revive(id nodes.CircuitID) {
 	k := &c.circuits[id]
-	if k.state != controller.Down || k.task != nodes.None || !k.held.holds() || k.endsDark() {
+	if k.state != controller.Down || k.task != nodes.None || !k.held.holds() || k.endsDark() || c.unfit(id) != "" {
 		return
 	}
 	c.begin(task{kind: taskRevive, circuit: id, step: nodes.None}, rankOrder)

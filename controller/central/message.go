@@ -23,6 +23,7 @@ const (
 	// Messages of the agents.
 	opAnswer     // to command A: N is an answer, Fibre what was refused
 	opAlarm      // light of Circuit, incarnation N: B is alarmLost or alarmBack
+	opEquipment  // the router there, or its port of Circuit: B likewise
 	opFibreAlarm // light of Fibre: B likewise
 
 	// What an agent tells itself later.

@@ -129,8 +129,18 @@ func (c *Controller) steerGoesOn(id int32) {
 		c.setChain(w, chain)
 		c.leave(w, old)
 	}
-	c.x.Note(c.steps[t.step].order.Kind.String()+" done", c.steps[t.step].order.Name, fmt.Sprintf("%d ways after %s", len(t.ways), people(c.now-t.begun)))
+	what, name := c.taskName(t)
+	c.x.Note(what+" done", name, fmt.Sprintf("%d ways after %s", len(t.ways), people(c.now-t.begun)))
 	c.end(id, "")
+}
+
+// taskName words what a move or a return is for.
+func (c *Controller) taskName(t *task) (what, name string) {
+	if t.step == nodes.None {
+		return controller.Return.String(), c.wayName(t.ways[0])
+	}
+	o := c.steps[t.step].order
+	return o.Kind.String(), o.Name
 }
 
 // steerFails undoes a move or a return that could not be brought to its end.
@@ -152,7 +162,8 @@ func (c *Controller) steerFails(id int32, why string) {
 			c.leave(w, nil)
 		}
 	}
-	c.x.Note("move failed", c.steps[t.step].order.Name, why)
+	_, name := c.taskName(t)
+	c.x.Note("move failed", name, why)
 	c.end(id, why)
 }
 

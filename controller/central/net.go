@@ -207,6 +207,7 @@ func (c *Controller) clone() *Controller {
 	d := *c
 	d.el = c.el.clone()
 	d.circuits, d.fibres = slices.Clone(c.circuits), slices.Clone(c.fibres)
+	d.sites, d.drains = slices.Clone(c.sites), slices.Clone(c.drains)
 	d.free, d.spare = slices.Clone(c.free), slices.Clone(c.spare)
 	for i := range d.spare {
 		d.spare[i] = slices.Clone(d.spare[i])

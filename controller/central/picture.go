@@ -23,6 +23,8 @@ type circuit struct {
 	rate      nodes.Rate // its ports send at
 	whole     nodes.Rate // with all slots it should hold
 	preempted int
+	portDead  [2]bool         // the port at an end, as it has told
+	portHeard [2]int64        // last alarm of each end about it
 	home      []nodes.FibreID // first route
 	delay     des.Time        // of light over the route in use, or the last one
 	usable    bool            // packets may go over it
@@ -79,6 +81,7 @@ func (c *Controller) newPicture() {
 		})
 	}
 	c.fibres = make([]fibre, len(p.Fibres))
+	c.sites = make([]site, len(p.Sites))
 	edges := make([]path.Edge, len(p.Fibres))
 	for i := range p.Fibres {
 		f := &p.Fibres[i]
@@ -195,6 +198,11 @@ func (c *Controller) find(id nodes.CircuitID, want *search) (holding, string) {
 	}
 	for _, v := range avoid.sites {
 		s.mask.Nodes.Add(int(v))
+	}
+	for v := range c.sites {
+		if c.sites[v].drained && !slices.Contains(p.Ends[:], nodes.SiteID(v)) {
+			s.mask.Nodes.Add(v)
+		}
 	}
 	q := path.Query{From: int32(p.Ends[0]), To: int32(p.Ends[1]), Avoid: s.mask, Width: want.width, Need: int64(h.slots)}
 	q.By = c.objective(p, want.slots < c.circuits[id].slots)

@@ -181,7 +181,7 @@ func (c *Controller) upState(id nodes.CircuitID) controller.CircuitState {
 // With told, its ends stop sending by themselves when all is lost.
 func (c *Controller) assess(id nodes.CircuitID, told bool) {
 	k := &c.circuits[id]
-	if lost, _ := c.impaired(k); lost {
+	if lost, _ := c.impaired(k); lost || c.unfit(id) != "" {
 		if carries(k.state) || k.state == controller.Down {
 			c.fails(id, told)
 		}

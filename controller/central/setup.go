@@ -14,7 +14,13 @@ func (c *Controller) route(id int32) {
 	k := &c.circuits[t.circuit]
 	p := &c.k.plant.Circuits[t.circuit]
 	along := p.Along
+	if why := c.unfit(t.circuit); why != "" {
+		c.blocked(id, why)
+		return
+	}
 	switch {
+	case t.away:
+		along = nil
 	case t.kind == taskRevert:
 		along = k.home
 	case t.kind == taskRestore || t.tries > 0:
@@ -113,7 +119,7 @@ func (c *Controller) activated(id int32) {
 func (c *Controller) comesUp(id nodes.CircuitID, what, detail string, newRoute bool) {
 	k := &c.circuits[id]
 	was := k.usable
-	k.usable = true
+	k.usable, k.reason = true, ""
 	c.enter(id, c.upState(id))
 	c.x.Note(what, c.k.circuitName(id), detail)
 	if c.k.plant.Circuits[id].Carries == nodes.CarriesRouted && (!was || newRoute) {
@@ -173,7 +179,11 @@ func (c *Controller) blocked(id int32, why string) {
 		c.enter(t.circuit, controller.Down)
 		c.x.Note("not restorable", name, why)
 	case taskRevert:
-		c.x.Note("stays", name, "on its new route: "+why)
+		if t.away {
+			c.x.Note("stays", name, "on its route: "+why)
+		} else {
+			c.x.Note("stays", name, "on its new route: "+why)
+		}
 	default:
 		panic("central: this task seeks no route")
 	}

@@ -18,6 +18,8 @@ type step struct {
 	begun  des.Time
 	done   des.Time
 	detail string
+	before before // what it is about to change
+	own    bool   // an order of the controller's own
 }
 
 // newStep is an order that has not been given yet.
@@ -71,7 +73,7 @@ func (c *Controller) inHand(o *controller.Order) bool {
 		return c.circuits[o.Circuit].task != nodes.None || c.movesOver(o.Circuit)
 	case controller.Move, controller.Return:
 		return slices.ContainsFunc(o.Ways, c.moving)
-	case controller.Request:
+	case controller.Request, controller.Drain, controller.Undrain:
 		return false
 	default:
 		panic("central: unknown kind of order")
@@ -115,10 +117,14 @@ func (c *Controller) condition(i int) (holds bool, never string) {
 		return a.Kind == controller.CircuitUp && up || a.Kind == controller.CircuitDown && down, ""
 	case controller.MoveDone:
 		return c.ways[a.Way].chain != nil, ""
-	case controller.StepDone:
+	case controller.StepDone, controller.StepOver:
 		for j := range c.steps {
 			if s := &c.steps[j]; j != i && s.order.Name == a.Step {
-				if s.state == controller.Failed || s.state == controller.Never {
+				over := s.state == controller.Failed || s.state == controller.Never
+				if over && a.Kind == controller.StepOver {
+					return true, ""
+				}
+				if over {
 					return false, "step " + a.Step + " " + s.state.String() + ": " + s.detail
 				}
 				return s.state == controller.Done, ""
@@ -146,6 +152,7 @@ func (c *Controller) setUpAhead(id nodes.CircuitID, i int) bool {
 func (c *Controller) take(i int) {
 	o := c.steps[i].order
 	c.x.Note("order", o.Name, o.Kind.String())
+	c.remember(&c.steps[i])
 	why := ""
 	switch o.Kind {
 	case controller.SetUp:
@@ -161,6 +168,8 @@ func (c *Controller) take(i int) {
 		why = c.takeResize(i, o)
 	case controller.Move, controller.Return:
 		why = c.takeMove(i, o)
+	case controller.Drain, controller.Undrain:
+		why = c.takeDrain(i, o)
 	case controller.Request:
 		c.enqueue(job{kind: jobRequest, rank: rankOrder, stream: int32(len(c.streams) - 1), step: int32(i), number: uint64(i), hold: o.Hold})
 	default:
@@ -238,4 +247,11 @@ func (c *Controller) stepEnds(i int32, failed string) {
 	}
 	c.x.Note("step "+s.state.String(), s.order.Name, failed)
 	c.changed = true
+	switch {
+	case !s.order.Undo:
+	case c.undoing && failed == "":
+		c.takeBack(int(i))
+	case !c.undoing && failed != "":
+		c.undo(i)
+	}
 }

@@ -57,6 +57,10 @@ func sameTable(a, b *nodes.Table) bool {
 	return slices.EqualFunc(a.Next, b.Next, func(x, y []nodes.CircuitID) bool { return slices.Equal(x, y) })
 }
 
+// drainedMetric is what a circuit that ends at a drained site costs more, so
+// that only what begins or ends there goes over it.
+const drainedMetric = 1 << 50
+
 // computeTables finds the next hops of every site to every site over routed
 // circuits that packets may go over. The metric of a circuit is its own or the
 // delay of its route in picoseconds.
@@ -72,6 +76,11 @@ func (c *Controller) computeTables() []*nodes.Table {
 		metric := p.Metric
 		if metric == 0 {
 			metric = max(1, int64(c.circuits[i].delay))
+		}
+		for _, s := range p.Ends {
+			if c.sites[s].drained {
+				metric += drainedMetric
+			}
 		}
 		edges = append(edges, path.Edge{A: int32(p.Ends[0]), B: int32(p.Ends[1]), Cost: metric})
 		ids = append(ids, nodes.CircuitID(i))

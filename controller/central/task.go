@@ -50,6 +50,7 @@ type task struct {
 	begun   des.Time
 	tries   int // set-ups tried
 	avoid   avoided
+	away    bool // revert: not to the first route, but off a drained site
 
 	h    holding // what is being set up; reserved from phaseConnect on
 	sent int     // sites commanded, in sequence

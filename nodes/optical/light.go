@@ -46,8 +46,14 @@ func (l *Light) Cut(f int, place, now des.Time, dirs Dirs) (span int) {
 
 // Repair ends every span of fibre f that lasts; it reports their numbers.
 func (l *Light) Repair(f int, now des.Time) (spans []int) {
+	return l.End(f, now, func(int, Span) bool { return true })
+}
+
+// End ends the spans of fibre f that last and for which which holds; it reports
+// their numbers.
+func (l *Light) End(f int, now des.Time, which func(i int, s Span) bool) (spans []int) {
 	for i := range l.spans[f] {
-		if s := &l.spans[f][i]; s.To == des.Never {
+		if s := &l.spans[f][i]; s.To == des.Never && which(i, *s) {
 			s.To = now
 			spans = append(spans, i)
 		}

@@ -17,25 +17,29 @@ const (
 	actMeasure                // ends the warm-up; its own
 	actEnd                    // the sources have ended; its own
 	ActRepair
+	ActMend
 	ActCut
+	ActFail
 	ActScale
 	ActOrder
 )
 
 // Act is something that happens from outside at one instant, between events.
 type Act struct {
-	At     des.Time
-	Kind   ActKind
-	Name   string        // for the log and the periods; may be empty
-	Fibre  nodes.FibreID // cut, repair
-	Where  des.Time      // cut: light from the fibre's first end to the place
-	OneWay bool          // cut: only direction Dir goes dark
-	Dir    nodes.Direction
-	Ways   []uint16     // scale
-	Factor float64      // scale
-	Site   nodes.SiteID // order: where the controller stands
-	Ref    any          // order: what it is told; nil if it knows already
-	where  des.Time     // settled: the quiet since
+	At      des.Time
+	Kind    ActKind
+	Name    string        // for the log and the periods; may be empty
+	Fibre   nodes.FibreID // cut, repair
+	Where   des.Time      // cut: light from the fibre's first end to the place
+	OneWay  bool          // cut: only direction Dir goes dark
+	Dir     nodes.Direction
+	Ways    []uint16        // scale
+	Factor  float64         // scale
+	Site    nodes.SiteID    // order: where the controller stands; fail, mend
+	Part    Part            // fail, mend
+	Circuit nodes.CircuitID // fail, mend: of PartPort
+	Ref     any             // order: what it is told; nil if it knows already
+	where   des.Time        // settled: the quiet since
 }
 
 // dated is an act in the agenda of acts.
@@ -102,6 +106,13 @@ func (n *Network) act(now des.Time, a *dated) {
 	case ActRepair:
 		n.open(now, Mend, a.Name)
 		n.repair(now, &a.Act)
+	case ActFail:
+		n.faults++
+		n.open(now, Hit, a.Name)
+		n.fail(now, &a.Act)
+	case ActMend:
+		n.open(now, Mend, a.Name)
+		n.mend(now, &a.Act)
 	case ActScale:
 		n.open(now, Change, a.Name)
 		for _, w := range a.Ways {
@@ -202,7 +213,9 @@ func (n *Network) cut(now des.Time, a *Act) {
 	}
 	span := n.light.Cut(int(f), a.Where, now, dirs)
 	n.ways.Changed(now, func(g nodes.FibreID) bool { return n.light.Dark(int(g), now) })
-	n.log = append(n.log, nodes.Event{At: now, Site: nodes.None, What: "cut", Subject: fibre.Name, Detail: n.place(f, a.Where)})
+	if a.Kind != ActFail {
+		n.log = append(n.log, nodes.Event{At: now, Site: nodes.None, What: "cut", Subject: fibre.Name, Detail: n.place(f, a.Where)})
+	}
 	for i, end := range fibre.Ends {
 		if !dirs.Has(fibre.From(fibre.Other(end))) {
 			continue
@@ -237,17 +250,23 @@ func (n *Network) place(f nodes.FibreID, light des.Time) string {
 	return fmt.Sprintf("%.4g km from %s", km, n.plant.Sites[fibre.Ends[0]].Name)
 }
 
-// repair ends all darkness of a fibre.
+// repair ends all darkness of a fibre but that of a failed site.
 func (n *Network) repair(now des.Time, a *Act) {
-	f := a.Fibre
+	if n.repairOnly(now, a.Fibre, func(des.Time) bool { return true }) {
+		n.log = append(n.log, nodes.Event{At: now, Site: nodes.None, What: "repair", Subject: n.plant.Fibres[a.Fibre].Name})
+	}
+}
+
+// relit tells of spans of darkness of fibre f that have ended.
+func (n *Network) relit(now des.Time, f nodes.FibreID, spans []int) {
 	fibre := &n.plant.Fibres[f]
-	spans := n.light.Repair(int(f), now)
 	if len(spans) == 0 {
 		return
 	}
-	n.broken--
+	if !n.light.Dark(int(f), now) {
+		n.broken--
+	}
 	n.ways.Changed(now, func(g nodes.FibreID) bool { return n.light.Dark(int(g), now) })
-	n.log = append(n.log, nodes.Event{At: now, Site: nodes.None, What: "repair", Subject: fibre.Name})
 	for i, end := range fibre.Ends {
 		gone, noticed := des.Time(0), false // light from the farthest dark place
 		for _, j := range spans {
@@ -267,7 +286,7 @@ func (n *Network) repair(now des.Time, a *Act) {
 		}
 	}
 	n.eachPipe(f, func(to *Site, p *pipe, before des.Time, dir nodes.Direction) {
-		gone, lit := p.lighten(f, now)
+		gone, lit := p.lighten(f, now, spans)
 		if p.open && lit {
 			to.book(nodes.Message{At: now + gone + n.cfg.Detect, From: to.id, To: to.id, Op: nodes.OpLightBack, Circuit: p.circuit, N: p.incarnation, Settles: true})
 		}

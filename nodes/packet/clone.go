@@ -42,6 +42,7 @@ func (n *Network) Clone() *Network {
 		c.sites = append(c.sites, s.clone(&c, pipes))
 	}
 	c.marks = slices.Clone(n.marks)
+	c.siteSpans = slices.Clone(n.siteSpans)
 	c.traceMeters()
 	for _, r := range n.regions {
 		d := &region{net: &c, inner: r.inner}

@@ -20,12 +20,13 @@ const (
 	LostTTL                   // crossed too many routers
 	LostTornDown              // its circuit was taken down under it
 	LostSwitched              // the tail of a 1+1 circuit changed over between its two copies
+	LostFailed                // its router or port had failed
 	Causes
 )
 
 // String is the cause's name in results.
 func (c Cause) String() string {
-	return [Causes]string{"queue", "cut", "flushed", "no-route", "ttl", "torn-down", "switched"}[c]
+	return [Causes]string{"queue", "cut", "flushed", "no-route", "ttl", "torn-down", "switched", "failed"}[c]
 }
 
 // byFault reports whether the cause counts towards the outage of a fault.

@@ -63,7 +63,8 @@ type Network struct {
 	acts      des.Agenda[dated, *dated]
 	actNo     int
 	faults    int32
-	broken    int // fibres dark
+	broken    int // fibres dark, and parts of sites that have failed
+	siteSpans []siteSpan
 	unsettled bool
 	mark      bool // the warm-up is over
 	ended     bool // the sources are
@@ -283,6 +284,7 @@ func (n *Network) register(p *pipe, now des.Time) {
 		before += fibre.Delay
 		at = fibre.Other(at)
 	}
+	n.darkEquipment(to, p, now)
 }
 
 // Finished reports, once the sources have ended, whether nothing is under way.

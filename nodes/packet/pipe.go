@@ -1,6 +1,8 @@
 package packet
 
 import (
+	"slices"
+
 	"ferrule/des"
 	"ferrule/nodes"
 )
@@ -127,9 +129,9 @@ func (p *pipe) darken(d darkSpan) { p.dark = append(p.dark, d) }
 
 // lighten reports whether it ended any, and how long after now the receiver
 // sees light again: that from the farthest of the dark places.
-func (p *pipe) lighten(f nodes.FibreID, now des.Time) (gone des.Time, lit bool) {
+func (p *pipe) lighten(f nodes.FibreID, now des.Time, spans []int) (gone des.Time, lit bool) {
 	for i := range p.dark {
-		if d := &p.dark[i]; d.fibre == f && d.to == des.Never {
+		if d := &p.dark[i]; d.fibre == f && d.to == des.Never && slices.Contains(spans, d.span) {
 			d.to = now
 			gone, lit = max(gone, p.delay-d.offset), true
 		}

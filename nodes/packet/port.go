@@ -21,6 +21,7 @@ type port struct {
 	copied   []uint64 // copies made, by way; nil: none
 	state    nodes.PortState
 	overhead nodes.Bytes
+	dead     int  // failures that keep it from sending and receiving
 	hold     bool // what waits when it goes down is kept
 	circuit  nodes.CircuitID
 	dir      nodes.Direction

@@ -31,6 +31,8 @@ type Site struct {
 	stale bool              // hop must be built again
 	held  []held
 
+	deadRouter int // failures that keep the router from working
+
 	agent   nodes.ControlAgent
 	agenda  des.Agenda[letter, *letter]
 	serial  uint64
@@ -134,6 +136,7 @@ func (l *letter) rank() int {
 const (
 	hopNone int32 = -1 // no route
 	hopHere int32 = -2 // it has arrived
+	hopDead int32 = -3 // the router has failed
 	hopSets int32 = 1 << 20
 	hopHeld int32 = 1 << 21 // bit: it waits at the ingress
 )
@@ -339,10 +342,18 @@ func (s *Site) receive(i int, end des.Time, sorted bool) {
 		case h == hopHere:
 			s.deliver(k, due)
 		default:
-			s.lose(k, due, LostNoRoute)
+			s.lose(k, due, noHop(h))
 		}
 	}
 	s.transit += transit
+}
+
+// noHop is why a packet is lost for which there is nothing to do but that.
+func noHop(h int32) Cause {
+	if h == hopDead {
+		return LostFailed
+	}
+	return LostNoRoute
 }
 
 // choose picks a port of an equal-cost set for a packet.
@@ -493,7 +504,7 @@ func (s *Site) enter(k *nodes.Packet, due des.Time, h, key int32) {
 	case h == hopHere:
 		s.deliver(k, due)
 	default:
-		s.lose(k, due, LostNoRoute)
+		s.lose(k, due, noHop(h))
 	}
 }
 
@@ -547,6 +558,9 @@ func (s *Site) rebuild() {
 }
 
 func (s *Site) resolve(way uint16) int32 {
+	if s.deadRouter > 0 {
+		return hopDead
+	}
 	n := s.net
 	agg, dir := nodes.AggOf(way)
 	target := n.plant.Aggregates[agg].Target(dir)

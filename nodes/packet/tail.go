@@ -264,7 +264,7 @@ func (s *Site) goOn(p *nodes.Packet, due des.Time, key int32, sorted, surplus bo
 	case h == hopHere:
 		s.deliver(&k, due)
 	default:
-		s.lose(&k, due, LostNoRoute)
+		s.lose(&k, due, noHop(h))
 	}
 }
 

@@ -29,6 +29,9 @@ func acts(sc *scenarios.Scenario, plan *scenarios.Plan, plant *nodes.Plant) (ste
 				return nil, nil, nil, fmt.Errorf("%s:%d: %s: nothing says when it begins", a.Pos.File, a.Pos.Line, name)
 			}
 			switch a.Verb {
+			case scenarios.VerbFail, scenarios.VerbMend:
+				steps = append(steps, Step{Act: a, Order: -1})
+				out = append(out, failActs(sc, a, name)...)
 			case scenarios.VerbCut, scenarios.VerbRepair:
 				if a.After != nodes.None {
 					return nil, nil, nil, fmt.Errorf("%s:%d: %s: write at:, a fibre waits for nothing", a.Pos.File, a.Pos.Line, name)
@@ -46,14 +49,12 @@ func acts(sc *scenarios.Scenario, plan *scenarios.Plan, plant *nodes.Plant) (ste
 				}
 				out = append(out, act)
 			default:
-				o, err := order(plan, a, stepName(l, i))
-				if err != nil {
-					return nil, nil, nil, err
-				}
+				o := order(plan, a, stepName(l, i))
 				if a.After != nodes.None {
 					o.After = controller.Condition{Kind: controller.StepDone, Step: stepName(l, a.After)}
 				}
 				o.At = at
+				o.Undo = l == 1 && plan.Undo
 				steps = append(steps, Step{Act: a, Order: len(orders)})
 				orders = append(orders, o)
 			}
@@ -81,7 +82,7 @@ func fibreActs(sc *scenarios.Scenario, a *scenarios.Act, name string) []packet.A
 	var out []packet.Act
 	for _, f := range a.Fibres {
 		act := packet.Act{At: a.At, Kind: packet.ActRepair, Name: name, Fibre: f}
-		if a.Verb == scenarios.VerbCut {
+		if a.Verb == scenarios.VerbCut || a.Verb == scenarios.VerbFail {
 			act.Kind = packet.ActCut
 			act.Where = a.WhereOn(&sc.Fibres[f]).Light()
 			switch a.Ways {
@@ -99,7 +100,29 @@ func fibreActs(sc *scenarios.Scenario, a *scenarios.Act, name string) []packet.A
 	return out
 }
 
-func order(plan *scenarios.Plan, a *scenarios.Act, name string) (controller.Order, error) {
+// failActs are the acts from outside of a failure or its end.
+func failActs(sc *scenarios.Scenario, a *scenarios.Act, name string) []packet.Act {
+	if a.Part == scenarios.PartFibre {
+		return fibreActs(sc, a, name)
+	}
+	act := packet.Act{At: a.At, Kind: packet.ActFail, Name: name, Site: a.Site, Circuit: a.Circuit}
+	if a.Verb == scenarios.VerbMend {
+		act.Kind = packet.ActMend
+	}
+	switch a.Part {
+	case scenarios.PartRouter:
+		act.Part = packet.PartRouter
+	case scenarios.PartSite:
+		act.Part = packet.PartSite
+	case scenarios.PartPort:
+		act.Part = packet.PartPort
+	default:
+		panic(fmt.Sprintf("build: unknown part %d", a.Part))
+	}
+	return []packet.Act{act}
+}
+
+func order(plan *scenarios.Plan, a *scenarios.Act, name string) controller.Order {
 	o := controller.Order{Name: name, Circuit: a.Circuit, KeepOrder: a.Order == scenarios.OrderKept}
 	for _, m := range a.Moved {
 		o.Ways = append(o.Ways, m.Way)
@@ -118,10 +141,14 @@ func order(plan *scenarios.Plan, a *scenarios.Act, name string) (controller.Orde
 		o.Kind, o.Circuits = controller.Move, a.Onto
 	case scenarios.VerbReturn:
 		o.Kind = controller.Return
+	case scenarios.VerbDrain:
+		o.Kind, o.Site = controller.Drain, a.Site
+	case scenarios.VerbUndrain:
+		o.Kind, o.Site = controller.Undrain, a.Site
 	default:
-		return o, fmt.Errorf("%s:%d: %s: not in this version", a.Pos.File, a.Pos.Line, a.Verb)
+		panic("build: unknown verb " + a.Verb.String())
 	}
-	return o, nil
+	return o
 }
 
 // Describe says what an act is about, for a report.

@@ -350,8 +350,9 @@ func (c *checker) traffic(l *findingList) {
 	for _, list := range [][]scenarios.Act{c.g.sc.Timeline, c.g.plan.Steps} {
 		for i := range list {
 			switch a := &list[i]; a.Verb {
-			case scenarios.VerbCut, scenarios.VerbRepair:
-			case scenarios.VerbScale, scenarios.VerbSetUp, scenarios.VerbTearDown, scenarios.VerbResize, scenarios.VerbMove, scenarios.VerbReturn:
+			case scenarios.VerbCut, scenarios.VerbRepair, scenarios.VerbFail, scenarios.VerbMend:
+			case scenarios.VerbScale, scenarios.VerbSetUp, scenarios.VerbTearDown, scenarios.VerbResize, scenarios.VerbMove, scenarios.VerbReturn,
+				scenarios.VerbDrain, scenarios.VerbUndrain:
 				l.add(result.Note, a.Subject, "%s happens during the run; the loads here are those before it", a.Verb)
 			default:
 				panic("study: unknown verb " + a.Verb.String())
