@@ -46,6 +46,7 @@ func newBatch(env Env) *cobra.Command {
 		},
 	}
 	c.flags(cmd)
+	c.gate.flag(cmd, false)
 	c.seedFlag(cmd, "first seed; the others follow it")
 	cmd.Flags().StringVar(&plan, "plan", plan, "plan to run under")
 	cmd.Flags().IntVar(&n, "seeds", n, "number of replications")

@@ -30,6 +30,7 @@ type call struct {
 	format string
 	outs   []string
 	level  string
+	gate   gateFlag
 	again  string // the command that makes the same again
 }
 
@@ -40,7 +41,7 @@ func (c *call) flags(cmd *cobra.Command) {
 	f.StringArrayVar(&c.cuts, "cut", nil, "cut a fibre, as NAME[:120km]@6s[..9s]; may be repeated")
 	f.StringArrayVar(&c.sets, "set", nil, "lay PATH=VALUE over the scenario, as circuits.vx.slots=4; may be repeated")
 	f.StringVar(&c.format, "format", "text", "of standard output: text, json, csv or md")
-	f.StringArrayVar(&c.outs, "out", nil, "write a file too, by suffix .html (a report), .json, .csv, .md or .txt; may be repeated")
+	f.StringArrayVar(&c.outs, "out", nil, "write a file too, by suffix .html (a report), .json, .csv, .md, .txt or .xml (JUnit); may be repeated")
 	f.StringVar(&c.level, "log", "warn", "least level logged on standard error: debug, info, warn or error")
 }
 
@@ -172,6 +173,6 @@ func finish[T any, R interface {
 	case audit != nil && !audit.OK:
 		return failed(fmt.Errorf("the audit failed:\n%s", strings.Join(audit.Failures, "\n")))
 	default:
-		return nil
+		return c.gate.pass(r)
 	}
 }

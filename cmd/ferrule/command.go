@@ -20,6 +20,8 @@ const (
 	statusDone        = 0
 	statusFailed      = 1   // the study, its audit, or writing what it gave
 	statusMisuse      = 2   // of the command line or in the scenario
+	statusMissed      = 3   // --gate: an objective is missed with confidence
+	statusUndecided   = 4   // --gate: no objective is, but one is not met with confidence either
 	statusInterrupted = 130 // the result, if any, is partial and says so
 )
 
@@ -42,7 +44,8 @@ func failed(err error) error {
 }
 
 // Main runs one command and returns the exit status of the process: 0 when it
-// is done, 1 when it failed, 2 when it was misused, 130 when ctx ended it.
+// is done, 1 when it failed, 2 when it was misused, 3 when it did not pass a gate, 4 when that is
+// undecided, 130 when ctx ended it.
 func Main(ctx context.Context, env Env, args []string) int {
 	root := newRoot(env)
 	root.SetArgs(args)

@@ -10,13 +10,16 @@ import (
 	"ferrule/scenarios/result"
 )
 
-// leastCompare is the fewest seeds whose paired differences are given a
-// verdict.
-const leastCompare = 8
+// leastCompare is the fewest seeds that give a difference an interval, and
+// defaultCompare as many as give verdicts on up to 25 figures with objectives.
+const (
+	leastCompare   = 2
+	defaultCompare = 10
+)
 
 func newCompare(env Env) *cobra.Command {
 	c := &call{env: env}
-	base, n := asIs, leastCompare
+	base, n, margin := asIs, defaultCompare, "1%"
 	var only []string
 	cmd := &cobra.Command{
 		Use:     "compare [FILE]",
@@ -35,6 +38,12 @@ func newCompare(env Env) *cobra.Command {
 			if err != nil {
 				return err
 			}
+			if opt.margin, err = shareOf("margin", margin, 0.5); err != nil {
+				return err
+			}
+			if err := c.gate.check(sc, append([]string{base}, plans...)); err != nil {
+				return err
+			}
 			started := time.Now()
 			r, err := sc.Compare(cmd.Context(), opt, base, plans, seedsFrom(opt.seed, n))
 			var audit *result.Audit
@@ -45,9 +54,11 @@ func newCompare(env Env) *cobra.Command {
 		},
 	}
 	c.flags(cmd)
+	c.gate.flag(cmd, true)
 	c.seedFlag(cmd, "first seed; the others follow it")
 	cmd.Flags().StringVar(&base, "base", base, "plan the others are compared with")
 	cmd.Flags().StringArrayVar(&only, "plan", nil, "compare this plan only; may be repeated (default all)")
+	cmd.Flags().StringVar(&margin, "margin", margin, "share of a limit, or of a figure without one, that does not matter")
 	cmd.Flags().IntVar(&n, "seeds", n, "number of seeds, the same under every plan")
 	return cmd
 }

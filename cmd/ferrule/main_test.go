@@ -78,7 +78,7 @@ func TestSeedsFollowTheFirst(t *testing.T) {
 	}{
 		{[]string{"batch", "--seeds", "3"}, "seeds: 7 8 9;"}, // 7 is the scenario's
 		{[]string{"batch", "--seeds", "2", "--seed", "40"}, "seeds: 40 41;"},
-		{[]string{"compare"}, "seeds: 7 8 9 10 11 12 13 14;"},
+		{[]string{"compare"}, "seeds: 7 8 9 10 11 12 13 14 15 16;"},
 	} {
 		if status, out, errOut := try(t.Context(), false, nil, c.args...); status != 0 || !strings.Contains(out, c.want) {
 			t.Errorf("%v: status %d, no %q in\n%s%s", c.args, status, c.want, out, errOut)

@@ -47,8 +47,10 @@ func (c *call) formatOf(path string) (format, error) {
 		return asMarkdown, nil
 	case ".html":
 		return c.asPage, nil
+	case ".xml":
+		return asJUnit, nil
 	default:
-		return nil, fmt.Errorf("%q has no suffix that says its format; end it in .html, .json, .csv, .md or .txt", path)
+		return nil, fmt.Errorf("%q has no suffix that says its format; end it in .html, .json, .csv, .md, .txt or .xml", path)
 	}
 }
 
@@ -114,7 +116,7 @@ func commandLine(cmd *cobra.Command, args []string) string {
 			values = []string{f.Value.String()}
 		}
 		switch f.Name {
-		case "out", "format", "log", "cores":
+		case "out", "format", "log", "cores", "resume", "gate":
 			return // they do not change the result
 		}
 		for _, v := range values {

@@ -42,6 +42,7 @@ type options struct {
 	seed     uint64
 	cores    int // at least 1
 	log      *zap.Logger
+	margin   float64                   // of a comparison, as study.Options has it
 	runs     bool                      // batch and compare also hand out the runs of the first seed
 	progress func(done, total float64) // may be called from any goroutine
 }

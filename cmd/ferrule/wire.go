@@ -57,7 +57,7 @@ func (l loaded) Plans() []string {
 }
 
 func (o options) study() study.Options {
-	return study.Options{Plan: o.plan, Seed: o.seed, Cores: o.cores, Log: o.log, Progress: o.progress, Runs: o.runs}
+	return study.Options{Plan: o.plan, Seed: o.seed, Cores: o.cores, Log: o.log, Progress: o.progress, Margin: o.margin, Runs: o.runs}
 }
 
 func (l loaded) Run(ctx context.Context, opt options) (*result.Run, error) {

@@ -115,13 +115,16 @@ type Paired struct {
 	Diff        Interval // of x[i] - y[i]
 	P           float64  // two-sided, of no difference; NaN below two pairs
 	Correlation float64  // of x and y, achieved by sharing; NaN if either is constant
+	Gain        float64  // variances of x and y over that of the differences; NaN if Constant
 	Constant    bool     // every difference is the same
 	Identical   bool     // every difference is zero
 }
 
 // PairedT compares x with y, pair by pair, by Student's t on the differences.
 // It panics if their lengths differ. Two series that differ by a constant have
-// a half-width of zero, and the p value is 1 if it is zero, 0 otherwise.
+// a half-width of zero, and the p value is 1 if it is zero, 0 otherwise. Gain
+// is how many times the pairs it would take to be as sure with series that
+// share nothing.
 //
 // Source: A. M. Law, Simulation Modeling and Analysis, ch. 10 (paired-t
 // interval).
@@ -133,7 +136,7 @@ func PairedT(x, y []float64, level float64) Paired {
 	for i := range x {
 		d[i] = x[i] - y[i]
 	}
-	r := Paired{Diff: MeanInterval(d, level), P: math.NaN(), Correlation: correlation(x, y)}
+	r := Paired{Diff: MeanInterval(d, level), P: math.NaN(), Correlation: correlation(x, y), Gain: math.NaN()}
 	if len(d) < 2 {
 		return r
 	}
@@ -143,6 +146,9 @@ func PairedT(x, y []float64, level float64) Paired {
 		return r
 	}
 	mean, variance := meanVariance(d)
+	_, vx := meanVariance(x)
+	_, vy := meanVariance(y)
+	r.Gain = (vx + vy) / variance
 	r.P = twoSided(mean/math.Sqrt(variance/float64(len(d))), float64(len(d)-1))
 	return r
 }

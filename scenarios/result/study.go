@@ -20,6 +20,8 @@ type Batch struct {
 	Price      Price    `json:"price"`
 	Audit      Audit    `json:"audit"` // summed over the seeds
 
+	Gates    []Gate    `json:"gates,omitempty"`    // of the plan, when a class has an objective
+	Stopping *Stopping `json:"stopping,omitempty"` // how the number of seeds was found; absent when it was given
 	Defaults []Default `json:"defaults"`
 	Cautions []string  `json:"cautions"`
 	Runs     []*Run    `json:"runs,omitempty"` // that of the first seed, when it was asked for
@@ -47,18 +49,20 @@ type Verdict string
 const (
 	Better    Verdict = "better"
 	Worse     Verdict = "worse"
-	Same      Verdict = "same"      // no difference that matters
-	Undecided Verdict = "undecided" // the interval holds both
+	Same      Verdict = "same"      // identical, or surely no difference that matters
+	Undecided Verdict = "undecided" // no evidence either way
 )
 
 // A Comparison sets plans beside a base, on the same seeds.
 type Comparison struct {
 	Head
 	Base       string     `json:"base"`
-	Seeds      []uint64   `json:"seeds"`      // those that finished under every plan, in order
-	Confidence float64    `json:"confidence"` // of every interval, such as 0.95
+	Seeds      []uint64   `json:"seeds"`                  // those that finished under every plan, in order
+	Confidence float64    `json:"confidence"`             // of every interval, such as 0.95
+	Margin     float64    `json:"margin_ratio,omitempty"` // share of a limit or a figure that does not matter
 	Plans      []Compared `json:"plans"`
-	Audit      Audit      `json:"audit"` // summed over plans and seeds
+	Audit      Audit      `json:"audit"`           // summed over plans and seeds
+	Gates      []Gate     `json:"gates,omitempty"` // of the base, then of the plans, when a class has an objective
 
 	Defaults []Default `json:"defaults"`
 	Cautions []string  `json:"cautions"`
@@ -71,8 +75,22 @@ type Compared struct {
 	Verdicts []ClassVerdict `json:"verdicts"` // classes highest first
 	Price    PriceChange    `json:"price"`
 	Periods  []Period       `json:"periods"` // of the plan, first seed
+	Family   Family         `json:"family"`
 	Figures  []Difference   `json:"figures"` // classes highest first, then periods, then figures
 	Network  []Difference   `json:"network"`
+}
+
+// A Family is the set of figures whose verdicts are guarded together: those
+// with an objective, in every period. The chance that any of them is called
+// better or worse though none is stays at one minus the confidence. Everything
+// outside it is exploratory.
+type Family struct {
+	Figures int64   `json:"figures"`          // guarded together
+	Still   int64   `json:"identical"`        // further figures with an objective, identical in every seed: no test
+	LeastP  float64 `json:"least_p"`          // that so many seeds can show
+	Seeds   int64   `json:"seeds"`            // the least that can call one of the family better or worse
+	Loose   int64   `json:"loose"`            // the same of an exploratory figure
+	Method  string  `json:"method,omitempty"` // of the correction
 }
 
 // A ClassVerdict is the line a change board reads first.
@@ -101,6 +119,65 @@ type Difference struct {
 	Verdict    Verdict    `json:"verdict,omitempty"`
 	BaseMet    *bool      `json:"base_met,omitempty"`
 	PlanMet    *bool      `json:"plan_met,omitempty"`
+
+	Seeds       int64    `json:"seeds,omitempty"`        // pairs the difference is taken over
+	Exploratory bool     `json:"exploratory,omitempty"`  // it has no objective and is guarded against chance alone
+	P           *float64 `json:"p,omitempty"`            // of no difference, never below Family.LeastP of those seeds
+	PFamily     *float64 `json:"p_family,omitempty"`     // the same, corrected over the family; the verdict is by it
+	SameWithin  *float64 `json:"same_within,omitempty"`  // in Unit: a smaller difference does not matter
+	PSame       *float64 `json:"p_same,omitempty"`       // of a difference beyond SameWithin
+	Correlation *float64 `json:"correlation,omitempty"`  // over the seeds, of base and plan
+	PairingGain *float64 `json:"pairing_gain,omitempty"` // so many times the seeds it would take without pairing
+	MoreSeeds   *int64   `json:"more_seeds,omitempty"`   // that would decide it with a chance of 80 %, if it is as it looks
+}
+
+// A Standing says whether an objective is kept, with confidence.
+type Standing string
+
+// How an objective stands.
+const (
+	Met    Standing = "met"       // the interval lies within the limit
+	Missed Standing = "missed"    // it lies beyond, and not by the chance of many looks
+	Open   Standing = "undecided" // neither
+)
+
+// A Gate is the objectives of one plan, judged for a pipeline: met when all
+// are met with confidence, missed when one is missed with confidence.
+type Gate struct {
+	Plan       string   `json:"plan"`
+	Standing   Standing `json:"standing"`
+	Confidence float64  `json:"confidence"` // of the standing as a whole
+	Holds      []Hold   `json:"objectives"` // classes highest first, then periods, then figures
+}
+
+// A Hold is one objective over the seeds: the figure of the worst aggregate of
+// each seed against the limit.
+type Hold struct {
+	Class     string    `json:"class"`
+	Period    string    `json:"period"`
+	Figure    string    `json:"figure"`
+	Unit      string    `json:"unit"`
+	Limit     float64   `json:"limit"`
+	Mean      *float64  `json:"mean,omitempty"`
+	Interval  *Interval `json:"interval,omitempty"`
+	WorstPair string    `json:"worst_pair,omitempty"`
+	Seeds     int64     `json:"seeds"`              // in how many it could be said
+	SeedsMet  int64     `json:"seeds_met"`          // in how many of them it was met
+	PMissed   *float64  `json:"p_missed,omitempty"` // that it is not missed, corrected over the objectives of the plan
+	MoreSeeds *int64    `json:"more_seeds,omitempty"`
+	Standing  Standing  `json:"standing"`
+	Text      string    `json:"text"` // in one sentence
+}
+
+// A Stopping says how a batch found its number of seeds.
+type Stopping struct {
+	Figure    string  `json:"figure"`
+	Precision float64 `json:"precision_ratio"` // asked for: relative, as a share of the mean
+	AtMost    int64   `json:"at_most"`         // seeds
+	Reached   bool    `json:"reached"`         // within AtMost
+	Worst     string  `json:"worst,omitempty"` // class and period that took longest
+	WorstHalf float64 `json:"worst_ratio"`     // its half-width over its mean
+	Looks     []int64 `json:"looks"`           // seeds at which precision was looked at
 }
 
 // A PriceChange is what a plan holds beside what the base holds.

@@ -74,6 +74,7 @@ func foldBatch(plan string, samples []*sample, level float64) *result.Batch {
 		addAudit(&b.Audit, s.audit, fmt.Sprintf("seed %d: ", s.seed))
 	}
 	b.Audit.OK = auditsOK(samples)
+	b.Gates = gatesOf([]string{plan}, [][]*sample{samples}, level)
 	figures := collect(samples, func(s *sample) []reading { return s.figures })
 	var divided []string
 	for i := range figures {

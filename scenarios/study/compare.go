@@ -14,7 +14,7 @@ import (
 
 // Compare sets each of plans beside base, on the same seeds. No plans stand
 // for all plans of sc but base, no base for scenarios.AsIs, and no seeds for
-// the eight from that of o on; the plan of o is not used. Runs are spread over
+// the ten from that of o on; the plan of o is not used. Runs are spread over
 // the cores of o, all plans of a seed before the next seed.
 //
 // For every class and period the figures with a limit are compared, and with
@@ -26,9 +26,13 @@ import (
 // that of all seeds, and with fewer than two there is no difference. One seed
 // in all gives differences, but no interval and no verdict.
 //
-// A verdict is better or worse when the interval of the difference lies on one
-// side of zero, same when every difference is zero, else undecided. Objectives
-// are judged as by [Batch], and verdicts do not depend on them.
+// The figures with an objective are a family whose verdicts are corrected
+// together, by Holm's procedure, per plan; all others are exploratory. A p value
+// is that of Student's t, and never below the least that so many pairs can show
+// by their signs alone, so that few seeds give no verdict. A difference is same
+// when it is zero in every seed or surely within the margin of o, better or
+// worse by the p value, else undecided; how many more seeds may decide it is
+// then said. Objectives are judged as by [Batch].
 //
 // When ctx ends first, the result holds the seeds that finished under every
 // plan and is marked partial; it is nil when there is none. The error is then
@@ -52,7 +56,7 @@ func Compare(ctx context.Context, sc *scenarios.Scenario, o Options, base string
 		return nil, fmt.Errorf("%s: there is no plan to set beside %s", sc.File, base)
 	}
 	if len(seeds) == 0 {
-		seeds = Seeds(o.seed(sc), defaultSeeds)
+		seeds = Seeds(o.seed(sc), comparedSeeds)
 	}
 	return compare(ctx, o, append([]string{base}, plans...), seeds, replicator(sc, o))
 }
@@ -86,16 +90,16 @@ func compare(ctx context.Context, o Options, plans []string, seeds []uint64, run
 	if len(byPlan[0]) == 0 {
 		return nil, err
 	}
-	c := foldComparison(plans, byPlan, confidence)
+	c := foldComparison(plans, byPlan, terms{confidence, o.margin()})
 	c.Partial, c.Runs = err != nil, kept()
 	return c, err
 }
 
 // foldComparison compares the samples of plans; those of plans[0] are the
 // base, and all have the same seeds, at least one.
-func foldComparison(plans []string, byPlan [][]*sample, level float64) *result.Comparison {
+func foldComparison(plans []string, byPlan [][]*sample, t terms) *result.Comparison {
 	base := byPlan[0]
-	c := &result.Comparison{Head: base[0].head, Base: plans[0], Confidence: level, Defaults: base[0].defaults}
+	c := &result.Comparison{Head: base[0].head, Base: plans[0], Confidence: t.level, Margin: t.margin, Defaults: base[0].defaults}
 	c.Partial = false
 	for _, s := range base {
 		c.Seeds = append(c.Seeds, s.seed)
@@ -109,21 +113,20 @@ func foldComparison(plans []string, byPlan [][]*sample, level float64) *result.C
 	}
 	c.Audit.OK = auditsOK(all)
 	c.Cautions = cautionsOf(all)
-	judged := 0
+	c.Gates = gatesOf(plans, byPlan, t.level)
+	loose := 0
 	for k := 1; k < len(plans); k++ {
-		f := newPairing(base, byPlan[k], level)
+		f := newPairing(base, byPlan[k], t)
 		c.Plans = append(c.Plans, f.compared(plans[k]))
 		if len(f.fewer) > 0 {
 			c.Cautions = append(c.Cautions, fmt.Sprintf("Under %s, compared over fewer seeds: %s.", plans[k], shortList(f.fewer)))
 		}
-		judged += f.judged
+		loose += f.loose
 	}
-	switch {
-	case len(base) == 1:
-		c.Cautions = append(c.Cautions, "One seed says nothing about chance: there is no interval and no verdict.")
-	case judged > 0:
-		c.Cautions = append(c.Cautions, fmt.Sprintf("Each of %d verdicts stands for itself: where nothing differs, chance alone makes about %.0f in 100 look better or worse.",
-			judged, 100*(1-level)))
+	c.Cautions = append(c.Cautions, cannotSay(c)...)
+	if len(base) > 1 && loose > 0 {
+		c.Cautions = append(c.Cautions, fmt.Sprintf("The %d verdicts marked exploratory stand each for itself: where nothing differs, chance alone makes about %.0f in 100 look better or worse.",
+			loose, 100*(1-t.level)))
 	}
 	return c
 }
@@ -132,15 +135,15 @@ func foldComparison(plans []string, byPlan [][]*sample, level float64) *result.C
 // by their places, see aligned.
 type pairing struct {
 	base, plan []*sample
-	level      float64
-	periods    map[string]result.Period // by place: of the plan or, where it has none, of the base
-	fewer      []string                 // figures compared over fewer seeds than there are
-	judged     int                      // verdicts given
+	terms
+	periods map[string]result.Period // by place: of the plan or, where it has none, of the base
+	fewer   []string                 // figures compared over fewer seeds than there are
+	loose   int                      // exploratory verdicts given
 }
 
 // newPairing sets the samples of a plan beside those of the base.
-func newPairing(base, plan []*sample, level float64) *pairing {
-	f := &pairing{base: aligned(base), plan: aligned(plan), level: level, periods: map[string]result.Period{}}
+func newPairing(base, plan []*sample, t terms) *pairing {
+	f := &pairing{base: aligned(base), plan: aligned(plan), terms: t, periods: map[string]result.Period{}}
 	for _, side := range [][][]*sample{{plan, f.plan}, {base, f.base}} {
 		for i, s := range side[0] {
 			for k, p := range s.periods {
@@ -154,16 +157,10 @@ func newPairing(base, plan []*sample, level float64) *pairing {
 	return f
 }
 
-// A contrast is one figure under the base and the plan.
-type contrast struct {
-	result.Difference
-	base, plan judgement
-}
-
 // compared makes the comparison.
 func (f *pairing) compared(plan string) result.Compared {
 	figures := func(s *sample) []reading { return s.figures }
-	network := func(s *sample) []reading { return s.network }
+	ofNetwork := func(s *sample) []reading { return s.network }
 	p := result.Compared{Plan: plan, Price: f.price()}
 	for _, s := range f.plan[0].periods {
 		p.Periods = append(p.Periods, f.periods[s.Name])
@@ -173,18 +170,25 @@ func (f *pairing) compared(plan string) result.Compared {
 		if s.limit == nil && !slices.Contains(headline, s.figure) || s.figure == result.FigReordered && !s.tells() {
 			continue
 		}
-		x := f.contrast(&s)
-		contrasts = append(contrasts, x)
-		p.Figures = append(p.Figures, x.Difference)
+		contrasts = append(contrasts, f.contrast(&s))
 	}
-	for _, s := range f.pairs(network) {
+	p.Family = f.decide(contrasts)
+	for i := range contrasts {
+		p.Figures = append(p.Figures, contrasts[i].Difference)
+	}
+	var network []contrast
+	for _, s := range f.pairs(ofNetwork) {
 		if s.tells() {
-			p.Network = append(p.Network, f.contrast(&s).Difference)
+			network = append(network, f.contrast(&s))
 		}
+	}
+	f.decide(network)
+	for i := range network {
+		p.Network = append(p.Network, network[i].Difference)
 	}
 	for _, class := range f.plan[0].classes {
 		of := slices.DeleteFunc(slices.Clone(contrasts), func(x contrast) bool { return x.Class != class })
-		p.Verdicts = append(p.Verdicts, verdictOf(class, of, len(f.base)))
+		p.Verdicts = append(p.Verdicts, verdictOf(class, of, len(f.base), p.Family))
 	}
 	return p
 }
@@ -198,59 +202,6 @@ var headline = []string{
 // pairs gathers figures over the samples of the plan, then those of the base.
 func (f *pairing) pairs(pick func(*sample) []reading) []series {
 	return collect(append(slices.Clone(f.plan), f.base...), pick)
-}
-
-// contrast compares one figure.
-func (f *pairing) contrast(s *series) contrast {
-	n := len(f.base)
-	b, p := *s, *s
-	p.readings, b.readings = s.readings[:n], s.readings[n:]
-	x := contrast{base: b.judge(), plan: p.judge()}
-	period := f.periods[s.period]
-	x.Difference = result.Difference{Class: s.class, Subject: s.subject, Period: period.Name, Kind: period.Kind,
-		Figure: s.figure, Unit: s.unit, Limit: s.limit, WorstPair: p.worstPair(), BaseMet: x.base.met, PlanMet: x.plan.met}
-	var tried, had []float64
-	for i := range n {
-		u, v := b.readings[i], p.readings[i]
-		if u != nil && v != nil && u.value != nil && v.value != nil {
-			had, tried = append(had, *u.value), append(tried, *v.value)
-		}
-	}
-	if len(had) == 0 || len(had) < 2 && n >= 2 {
-		x.Base, x.Plan = meanOf(b.values()), meanOf(p.values())
-		return x
-	}
-	if len(had) < n {
-		f.fewer = append(f.fewer, fmt.Sprintf("%s %s (%d of %d)", nameOf(&x.Difference), s.figure, len(had), n))
-	}
-	t := measure.PairedT(tried, had, f.level)
-	x.Base, x.Plan = meanOf(had), meanOf(tried)
-	x.Difference.Difference = new(t.Diff.Mean)
-	x.Interval = intervalOf(t.Diff)
-	if way := f.sense(s); way != neither && n >= 2 {
-		x.Verdict = verdictWord(measure.Verdict(t.Diff, way == lowerIsBetter))
-		if slight(t.Diff, &x.Difference) {
-			x.Verdict = result.Same
-		}
-		f.judged++
-	}
-	return x
-}
-
-// margin is the share of a limit, or of the figure where there is no limit,
-// below which a difference does not matter to a change board, however sure it
-// is. Common practice, no source.
-const margin = 0.01
-
-// slight reports whether a difference is too small to matter: surely so small,
-// or surely there and still so small.
-func slight(d measure.Interval, x *result.Difference) bool {
-	least := margin * max(math.Abs(*x.Base), math.Abs(*x.Plan))
-	if x.Limit != nil {
-		least = margin * *x.Limit
-	}
-	sure := math.Abs(d.Mean) > d.Half
-	return math.Abs(d.Mean) < least && (sure || math.Abs(d.Mean)+d.Half < least)
 }
 
 // sense tells which way a figure gets better; figures of the network are
@@ -281,22 +232,6 @@ func meanOf(x []float64) *float64 {
 		return nil
 	}
 	return new(measure.MeanInterval(x, confidence).Mean)
-}
-
-// verdictWord is the verdict of a result that an outcome amounts to.
-func verdictWord(o measure.Outcome) result.Verdict {
-	switch o {
-	case measure.Better:
-		return result.Better
-	case measure.Worse:
-		return result.Worse
-	case measure.Identical:
-		return result.Same
-	case measure.NoEvidence:
-		return result.Undecided
-	default:
-		panic("study: unknown outcome " + string(o))
-	}
 }
 
 // price sets what the plan holds beside what the base holds, in the first

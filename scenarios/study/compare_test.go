@@ -19,7 +19,7 @@ import (
 func TestComparePaired(t *testing.T) {
 	plan := hands(126.97, 124.31, 126.68, 122.66, 127.23)
 	base := hands(118.21, 120.22, 122.45, 122.68, 119.40)
-	c := foldComparison([]string{"as-is", "other"}, [][]*sample{base, plan}, 0.90)
+	c := foldComparison([]string{"as-is", "other"}, [][]*sample{base, plan}, at(0.90))
 	d := differenceOf(t, c, result.FigDelayP99)
 	near(t, "difference", *d.Difference, 4.978)
 	near(t, "half-width", *d.Interval.Half, 3.328873)
@@ -37,13 +37,18 @@ func TestCompareVerdicts(t *testing.T) {
 		figure     result.Verdict
 		text       string
 	}{
-		{"lower", []float64{0.010, 0.012, 0.011}, []float64{0.008, 0.010, 0.0091}, result.Better, "better in NORMAL (delay-p99 -1.97 ms)"},
-		{"higher", []float64{0.010, 0.012}, []float64{0.011, 0.013}, result.Worse, "worse in NORMAL (delay-p99 +1 ms)"},
+		{"lower", []float64{0.010, 0.012, 0.011, 0.010, 0.012, 0.011}, []float64{0.008, 0.010, 0.0091, 0.008, 0.010, 0.0091},
+			result.Better, "better in NORMAL (delay-p99 -1.97 ms), exploratory"},
+		{"higher", []float64{0.010, 0.012, 0.010, 0.012, 0.010, 0.012}, []float64{0.011, 0.013, 0.011, 0.013, 0.011, 0.013},
+			result.Worse, "worse in NORMAL (delay-p99 +1 ms), exploratory"},
+		{"two seeds", []float64{0.010, 0.012}, []float64{0.011, 0.013}, result.Undecided, "no verdict from 2 seeds, 6 are needed"},
 		{"equal", []float64{0.010, 0.012}, []float64{0.010, 0.012}, result.Same, "identical"},
-		{"open", []float64{0.010, 0.012}, []float64{0.012, 0.010}, result.Undecided, "no evidence of a difference"},
+		{"open", []float64{0.010, 0.012, 0.010, 0.012, 0.010, 0.012}, []float64{0.012, 0.010, 0.012, 0.010, 0.012, 0.010}, result.Undecided,
+			// (1.645+0.842)² (s / 1 % of 11 ms)², s = 2.19 ms
+			"no evidence either way (about 2449 more seeds would decide a figure)"},
 		{"one seed", []float64{0.010}, []float64{0.012}, "", "no verdict from one seed"},
 	} {
-		r := foldComparison([]string{"as-is", "other"}, [][]*sample{hands(c.base...), hands(c.plan...)}, 0.95)
+		r := foldComparison([]string{"as-is", "other"}, [][]*sample{hands(c.base...), hands(c.plan...)}, at(0.95))
 		d := differenceOf(t, r, result.FigDelayP99)
 		if d.Verdict != c.figure || (d.Interval == nil) != (len(c.base) < 2) || d.Difference == nil {
 			t.Errorf("%s: %+v", c.name, d)
@@ -58,7 +63,8 @@ func TestCompareVerdicts(t *testing.T) {
 func TestCompareObjectives(t *testing.T) {
 	with := func(pairs ...float64) []*sample {
 		var out []*sample
-		for i, p := range pairs {
+		for i := range 6 { // the fewest that give a verdict
+			p := pairs[i%len(pairs)]
 			out = append(out, sampleOf(hand{seed: uint64(i), p99: new(p), limit: 0.04, pairs: []float64{p / 2, p}}.run()))
 		}
 		return out
@@ -73,11 +79,12 @@ func TestCompareObjectives(t *testing.T) {
 			"better in NORMAL (delay-p99 -14 ms); MISSED -> met in NORMAL delay-p99"},
 		{"lost", with(0.030, 0.032), with(0.044, 0.046), new(true), new(false),
 			"worse in NORMAL (delay-p99 +14 ms); met -> MISSED in NORMAL delay-p99 45 ms (limit 40 ms) for b.out"},
-		{"still missed, not always", with(0.044, 0.046), with(0.039, 0.045), new(false), new(false),
-			"no evidence of a difference; still MISSED in NORMAL delay-p99 42 ms (limit 40 ms) for b.out (met in 1 of 2 seeds)"},
+		{"still missed, not always", with(0.041, 0.044), with(0.039, 0.045), new(false), new(false),
+			// (1.96+0.842)² (1.643/0.5)² = 85, and 2 as t is wider than the normal law
+			"no evidence either way (about 81 more seeds would decide a figure); still MISSED in NORMAL delay-p99 42 ms (limit 40 ms) for b.out (met in 3 of 6 seeds)"},
 		{"kept", with(0.030, 0.032), with(0.030, 0.032), new(true), new(true), "identical; every limit met"},
 	} {
-		r := foldComparison([]string{"as-is", "other"}, [][]*sample{c.base, c.plan}, 0.95)
+		r := foldComparison([]string{"as-is", "other"}, [][]*sample{c.base, c.plan}, at(0.95))
 		v := r.Plans[0].Verdicts[0]
 		if v.Text != c.text {
 			t.Errorf("%s:\n got %s\nwant %s", c.name, v.Text, c.text)
@@ -97,7 +104,7 @@ func TestCompareAbsent(t *testing.T) {
 	none := sampleOf(hand{seed: 3}.run())
 	base, plan := hands(1, 2, 3, 4), hands(2, 3, 9, 5)
 	plan[2] = none
-	c := foldComparison([]string{"as-is", "other"}, [][]*sample{base, plan}, 0.95)
+	c := foldComparison([]string{"as-is", "other"}, [][]*sample{base, plan}, at(0.95))
 	d := differenceOf(t, c, result.FigDelayP99)
 	if *d.Difference != 1 || *d.Interval.Half != 0 {
 		t.Errorf("difference %v ± %v, want 1 ± 0 over three seeds", *d.Difference, *d.Interval.Half)
@@ -107,7 +114,7 @@ func TestCompareAbsent(t *testing.T) {
 		t.Errorf("cautions %q", s)
 	}
 	plan[0], plan[1] = none, none
-	c = foldComparison([]string{"as-is", "other"}, [][]*sample{base, plan}, 0.95)
+	c = foldComparison([]string{"as-is", "other"}, [][]*sample{base, plan}, at(0.95))
 	if d = differenceOf(t, c, result.FigDelayP99); d.Difference != nil || d.Verdict != "" || *d.Base != 2.5 || *d.Plan != 5 {
 		t.Errorf("one pair: %+v", d)
 	}
@@ -142,7 +149,7 @@ func TestComparePrice(t *testing.T) {
 		plan[i].transit = []result.SiteRate{{Site: "holm", Bps: 1e6 + 3e6*float64(i)}, {Site: "ness", Bps: 5}}
 	}
 	plan[0].price = result.Price{Slots: 5, SlotKm: 50, Ports: 6}
-	got := foldComparison([]string{"as-is", "other"}, [][]*sample{base, plan}, 0.95).Plans[0].Price
+	got := foldComparison([]string{"as-is", "other"}, [][]*sample{base, plan}, at(0.95)).Plans[0].Price
 	want := result.PriceChange{Base: base[0].price, Plan: plan[0].price, Slots: 3, SlotKm: 30, Ports: 2,
 		TransitFreed: []result.SiteRate{{Site: "holm", Bps: 3e6}}}
 	if d := cmp.Diff(want, got); d != "" {
@@ -193,7 +200,7 @@ func TestComparePeriods(t *testing.T) {
 			s.figures[i].period = "normal 2"
 		}
 	}
-	c := foldComparison([]string{"as-is", "live"}, [][]*sample{b, p}, 0.95)
+	c := foldComparison([]string{"as-is", "live"}, [][]*sample{b, p}, at(0.95))
 	for _, d := range c.Plans[0].Figures {
 		if d.Figure == result.FigDelayP99 && (d.Period != "normal 2" || *d.Base != 5 || *d.Plan != 3.5 || *d.Difference != -1.5) {
 			t.Errorf("%+v: want 3.5 in normal 2 against 5", d)
@@ -207,3 +214,6 @@ func TestComparePeriods(t *testing.T) {
 		t.Errorf("periods %q, want %q", names, want)
 	}
 }
+
+// at is a level of confidence with the margin that is the default.
+func at(level float64) terms { return terms{level, DefaultMargin} }

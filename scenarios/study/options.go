@@ -17,7 +17,21 @@ type Options struct {
 	Cores    int         // cores to use; 0 or less: as many as the program may use
 	Log      *zap.Logger // nil: nothing is logged
 	Progress func(done, total float64)
-	Runs     bool // a batch or a comparison also hands out the runs of its first seed
+	Margin   float64 // in a comparison, the share of a limit or a figure that does not matter; 0: DefaultMargin
+	Runs     bool    // a batch or a comparison also hands out the runs of its first seed
+}
+
+// DefaultMargin is the share of a limit, or of the figure where there is no
+// limit, below which a difference does not matter to a change board. Common
+// practice, no source.
+const DefaultMargin = 0.01
+
+// margin is the margin asked for.
+func (o Options) margin() float64 {
+	if o.Margin == 0 {
+		return DefaultMargin
+	}
+	return o.Margin
 }
 
 // plan is the name of the plan asked for.

@@ -10,17 +10,20 @@ import (
 	"ferrule/scenarios/result"
 )
 
-// verdictOf sums up a class in one line. The figures that count are those with
+// verdictOf sums up a class in one line. seeds is how many the study has. The figures that count are those with
 // a limit or, where none has one, all. A class is better when some of them are
 // and none is worse, worse the other way round, same when none differs at all,
 // and undecided when there is no evidence or evidence of both.
-func verdictOf(class string, of []contrast, seeds int) result.ClassVerdict {
+func verdictOf(class string, of []contrast, seeds int, family result.Family) result.ClassVerdict {
 	v := result.ClassVerdict{Class: class}
 	limited := slices.DeleteFunc(slices.Clone(of), func(x contrast) bool { return x.Limit == nil })
 	v.BaseMet = allMet(limited, func(x contrast) *bool { return x.BaseMet })
 	v.PlanMet = allMet(limited, func(x contrast) *bool { return x.PlanMet })
+	need := family.Seeds
 	if len(limited) > 0 {
 		of = limited
+	} else {
+		need = family.Loose
 	}
 	better, worse := withVerdict(of, result.Better), withVerdict(of, result.Worse)
 	same, open := withVerdict(of, result.Same), withVerdict(of, result.Undecided)
@@ -42,12 +45,33 @@ func verdictOf(class string, of []contrast, seeds int) result.ClassVerdict {
 	case len(open) == 0:
 		v.Verdict = result.Same
 		parts = append(parts, sameness(same))
+	case int64(seeds) < need:
+		v.Verdict = result.Undecided
+		parts = append(parts, fmt.Sprintf("no verdict from %d seeds, %d are needed", seeds, need))
 	default:
 		v.Verdict = result.Undecided
-		parts = append(parts, "no evidence of a difference")
+		parts = append(parts, "no evidence either way"+moreText(open))
+	}
+	if len(limited) == 0 && (v.Verdict == result.Better || v.Verdict == result.Worse) {
+		parts[0] += ", exploratory"
 	}
 	v.Text = strings.Join(append(parts, limitsText(limited)...), "; ")
 	return v
+}
+
+// moreText says how many more seeds would decide the nearest of those that are
+// open.
+func moreText(open []contrast) string {
+	var least *int64
+	for i := range open {
+		if n := open[i].MoreSeeds; n != nil && (least == nil || *n < *least) {
+			least = n
+		}
+	}
+	if least == nil {
+		return ""
+	}
+	return fmt.Sprintf(" (about %d more seeds would decide a figure)", *least)
 }
 
 // sameness words that nothing got better or worse.

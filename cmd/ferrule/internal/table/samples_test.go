@@ -81,7 +81,12 @@ func sampleRun() *result.Run {
 
 func sampleComparison() *result.Comparison {
 	half := func(v float64) *result.Interval { return &result.Interval{Half: &v} }
-	c := &result.Comparison{Head: sampleHead(), Base: "as-is", Seeds: []uint64{1, 2, 3, 4, 5, 6, 7, 8}, Confidence: 0.95,
+	c := &result.Comparison{Head: sampleHead(), Base: "as-is", Seeds: []uint64{1, 2, 3, 4, 5, 6, 7, 8}, Confidence: 0.95, Margin: 0.01,
+		Gates: []result.Gate{{Plan: "as-is", Standing: result.Missed, Confidence: 0.95, Holds: []result.Hold{
+			{Class: "voice", Period: "normal", Figure: "delay-p99", Unit: "s", Limit: 0.04, Standing: result.Missed, Text: "41.2 ms ± 0.3 ms for voice-tn.out, limit 40 ms"},
+			{Class: "voice", Period: "hit", Figure: "out", Unit: "s", Limit: 0.5, Standing: result.Met, Text: "87 ms ± 1 ms, limit 500 ms"}}},
+			{Plan: "video-express-live", Standing: result.Open, Confidence: 0.95, Holds: []result.Hold{
+				{Class: "video", Period: "hit", Figure: "out", Unit: "s", Limit: 0.5, Standing: result.Open, Text: "512 ms ± 30 ms, limit 500 ms; about 12 more seeds would decide it"}}}},
 		Audit: result.Audit{OfferedPackets: 100, CopyPackets: 10, DeliveredPackets: 90, DuplicatePackets: 2,
 			DiscardedCopiesPackets: 7, InsidePackets: 1, LostPackets: result.Losses{{Cause: "cut", Packets: 9}},
 			Failures: []string{"offered + copies = 110, accounted for 109"}}}
@@ -98,19 +103,25 @@ func sampleComparison() *result.Comparison {
 			Base:  result.Price{Slots: 12, SlotKm: 4320, Ports: 12, Tightest: &result.Tightest{Fibre: "tarn-holm", FreeSlots: 76}},
 			Plan:  result.Price{Slots: 16, SlotKm: 6800, Ports: 14, Tightest: &result.Tightest{Fibre: "holm-ness", FreeSlots: 74}},
 			Slots: 4, SlotKm: 2480, Ports: 2, TransitFreed: []result.SiteRate{{Site: "holm", Bps: 612e6}}},
+		Family: result.Family{Figures: 4, Still: 1, LeastP: 0.0078125, Seeds: 8, Loose: 6, Method: "Holm"},
 		Figures: []result.Difference{
-			{Class: "voice", Period: "normal", Kind: result.Normal, Figure: "delay-p99", Unit: "s", Limit: new(0.04), Base: new(0.0412),
+			{Seeds: 8, P: new(0.0078125), PFamily: new(0.03125), PSame: new(1.0), Correlation: new(0.93), PairingGain: new(12.5),
+				Class: "voice", Period: "normal", Kind: result.Normal, Figure: "delay-p99", Unit: "s", Limit: new(0.04), Base: new(0.0412),
 				Plan: new(0.00894), Difference: new(-0.03226), Interval: half(0.00081), WorstPair: "voice-tn.out",
 				Verdict: result.Better, BaseMet: new(false), PlanMet: new(true)},
 			{Class: "voice", Period: "normal", Kind: result.Normal, Figure: "pdv-p99.9", Unit: "s", Limit: new(0.002), Base: new(0.00012),
 				Plan: new(0.0), Difference: new(-0.00012), Verdict: result.Same, BaseMet: new(true), PlanMet: new(true)},
-			{Class: "voice", Period: "normal", Kind: result.Normal, Figure: "loss", Unit: "ratio", Limit: new(1e-4), Base: new(3.1e-5),
+			{Exploratory: true, Class: "voice", Period: "normal", Kind: result.Normal, Figure: "loss", Unit: "ratio", Limit: new(1e-4), Base: new(3.1e-5),
 				Plan: new(2.9e-7), Difference: new(-3.071e-5), Interval: &result.Interval{Low: new(-3.3e-5), High: new(-2.8e-5)},
 				Verdict: result.Better},
 			{Class: "voice", Period: "change", Kind: result.Change, Figure: "delay-p99", Unit: "s", Plan: new(0.009)},
-			{Class: "video", Period: "hit", Kind: result.Hit, Figure: "out", Unit: "s", Limit: new(0.5), Base: new(0.0871),
+			{Seeds: 8, P: new(0.0078125), PFamily: new(0.03125),
+				Class: "video", Period: "hit", Kind: result.Hit, Figure: "out", Unit: "s", Limit: new(0.5), Base: new(0.0871),
 				Plan: new(0.612), Difference: new(0.5249), Interval: half(0.0102), WorstPair: "video-of-a-long-name-tarn-ness.out",
 				Verdict: result.Worse, BaseMet: new(true), PlanMet: new(false)},
+			{Class: "video", Period: "after", Kind: result.After, Figure: "loss", Unit: "ratio", Limit: new(1e-3), Base: new(2e-4), Plan: new(1e-4),
+				Difference: new(-1e-4), Interval: half(1.2e-4), Verdict: result.Undecided, BaseMet: new(true), PlanMet: new(true),
+				Seeds: 8, P: new(0.09), PFamily: new(0.18), PSame: new(0.7), MoreSeeds: new(int64(12))},
 			{Class: "voice", Period: "after", Kind: result.After, Figure: "delay-p99", Unit: "s", Limit: new(0.04), Base: new(0.0121),
 				Plan: new(0.0121), Difference: new(0.0), Interval: half(0), Verdict: result.Same, BaseMet: new(true), PlanMet: new(true)},
 		},
@@ -124,7 +135,8 @@ func sampleComparison() *result.Comparison {
 }
 
 func sampleBatch() *result.Batch {
-	return &result.Batch{Head: sampleHead(), Plan: "as-is", Seeds: []uint64{1, 2, 3}, Confidence: 0.95, Periods: samplePeriods(),
+	return &result.Batch{Stopping: &result.Stopping{Figure: "delay-p99", Precision: 0.05, AtMost: 200, Reached: true,
+		Worst: "voice NORMAL", WorstHalf: 0.041, Looks: []int64{10, 17, 24}}, Head: sampleHead(), Plan: "as-is", Seeds: []uint64{1, 2, 3}, Confidence: 0.95, Periods: samplePeriods(),
 		Figures: []result.Mean{
 			{Class: "voice", Period: "normal", Figure: "delay-p99", Unit: "s", Limit: new(0.04), Mean: new(0.0123),
 				Interval: &result.Interval{Half: new(0.00021)}, Seeds: 3, WorstPair: "voice-tn.out", Met: new(true)},

@@ -51,6 +51,8 @@ func (d *doc) batch(b *result.Batch) {
 		}
 		d.grid(g)
 	}
+	d.gates(b.Gates)
+	d.stopping(b.Stopping)
 	d.definitions()
 	d.heading(word("PRICE AND AUDIT"))
 	d.price(b.Price)
@@ -159,9 +161,11 @@ func (d *doc) comparison(c *result.Comparison) {
 	for _, p := range c.Plans {
 		d.compared(c.Base, p)
 	}
+	d.gates(c.Gates)
 	d.definitions()
-	d.line(word("pp: percentage points. Objectives: every aggregate of the class, under the plan. A difference below a"))
-	d.line(word("hundredth of the limit (without a limit, of the figure) counts as the same."))
+	d.line(word("pp: percentage points. Objectives: every aggregate of the class, under the plan. Verdicts in brackets are"))
+	d.line(word("exploratory. Same: identical, or surely less apart than "), limit(c.Margin, result.UnitRatio),
+		word(" of the limit or, without one, of the figure."))
 	d.heading(word("AUDIT"))
 	d.audit(c.Audit)
 	d.cautions(c.Cautions)
@@ -191,6 +195,7 @@ func (d *doc) compared(base string, p result.Compared) {
 		}
 		d.grid(g)
 	}
+	d.family(p)
 	if len(p.Network) > 0 {
 		d.network(base, p.Network)
 	}
@@ -244,7 +249,39 @@ func differenceRow(figure cell, f result.Difference) []cell {
 		b, p = scaled(*f.Base, f.Unit, s), scaled(*f.Plan, f.Unit, s)
 	}
 	return []cell{figure, most, b, p, change(f.Difference, f.Interval, f.Unit),
-		name(f.WorstPair), verdict(f.Verdict), metBoth(f.BaseMet, f.PlanMet)}
+		name(f.WorstPair), verdictOn(f), metBoth(f.BaseMet, f.PlanMet)}
+}
+
+// verdictOn shows the verdict on a figure, in brackets when it is exploratory.
+func verdictOn(f result.Difference) cell {
+	c := verdict(f.Verdict)
+	if f.Exploratory && f.Verdict != "" {
+		c.text = "(" + c.text + ")"
+	}
+	return c
+}
+
+// stopping says how a batch found its number of seeds.
+func (d *doc) stopping(s *result.Stopping) {
+	if s == nil {
+		return
+	}
+	d.heading(word("PRECISION"))
+	what := "reached"
+	if !s.Reached {
+		what = "NOT reached within the cap"
+	}
+	cells := []cell{word("relative precision of "), limit(s.Precision, result.UnitRatio), word(" asked for "), word(figureName(s.Figure)),
+		word(", "), count(s.AtMost, "seeds"), word(" at most: "), word(what)}
+	if s.Worst != "" {
+		cells = append(cells, word("; widest "), name(s.Worst), word(", half-width over mean "), limit(s.WorstHalf, result.UnitRatio))
+	}
+	d.line(cells...)
+	looks := make([]cell, len(s.Looks))
+	for i, n := range s.Looks {
+		looks[i] = count(n, "")
+	}
+	d.line(word("looked at after so many seeds: "), join(" ", looks...))
 }
 
 // priceChange is the one line of price.
