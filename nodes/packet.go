@@ -31,6 +31,20 @@ const (
 	BitSampled PacketBits = 1 << 7
 )
 
+// Code points of the ECN field (RFC 3168, section 5), in place.
+const (
+	ECT0 PacketBits = 0b10 << 2 // sent by an ECN-capable transport
+	CE   PacketBits = 0b11 << 2 // congestion experienced
+)
+
+// Colours of a packet (RFC 2697 and 2698), in place; what no conditioner has
+// seen is green.
+const (
+	Green  PacketBits = 0 << 4
+	Yellow PacketBits = 1 << 4
+	Red    PacketBits = 2 << 4
+)
+
 // InitialTTL is what a packet is sent with (RFC 1700's recommended default).
 const InitialTTL = 64
 

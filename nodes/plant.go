@@ -121,16 +121,31 @@ const (
 	QueueStrict Queueing = iota // before every later class
 	QueueWeight                 // a share of what strict classes leave (DRR)
 	QueueFIFO                   // in order of arrival with all other FIFO classes
+	QueueFair                   // a share of what strict classes leave (WFQ)
+)
+
+// DropPolicy says how a class's queue refuses packets before it is full, or at
+// its head.
+type DropPolicy uint8
+
+// Drop policies.
+const (
+	DropTail    DropPolicy = iota // when there is no room, and not before
+	DropRED                       // random early detection (Floyd and Jacobson 1993)
+	DropCoDel                     // by the time packets have waited (RFC 8289)
+	DropFQCoDel                   // the same in a queue for each flow (RFC 8290)
 )
 
 // Class is a class of traffic. Classes stand highest first.
 type Class struct {
 	Name          string
 	Queue         Queueing
-	Weight        int      // per cent, for QueueWeight
+	Weight        int      // per cent, for QueueWeight and QueueFair
 	BufferTime    des.Time // buffer given as time at the port's rate, or 0
 	BufferBytes   Bytes    // buffer given in bytes, or 0
 	BufferPackets int      // buffer given as a number of waiting packets, or 0
+	Drop          DropPolicy
+	ECN           bool // the policy marks packets of ECN-capable transports instead of dropping them (RFC 3168)
 }
 
 // Aggregate is traffic of one class between two sites.

@@ -18,6 +18,7 @@ type Verdict uint8
 const (
 	Kept    Verdict = iota
 	Dropped         // no room: tail drop
+	Refused         // by active queue management
 )
 
 // A Discipline decides which waiting packet leaves next and which is refused.

@@ -57,7 +57,7 @@ func NewTiers(classes []nodes.Class, classOf []uint8, r nodes.Rate) *Tiers {
 	t := &Tiers{queueOf: make([]uint8, len(classes)), classOf: classOf, class: make([]budget, len(classes))}
 	fifo, least := -1, 101
 	for _, c := range classes {
-		if c.Queue == nodes.QueueWeight {
+		if c.Queue == nodes.QueueWeight || c.Queue == nodes.QueueFair {
 			if c.Weight < 1 || c.Weight > 100 {
 				panic(fmt.Sprintf("queue: class %s has weight %d %%", c.Name, c.Weight))
 			}
@@ -79,13 +79,16 @@ func NewTiers(classes []nodes.Class, classOf []uint8, r nodes.Rate) *Tiers {
 				fifo = int(add(lane{}, several))
 			}
 			t.queueOf[i] = uint8(fifo)
-		case nodes.QueueWeight:
+		case nodes.QueueWeight, nodes.QueueFair:
 			if weighted {
+				if t.queueOf[i] == 0 && t.wrr&1 == 0 {
+					panic("queue: classes served by DRR beside classes served by WFQ")
+				}
 				continue
 			}
 			weighted = true
 			for j := i; j < len(classes); j++ { // the whole tier stands here
-				if d := classes[j]; d.Queue == nodes.QueueWeight {
+				if d := classes[j]; d.Queue == c.Queue {
 					q := add(lane{quantum: DefaultQuantum * nodes.Bytes(d.Weight) / nodes.Bytes(least)}, j)
 					t.queueOf[j] = q
 					t.wrr |= 1 << q

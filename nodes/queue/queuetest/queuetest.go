@@ -3,6 +3,7 @@ package queuetest
 
 import (
 	"math/rand/v2"
+	"slices"
 	"testing"
 
 	"ferrule/des"
@@ -21,6 +22,14 @@ func Run(t *testing.T, ways int, make func() queue.Discipline) {
 	t.Run("allocates nothing", func(t *testing.T) { allocate(t, make()) })
 }
 
+// shedOf lists what the last call dropped of what was kept.
+func shedOf(d queue.Discipline) []queue.Shed {
+	if s, ok := d.(queue.Shedder); ok {
+		return s.Shed()
+	}
+	return nil
+}
+
 func random(r *rand.Rand, ways int, seq []uint32) nodes.Packet {
 	w := r.IntN(ways)
 	seq[w]++
@@ -33,8 +42,19 @@ func conserve(t *testing.T, ways int, d queue.Discipline) {
 	waiting := map[[2]uint32]nodes.Packet{}
 	var bytes nodes.Bytes
 	kept, dropped := 0, 0
+	shed := func(step int) {
+		for _, x := range shedOf(d) {
+			k := [2]uint32{uint32(x.Packet.Way), x.Packet.Seq}
+			if p, ok := waiting[k]; !ok || p != x.Packet || x.Verdict == queue.Kept {
+				t.Fatalf("step %d: shed %+v, kept %+v", step, x, p)
+			}
+			delete(waiting, k)
+			bytes -= nodes.Bytes(x.Packet.Size)
+			dropped++
+		}
+	}
 	for i := range 20000 {
-		now := des.Time(i)
+		now := des.Time(i) * des.Millisecond
 		if r.IntN(100) < 55 {
 			p := random(r, ways, sent)
 			switch d.Enqueue(now, &p) {
@@ -42,17 +62,23 @@ func conserve(t *testing.T, ways int, d queue.Discipline) {
 				waiting[[2]uint32{uint32(p.Way), p.Seq}] = p
 				bytes += nodes.Bytes(p.Size)
 				kept++
-			case queue.Dropped:
+			case queue.Dropped, queue.Refused:
 				dropped++
 			}
+			shed(i)
 		} else {
 			q := d.Dequeue(now)
 			ok := q != nil
+			served := nodes.Packet{}
+			if ok {
+				served = *q
+			}
+			shed(i)
 			if ok != (len(waiting) > 0) {
 				t.Fatalf("step %d: Dequeue says %v with %d waiting", i, ok, len(waiting))
 			}
 			if ok {
-				p := *q
+				p := served
 				k := [2]uint32{uint32(p.Way), p.Seq}
 				if waiting[k] != p {
 					t.Fatalf("step %d: returned %+v, kept %+v", i, p, waiting[k])
@@ -97,7 +123,7 @@ func clone(t *testing.T, ways int, d queue.Discipline) {
 				p, q = *x, *y
 			}
 		}
-		if a != b || p != q {
+		if a != b || p != q || !slices.Equal(shedOf(d), shedOf(c)) {
 			t.Fatalf("step %d: original %v %+v, clone %v %+v", i, a, p, b, q)
 		}
 	}
@@ -117,6 +143,7 @@ func drain(t *testing.T, ways int, d queue.Discipline) {
 		if d.Enqueue(des.Time(i), &p) == queue.Kept {
 			kept++
 		}
+		kept -= len(shedOf(d))
 	}
 	n := 0
 	d.Drain(func(*nodes.Packet) { n++ })
