@@ -42,6 +42,9 @@ func (n *Network) Inside(f func(p *nodes.Packet)) {
 		for i := range s.ports {
 			s.ports[i].disc.Clone().Drain(f)
 		}
+		for i := range s.sources {
+			s.sources[i].gate.each(f)
+		}
 		for i := range s.held {
 			for j := range s.held[i].buf {
 				f(&s.held[i].buf[j])

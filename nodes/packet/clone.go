@@ -84,6 +84,7 @@ func (s *Site) clone(n *Network, pipes map[*pipe]*pipe) *Site {
 	c.sources = slices.Clone(s.sources)
 	for i := range c.sources {
 		c.sources[i].s = s.sources[i].s.Clone()
+		c.sources[i].gate = s.sources[i].gate.clone()
 	}
 	c.next = slices.Clone(s.next)
 	c.portOf = slices.Clone(s.portOf)

@@ -21,16 +21,20 @@ const (
 	LostTornDown              // its circuit was taken down under it
 	LostSwitched              // the tail of a 1+1 circuit changed over between its two copies
 	LostFailed                // its router or port had failed
+	LostAQM                   // refused or dropped by active queue management
+	LostPoliced               // refused by the conditioner of its aggregate
 	Causes
 )
 
 // String is the cause's name in results.
 func (c Cause) String() string {
-	return [Causes]string{"queue", "cut", "flushed", "no-route", "ttl", "torn-down", "switched", "failed"}[c]
+	return [Causes]string{"queue", "cut", "flushed", "no-route", "ttl", "torn-down", "switched", "failed", "aqm", "policed"}[c]
 }
 
 // byFault reports whether the cause counts towards the outage of a fault.
-func (c Cause) byFault() bool { return c != LostQueue && c != LostTTL }
+func (c Cause) byFault() bool {
+	return c != LostQueue && c != LostTTL && c != LostAQM && c != LostPoliced
+}
 
 // Cell holds the figures of one way in one stretch.
 type Cell struct {

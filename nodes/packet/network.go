@@ -12,6 +12,7 @@ import (
 
 	"ferrule/des"
 	"ferrule/nodes"
+	"ferrule/nodes/conditioner"
 	"ferrule/nodes/optical"
 )
 
@@ -41,6 +42,8 @@ const DefaultGrace = 3 * des.Second
 type Source struct {
 	Way    uint16
 	Source nodes.Source
+	Meter  *conditioner.Meter  // at its ingress; red packets are discarded; nil: none
+	Shaper *conditioner.Shaper // after it; nil: none
 }
 
 // maxWindow bounds windows so that times within one fit the merge of arrivals.
@@ -103,7 +106,7 @@ func New(cfg Config) (*Network, error) {
 		n.regions = append(n.regions, &region{net: n, inner: within[i]})
 	}
 	for i := range p.Sites {
-		s := &Site{id: nodes.SiteID(i), net: n, srcMin: des.Never, st: view{to: cfg.WarmUp, fault: -1}}
+		s := &Site{id: nodes.SiteID(i), net: n, srcMin: des.Never, gateMin: des.Never, st: view{to: cfg.WarmUp, fault: -1}}
 		s.hop = make([]int32, len(n.classOf))
 		s.lossOf = make([]int32, len(n.classOf))
 		s.via, s.sink.key = make([]uint64, len(n.classOf)), -1
@@ -123,7 +126,7 @@ func New(cfg Config) (*Network, error) {
 	for _, src := range cfg.Sources {
 		a, d := nodes.AggOf(src.Way)
 		s := n.sites[p.Aggregates[a].Origin(d)]
-		s.sources = append(s.sources, source{s: src.Source, way: src.Way})
+		s.sources = append(s.sources, source{s: src.Source, way: src.Way, gate: newGate(&src)})
 		s.next = append(s.next, src.Source.Next())
 		s.srcMin = min(s.srcMin, src.Source.Next())
 	}
@@ -308,7 +311,7 @@ func (n *Network) Finished() bool {
 				return false
 			}
 		}
-		if s.srcMin < n.cfg.Length {
+		if s.srcMin < n.cfg.Length || s.gateMin < des.Never {
 			return false
 		}
 	}

@@ -13,6 +13,7 @@ import (
 // in its pipe.
 type port struct {
 	disc     queue.Discipline
+	shedder  queue.Shedder // disc, if it may drop what it has kept; or nil
 	line     nodes.Line
 	free     des.Time // when the line is free for its next decision
 	waiting  int
@@ -72,7 +73,7 @@ func (q *port) segment(s *Site, end des.Time) {
 	}
 	q.in.reset()
 	if q.waiting > 0 && q.free < end && q.state != nodes.PortDown {
-		q.catch(end)
+		q.catch(s, end)
 	}
 }
 
@@ -137,11 +138,11 @@ func (q *port) arrive(s *Site, p *nodes.Packet, next des.Time) {
 	t := p.Due
 	if q.state != nodes.PortDown {
 		if q.waiting > 0 && q.free < t {
-			q.catch(t)
+			q.catch(s, t)
 		}
 		if q.waiting == 0 && q.free <= t {
 			q.free = t
-			if next > t {
+			if next > t && q.shedder == nil {
 				k := q.send(p, t)
 				if q.copy != nil {
 					q.double(k)
@@ -153,9 +154,9 @@ func (q *port) arrive(s *Site, p *nodes.Packet, next des.Time) {
 		s.lose(p, t, LostFlushed)
 		return
 	}
-	if q.disc.Enqueue(t, p) != queue.Kept {
+	if v := q.disc.Enqueue(t, p); v != queue.Kept {
 		q.count.lost++
-		s.lose(p, t, LostQueue)
+		s.lose(p, t, refusedBy(v))
 		return
 	}
 	q.area.AddProduct(uint64(q.waiting), uint64(t-q.changed))
@@ -164,10 +165,36 @@ func (q *port) arrive(s *Site, p *nodes.Packet, next des.Time) {
 	if b := q.disc.Backlog(); b > q.count.maxBytes {
 		q.count.maxBytes = b
 	}
+	if q.shedder != nil {
+		q.shed(s, t)
+	}
+}
+
+// refusedBy is the cause of a loss that a discipline decides.
+func refusedBy(v queue.Verdict) Cause {
+	if v == queue.Refused {
+		return LostAQM
+	}
+	return LostQueue
+}
+
+// shed loses what the discipline has just dropped of what was waiting; the area
+// under the number waiting is up to date.
+//
+//go:noinline
+func (q *port) shed(s *Site, now des.Time) {
+	dropped := q.shedder.Shed()
+	for i := range dropped {
+		p := &dropped[i].Packet
+		q.waiting--
+		q.waits.Add(uint64(now - p.Due))
+		q.count.lost++
+		s.lose(p, now, refusedBy(dropped[i].Verdict))
+	}
 }
 
 // catch takes every decision due before end.
-func (q *port) catch(end des.Time) {
+func (q *port) catch(s *Site, end des.Time) {
 	for q.waiting > 0 && q.free < end {
 		t := q.free
 		p := q.disc.Dequeue(t)
@@ -176,6 +203,9 @@ func (q *port) catch(end des.Time) {
 		q.waiting--
 		wait := t - p.Due
 		q.waits.Add(uint64(wait))
+		if q.shedder != nil {
+			q.shed(s, t)
+		}
 		if wait > 0 {
 			q.count.delayed++
 		}
@@ -247,6 +277,7 @@ func (q *port) flush(s *Site, now des.Time, cause Cause) {
 func (q *port) clone(pipes map[*pipe]*pipe) port {
 	c := *q
 	c.disc = q.disc.Clone()
+	c.shedder, _ = c.disc.(queue.Shedder)
 	c.load, c.loads, c.turns = slices.Clone(q.load), slices.Clone(q.loads), slices.Clone(q.turns)
 	c.pipe, c.copy, c.copied = pipes[q.pipe], pipes[q.copy], slices.Clone(q.copied)
 	c.in = arrivals{key: -1}

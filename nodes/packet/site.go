@@ -23,6 +23,7 @@ type Site struct {
 	sources []source
 	next    []des.Time // of each source
 	srcMin  des.Time
+	gateMin des.Time // when the next packet leaves a shaper, or Never
 
 	table *nodes.Table
 	steer []nodes.CircuitID // way -> circuit it is moved onto; nil: none is
@@ -86,6 +87,7 @@ type source struct {
 	bytes   uint64
 	markP   uint64 // at the end of the warm-up
 	markB   uint64
+	gate    *gate // what conditions it; or nil
 }
 
 // held is a way whose packets wait at the ingress.
@@ -151,7 +153,7 @@ func (s *Site) portOfCircuit(c nodes.CircuitID) *port {
 
 // nextWork reports when the site next has something to do.
 func (s *Site) nextWork() des.Time {
-	t := s.agenda.Next()
+	t := min(s.agenda.Next(), s.gateMin)
 	if s.srcMin < des.Never {
 		t = min(t, s.access.out(s.srcMin))
 	}
@@ -280,6 +282,9 @@ func (s *Site) segment(end des.Time) {
 	}
 	if before := s.access.before(end); s.srcMin < before {
 		s.emit(before)
+	}
+	if s.gateMin < end {
+		s.openGates(end)
 	}
 	for i := range s.ports {
 		q := &s.ports[i]
@@ -467,7 +472,7 @@ func (s *Site) emitOne(i int, limit des.Time) {
 	key := sourceKey + int32(i) // after every fibre input
 	bytes := uint64(0)
 	h := s.hop[src.way]
-	if h >= 0 && h < hopSets { // straight to the port
+	if h >= 0 && h < hopSets && src.gate == nil { // straight to the port
 		in := &s.ports[h].in
 		in.begin(key)
 		from := len(in.arena)
@@ -484,7 +489,10 @@ func (s *Site) emitOne(i int, limit des.Time) {
 		for j := range s.scratch {
 			k := &s.scratch[j]
 			bytes += uint64(k.Size)
-			s.enter(k, k.Due+s.access.at(k.Due), h, key)
+			due := k.Due + s.access.at(k.Due)
+			if src.gate == nil || s.passGate(src.gate, k, due) {
+				s.enter(k, due, h, key)
+			}
 		}
 		src.packets += uint64(len(s.scratch))
 	}
@@ -609,8 +617,13 @@ func (s *Site) addPort(c nodes.CircuitID, d nodes.Direction) {
 	p := s.net.plant
 	circuit := &p.Circuits[c]
 	s.portOf[c] = int16(len(s.ports))
+	disc := queue.New(queue.Config{
+		Classes: p.Classes, ClassOf: s.net.classOf, Rate: circuit.Rate, MTU: circuit.MTU, Overhead: circuit.Overhead,
+		Seed: s.net.cfg.Seed, Name: p.Sites[s.id].Name + " " + circuit.Name,
+	})
+	shedder, _ := disc.(queue.Shedder)
 	s.ports = append(s.ports, port{
-		disc: queue.NewTiers(p.Classes, s.net.classOf, circuit.Rate), line: nodes.NewLine(circuit.Rate),
+		disc: disc, shedder: shedder, line: nodes.NewLine(circuit.Rate),
 		overhead: circuit.Overhead, circuit: c, dir: d, in: arrivals{key: -1},
 		classOf: s.net.classOf, load: make([]uint64, len(p.Classes)),
 		hold: circuit.Carries == nodes.CarriesMoved && circuit.WhenDown == nodes.DownWait,
