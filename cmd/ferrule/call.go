@@ -31,6 +31,7 @@ type call struct {
 	outs   []string
 	level  string
 	gate   gateFlag
+	resume string
 	again  string // the command that makes the same again
 }
 
@@ -43,6 +44,11 @@ func (c *call) flags(cmd *cobra.Command) {
 	f.StringVar(&c.format, "format", "text", "of standard output: text, json, csv or md")
 	f.StringArrayVar(&c.outs, "out", nil, "write a file too, by suffix .html (a report), .json, .csv, .md, .txt or .xml (JUnit); may be repeated")
 	f.StringVar(&c.level, "log", "warn", "least level logged on standard error: debug, info, warn or error")
+}
+
+// resumeFlag adds --resume.
+func (c *call) resumeFlag(cmd *cobra.Command) {
+	cmd.Flags().StringVar(&c.resume, "resume", "", "keep each finished replication in this folder and repeat none that is there")
 }
 
 // seedFlag adds --seed.
@@ -80,6 +86,13 @@ func (c *call) begin(cmd *cobra.Command, args []string) (scenario, options, erro
 	opt := options{seed: c.seed, cores: c.cores, log: log, runs: c.asksPage(), progress: newProgress(c.env).show}
 	if !cmd.Flags().Changed("seed") {
 		opt.seed = sc.Seed()
+	}
+	if c.resume != "" {
+		s, err := openState(c.resume, sc.Hash(), buildVersion())
+		if err != nil {
+			return nil, options{}, fmt.Errorf("--resume: %w", err)
+		}
+		opt.store = s
 	}
 	if opt.cores == 0 {
 		opt.cores = runtime.GOMAXPROCS(0)

@@ -55,6 +55,7 @@ func newCompare(env Env) *cobra.Command {
 	}
 	c.flags(cmd)
 	c.gate.flag(cmd, true)
+	c.resumeFlag(cmd)
 	c.seedFlag(cmd, "first seed; the others follow it")
 	cmd.Flags().StringVar(&base, "base", base, "plan the others are compared with")
 	cmd.Flags().StringArrayVar(&only, "plan", nil, "compare this plan only; may be repeated (default all)")

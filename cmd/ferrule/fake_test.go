@@ -48,6 +48,7 @@ type fakeScenario struct {
 }
 
 func (s *fakeScenario) Seed() uint64       { return 7 }
+func (s *fakeScenario) Hash() string       { return "hash of " + s.kind }
 func (s *fakeScenario) Matrices() []string { return []string{"demand.csv"} }
 
 func (s *fakeScenario) Plans() []string {
@@ -103,6 +104,12 @@ func ctxOr(ctx context.Context, now bool) <-chan struct{} {
 func (s *fakeScenario) Batch(ctx context.Context, opt options, seeds []uint64) (*result.Batch, error) {
 	h, a, err := s.outcome(ctx)
 	return &result.Batch{Head: h, Plan: opt.plan, Seeds: seeds, Audit: a, Gates: fakeGates(string(s.in.data), opt.plan)}, err
+}
+
+func (s *fakeScenario) BatchUntil(ctx context.Context, opt options, p precision) (*result.Batch, error) {
+	b, err := s.Batch(ctx, opt, seedsFrom(opt.seed, p.first))
+	b.Stopping = &result.Stopping{Figure: p.figure, Precision: p.relative, AtMost: int64(p.atMost), Worst: strings.Join(p.periods, " ")}
+	return b, err
 }
 
 func (s *fakeScenario) Compare(ctx context.Context, opt options, base string, plans []string, seeds []uint64) (*result.Comparison, error) {

@@ -43,8 +43,23 @@ type options struct {
 	cores    int // at least 1
 	log      *zap.Logger
 	margin   float64                   // of a comparison, as study.Options has it
+	store    store                     // of finished replications; nil: none
 	runs     bool                      // batch and compare also hand out the runs of the first seed
 	progress func(done, total float64) // may be called from any goroutine
+}
+
+// A store keeps finished replications: study.Store.
+type store interface {
+	Load(name string) ([]byte, error)
+	Save(name string, data []byte) error
+}
+
+// A precision says when a batch has enough seeds: study.Precision.
+type precision struct {
+	figure        string
+	relative      float64
+	periods       []string
+	first, atMost int
 }
 
 // A scenario is loaded and can be studied. When ctx ends first, a study
@@ -52,10 +67,12 @@ type options struct {
 // ctx.Err().
 type scenario interface {
 	Seed() uint64       // as the file has it
+	Hash() string       // of the scenario as loaded
 	Plans() []string    // as-is first
 	Matrices() []string // the files of demand it reads
 	Run(ctx context.Context, opt options) (*result.Run, error)
 	Batch(ctx context.Context, opt options, seeds []uint64) (*result.Batch, error)
+	BatchUntil(ctx context.Context, opt options, p precision) (*result.Batch, error)
 	Compare(ctx context.Context, opt options, base string, plans []string, seeds []uint64) (*result.Comparison, error)
 	Check(ctx context.Context, opt options) (*result.Check, error)
 }

@@ -46,6 +46,7 @@ func (wired) Open(name string) (input, error) {
 type loaded struct{ sc *scenarios.Scenario }
 
 func (l loaded) Seed() uint64       { return l.sc.Run.Seed }
+func (l loaded) Hash() string       { return l.sc.Hash }
 func (l loaded) Matrices() []string { return l.sc.Matrices }
 
 func (l loaded) Plans() []string {
@@ -57,7 +58,7 @@ func (l loaded) Plans() []string {
 }
 
 func (o options) study() study.Options {
-	return study.Options{Plan: o.plan, Seed: o.seed, Cores: o.cores, Log: o.log, Progress: o.progress, Margin: o.margin, Runs: o.runs}
+	return study.Options{Plan: o.plan, Seed: o.seed, Cores: o.cores, Log: o.log, Progress: o.progress, Margin: o.margin, Store: o.store, Runs: o.runs}
 }
 
 func (l loaded) Run(ctx context.Context, opt options) (*result.Run, error) {
@@ -66,6 +67,10 @@ func (l loaded) Run(ctx context.Context, opt options) (*result.Run, error) {
 
 func (l loaded) Batch(ctx context.Context, opt options, seeds []uint64) (*result.Batch, error) {
 	return study.Batch(ctx, l.sc, opt.study(), seeds)
+}
+
+func (l loaded) BatchUntil(ctx context.Context, opt options, p precision) (*result.Batch, error) {
+	return study.BatchUntil(ctx, l.sc, opt.study(), study.Precision{Figure: p.figure, Relative: p.relative, Periods: p.periods, First: p.first, AtMost: p.atMost})
 }
 
 func (l loaded) Compare(ctx context.Context, opt options, base string, plans []string, seeds []uint64) (*result.Comparison, error) {

@@ -34,7 +34,7 @@ func Batch(ctx context.Context, sc *scenarios.Scenario, o Options, seeds []uint6
 	if len(seeds) == 0 {
 		seeds = Seeds(o.seed(sc), defaultSeeds)
 	}
-	return batch(ctx, o, seeds, replicator(sc, o))
+	return batch(ctx, o, seeds, replicatorOf(sc, o))
 }
 
 // defaultSeeds is how many seeds a study takes when none are given.

@@ -58,7 +58,7 @@ func Compare(ctx context.Context, sc *scenarios.Scenario, o Options, base string
 	if len(seeds) == 0 {
 		seeds = Seeds(o.seed(sc), comparedSeeds)
 	}
-	return compare(ctx, o, append([]string{base}, plans...), seeds, replicator(sc, o))
+	return compare(ctx, o, append([]string{base}, plans...), seeds, replicatorOf(sc, o))
 }
 
 // compare is Compare with the runs of run; plans[0] is the base.

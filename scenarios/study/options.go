@@ -18,6 +18,7 @@ type Options struct {
 	Log      *zap.Logger // nil: nothing is logged
 	Progress func(done, total float64)
 	Margin   float64 // in a comparison, the share of a limit or a figure that does not matter; 0: DefaultMargin
+	Store    Store   // keeps finished replications of studies of several; nil: none are kept
 	Runs     bool    // a batch or a comparison also hands out the runs of its first seed
 }
 

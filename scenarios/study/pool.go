@@ -30,6 +30,12 @@ func replicator(sc *scenarios.Scenario, o Options) replicate {
 	}
 }
 
+// replicatorOf is the replicator of sc that takes from the store of o what it
+// holds, and saves there.
+func replicatorOf(sc *scenarios.Scenario, o Options) replicate {
+	return resuming(replicator(sc, o), o.Store, sc.Hash)
+}
+
 // sampleAll carries out jobs on so many cores and keeps of each run what a
 // study needs, by index; nil for a run that did not finish. The error is that
 // of the first job that failed, in the order of jobs, or that of ctx; all
