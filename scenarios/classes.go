@@ -70,6 +70,11 @@ func (r *resolver) resolveClasses() {
 		} else {
 			r.unless(p, "buffer", FormatTime(defaultBuffer))
 		}
+		c.Drop = nodes.DropPolicy(r.choice(p.field("drop"), raw.Drop, dropWords, int(nodes.DropTail)))
+		if c.ECN = value(raw.ECN, false); c.ECN && c.Drop == nodes.DropTail {
+			p.field("ecn").fault("write drop: red, codel or fq-codel as well", "a queue that drops from the tail marks nothing")
+			c.ECN = false
+		}
 		r.unless(p, "queue", "fifo")
 		r.unless(p, "dscp", "BE")
 		if q := p.field("traffic"); q.given() {
@@ -84,9 +89,9 @@ func (r *resolver) resolveClasses() {
 	}
 }
 
-// queue reads "strict", "fifo" or "weight 60%".
+// queue reads "strict", "fifo", "weight 60%" or "wfq 60%".
 func (r *resolver) queue(p *place, text string) (nodes.Queueing, int) {
-	const hint = "write strict, fifo, or weight and a percentage, such as weight 60%"
+	const hint = "write strict, fifo, or weight or wfq and a percentage, such as weight 60%"
 	if text == "" {
 		if p.given() && p.node.Value == "" {
 			p.fault(hint, "is empty")
@@ -98,13 +103,17 @@ func (r *resolver) queue(p *place, text string) (nodes.Queueing, int) {
 		return nodes.QueueStrict, 0
 	case text == "fifo":
 		return nodes.QueueFIFO, 0
-	case word == "weight":
+	case word == "weight" || word == "wfq":
+		kind := nodes.QueueWeight
+		if word == "wfq" {
+			kind = nodes.QueueFair
+		}
 		w, f := suffixed(strings.TrimSpace(rest), "%", "a percentage")
 		if f != nil || w != math.Trunc(w) || w < 1 || w > 100 {
 			p.fault("write a whole percentage from 1% to 100%", "%q is not a weight", rest)
-			return nodes.QueueWeight, 1
+			return kind, 1
 		}
-		return nodes.QueueWeight, int(w)
+		return kind, int(w)
 	}
 	p.fault(hint, "%q is not a kind of queue", text)
 	return nodes.QueueFIFO, 0
@@ -119,8 +128,12 @@ func (r *resolver) queueOrder(p *place, i int) {
 	switch {
 	case (here.Queue == nodes.QueueFIFO) != (above.Queue == nodes.QueueFIFO):
 		q.fault("make all classes fifo, or none", "fifo does not go together with strict or weight")
-	case here.Queue == nodes.QueueStrict && above.Queue == nodes.QueueWeight:
+	case here.Queue == nodes.QueueStrict && above.Queue != nodes.QueueStrict:
 		q.fault("move it above them", "a strict class stands below classes with a weight")
+	case here.Queue != above.Queue && above.Queue != nodes.QueueStrict:
+		q.fault("write weight for all of them, or wfq", "weight does not go together with wfq")
+	case here.Queue == nodes.QueueFIFO && here.Drop != above.Drop:
+		p.field("drop").fault("write the same for all fifo classes: they share a queue", "differs from the class %s", above.Name)
 	}
 }
 

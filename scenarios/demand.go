@@ -38,6 +38,7 @@ func (r *resolver) resolveAggregates() {
 		r.load(p, raw, &a)
 		r.interval(p, a.Start, a.Stop)
 		r.overlap(p, &a)
+		r.condition(p, raw, &a)
 		r.s.Aggregates = append(r.s.Aggregates, a)
 	}
 	if len(r.s.Aggregates) > maxAggregates {

@@ -134,6 +134,7 @@ var (
 		"delay-mean", "delay-p50", "delay-p95", "delay-p99", "delay-p99.9",
 		"pdv-p50", "pdv-p95", "pdv-p99", "pdv-p99.9", "ipdv-p99.9", "jitter", "loss", "out",
 	}
+	dropWords      = []string{"tail", "red", "codel", "fq-codel"} // in the order of nodes.DropPolicy
 	commandWords   = []string{"by-kind", "parallel", "sequence"}
 	reportWords    = []string{"fibre", "circuit"}
 	sizeWords      = []string{"slots", "container", "channel"}

@@ -81,6 +81,8 @@ type rawClass struct {
 	DSCP      *codePoint   `mapstructure:"dscp"`
 	Queue     string       `mapstructure:"queue"`
 	Buffer    *buffer      `mapstructure:"buffer"`
+	Drop      string       `mapstructure:"drop"`
+	ECN       *bool        `mapstructure:"ecn"`
 	Traffic   string       `mapstructure:"traffic"`
 	Objective rawObjective `mapstructure:"objective"`
 }
@@ -172,6 +174,22 @@ type rawAggregate struct {
 	Traffic string      `mapstructure:"traffic"`
 	Start   *des.Time   `mapstructure:"start"`
 	Stop    *des.Time   `mapstructure:"stop"`
+	Police  rawPolice   `mapstructure:"police"`
+	Shape   rawShape    `mapstructure:"shape"`
+}
+
+type rawPolice struct {
+	Rate      *nodes.Rate  `mapstructure:"rate"`
+	Burst     *nodes.Bytes `mapstructure:"burst"`
+	Excess    *nodes.Bytes `mapstructure:"excess"`
+	Peak      *nodes.Rate  `mapstructure:"peak"`
+	PeakBurst *nodes.Bytes `mapstructure:"peak-burst"`
+}
+
+type rawShape struct {
+	Rate    *nodes.Rate  `mapstructure:"rate"`
+	Burst   *nodes.Bytes `mapstructure:"burst"`
+	Longest *des.Time    `mapstructure:"longest"`
 }
 
 type rawRequest struct {

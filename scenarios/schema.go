@@ -88,8 +88,10 @@ type Class struct {
 	BufferTime    des.Time    // buffer as time at the port's rate; 0 if BufferBytes is given
 	BufferBytes   nodes.Bytes // buffer as data; 0 if BufferTime is given
 	BufferPackets int         // buffer as a number of waiting packets; 0 if another is given
-	Traffic       int         // index in Scenario.Traffic, or nodes.None
-	Objective     []Limit     // in the order of the Figure constants
+	Drop          nodes.DropPolicy
+	ECN           bool    // marked instead of dropped where the transport can take it; never with nodes.DropTail
+	Traffic       int     // index in Scenario.Traffic, or nodes.None
+	Objective     []Limit // in the order of the Figure constants
 }
 
 // Limit is one objective of a class: a figure and what it must not exceed.
@@ -190,6 +192,26 @@ type Aggregate struct {
 	Flows    int        // each way; 0 if Load is given
 	Start    des.Time
 	Stop     des.Time // des.Never if it goes on to the end
+	Police   *Police  // each way for itself; nil: not policed
+	Shape    *Shape   // each way for itself, after the policer; nil: not shaped
+}
+
+// Police is a three-colour policer at an ingress, blind to colours: what is
+// red is discarded. With Peak it has two rates (RFC 2698), else one (RFC 2697).
+type Police struct {
+	Rate      nodes.Rate
+	Burst     nodes.Bytes
+	Excess    nodes.Bytes // of a single rate; may be 0
+	Peak      nodes.Rate  // 0: a single rate
+	PeakBurst nodes.Bytes
+}
+
+// Shape is a shaper at an ingress: a token bucket that holds packets until it
+// has what they take.
+type Shape struct {
+	Rate    nodes.Rate
+	Burst   nodes.Bytes
+	Longest des.Time // what would be held longer is discarded
 }
 
 // Request is a stream of circuits that are asked for, held and given back.

@@ -7,6 +7,7 @@ import (
 	"ferrule/controller/central"
 	"ferrule/des"
 	"ferrule/nodes"
+	"ferrule/nodes/conditioner"
 	"ferrule/nodes/packet"
 	"ferrule/scenarios"
 	"ferrule/workloads"
@@ -70,13 +71,26 @@ func NewWith(sc *scenarios.Scenario, plan *scenarios.Plan, seed uint64, o Option
 			}
 			way := nodes.WayOf(nodes.AggID(i), d)
 			m.Asked[way] = s.MeanRate()
-			cfg.Sources = append(cfg.Sources, packet.Source{Way: way, Source: s})
+			cfg.Sources = append(cfg.Sources, conditioned(&sc.Aggregates[i], packet.Source{Way: way, Source: s}))
 		}
 	}
 	if m.Network, err = packet.New(cfg); err != nil {
 		return nil, err
 	}
 	return m, m.control()
+}
+
+// conditioned adds to a source what conditions its aggregate.
+func conditioned(a *scenarios.Aggregate, s packet.Source) packet.Source {
+	if p := a.Police; p != nil && p.Peak > 0 {
+		s.Meter = conditioner.NewTwoRate(p.Rate, p.Peak, p.Burst, p.PeakBurst, false)
+	} else if p != nil {
+		s.Meter = conditioner.NewSingleRate(p.Rate, p.Burst, p.Excess, false)
+	}
+	if c := a.Shape; c != nil {
+		s.Shaper = conditioner.NewShaper(c.Rate, c.Burst, c.Longest)
+	}
+	return s
 }
 
 // control starts the controller and books the acts.

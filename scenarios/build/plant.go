@@ -56,6 +56,7 @@ func Plant(sc *scenarios.Scenario, plan *scenarios.Plan) (*nodes.Plant, error) {
 		c := &sc.Classes[i]
 		p.Classes = append(p.Classes, nodes.Class{
 			Name: c.Name, Queue: c.Queue, Weight: c.Weight, BufferTime: c.BufferTime, BufferBytes: c.BufferBytes, BufferPackets: c.BufferPackets,
+			Drop: c.Drop, ECN: c.ECN,
 		})
 	}
 	for i := range sc.Aggregates {
