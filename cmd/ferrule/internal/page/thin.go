@@ -36,7 +36,9 @@ func thinned(r *result.Run, until map[float64]float64) *result.Run {
 		for _, p := range r.Periods {
 			if p.Kind == result.Hit && inside(s, p.FromS) {
 				c := clipped(s, p.FromS-1, until[p.FromS]+afterCare)
-				x.Series = append(x.Series, folded(&c, sparse(&c)))
+				by := sparse(&c)
+				c = clipped(&c, c.FromS, c.FromS+c.WidthS*float64(len(c.OfferedPackets)/by*by)) // whole bins only
+				x.Series = append(x.Series, folded(&c, by))
 			}
 		}
 	}

@@ -77,7 +77,7 @@ func TestCloseUps(t *testing.T) {
 				}
 			}
 			end := s.FromS + s.WidthS*float64(len(s.OfferedPackets))
-			if math.Abs(s.FromS-0.5) > 1e-9 || end < min(settled+afterCare, 3)-1e-9 {
+			if math.Abs(s.FromS-0.5) > 1e-9 || end < min(settled+afterCare, 3)-s.WidthS {
 				t.Errorf("run %d, %s: from %g to %g s, want from 0.5 s to beyond %g s", i, s.Class, s.FromS, end, settled)
 			}
 		}

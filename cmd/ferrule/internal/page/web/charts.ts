@@ -24,12 +24,13 @@ export const figures: { id: Figure; title: string; unit: "s" | "share" | "bit/s"
 
 type Column = (number | null)[];
 
-function column(s: Series, figure: Figure | "most"): Column {
+// column is a figure of a series; the last bin ends with the run.
+function column(s: Series, figure: Figure | "most", end: number): Column {
   switch (figure) {
     case "delay": return s.mean_delay_s;
     case "most": return s.max_delay_s;
     case "loss": return s.offered_packets.map((n, i) => (n > 0 ? s.lost_packets[i] / n : null));
-    case "load": return s.delivered_bits.map((b) => b / s.width_s);
+    case "load": return s.delivered_bits.map((b, i) => b / Math.min(s.width_s, end - s.from_s - i * s.width_s));
   }
 }
 
@@ -93,12 +94,12 @@ export function overTime(runs: Run[], all: Look[], cls: string, figure: Figure, 
     const s = (run.series ?? []).find((x) => x.class === cls && !!x.close === close && x.from_s < to && x.from_s + x.width_s * x.offered_packets.length > from);
     if (!s) return;
     const x = s.offered_packets.map((_, k) => s.from_s + s.width_s * (k + 0.5));
-    const columns: Column[] = [column(s, figure)];
+    const columns: Column[] = [column(s, figure, run.length_s)];
     const value = (_u: uPlot, v: number | null) => (v === null ? "–" : write[unit](v));
     const stepped = figure !== "delay" && close ? uPlot.paths.stepped!({ align: 1 }) : undefined;
     series.push({ label: all[i].name, stroke: all[i].colour, width: all[i].width, dash: all[i].dash, points: { show: false }, value, paths: stepped });
     if (figure === "delay") {
-      columns.push(column(s, "most"));
+      columns.push(column(s, "most", run.length_s));
       series.push({ label: all[i].name + " greatest", stroke: all[i].colour, width: 0.6, dash: all[i].dash, points: { show: false }, value });
     }
     xs.push(x);
