@@ -71,6 +71,15 @@ type Report struct {
 	Reason      string // why it is blocked or could not be restored
 }
 
+// PolicyReport counts what the policy of a circuit has decided.
+type PolicyReport struct {
+	Circuit   nodes.CircuitID
+	Grown     int
+	Shrunk    int
+	Blocked   int // decisions that could not be carried out
+	Reversals int // decisions the other way than the one before
+}
+
 // StepState is where an order stands.
 type StepState uint8
 

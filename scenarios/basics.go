@@ -151,6 +151,8 @@ func (r *resolver) timing(p *place, raw rawTiming) {
 	t.Switch = span("switch", raw.Switch, defaultSwitch)
 	t.Relock = span("re-lock", raw.Relock, defaultRelock)
 	t.Level = span("level", raw.Level, defaultLevel)
+	t.Ramp = Ramp(r.choice(p.field("ramp"), raw.Ramp, rampWords, int(RampStandard)))
+	r.unless(p, "ramp", RampStandard.String()+", 512Mbps each second")
 	t.Report = Report(r.choice(p.field("report"), raw.Report, reportWords, int(ReportFibre)))
 	r.unless(p, "report", ReportFibre.String())
 	t.Correlation = span("correlation", raw.Correlation, 0)

@@ -61,6 +61,7 @@ func (r *resolver) circuit(p *place, raw *rawCircuit) Circuit {
 	c.SetUpPriority, c.HoldingPriority = r.priorities(p, raw.SetUpPriority, raw.HoldingPriority, nodes.None)
 	r.fits(p, &c, value(raw.Channel, 0))
 	r.twoRoutes(p, &c)
+	c.Policy = r.policy(p.field("policy"), &raw.Policy, &c)
 	return c
 }
 

@@ -136,6 +136,7 @@ var (
 	}
 	dropWords      = []string{"tail", "red", "codel", "fq-codel"} // in the order of nodes.DropPolicy
 	commandWords   = []string{"by-kind", "parallel", "sequence"}
+	rampWords      = []string{"standard", "none"}
 	reportWords    = []string{"fibre", "circuit"}
 	sizeWords      = []string{"slots", "container", "channel"}
 	framingWords   = []string{"gfp", "none"}
@@ -163,6 +164,9 @@ func (f Figure) String() string { return word(figureWords, uint8(f)) }
 
 // String returns the word of the file.
 func (c CommandOrder) String() string { return word(commandWords, uint8(c)) }
+
+// String returns the word of the file.
+func (r Ramp) String() string { return word(rampWords, uint8(r)) }
 
 // String returns the word of the file.
 func (r Report) String() string { return word(reportWords, uint8(r)) }

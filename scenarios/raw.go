@@ -69,6 +69,7 @@ type rawTiming struct {
 	Switch         *des.Time `mapstructure:"switch"`
 	Relock         *des.Time `mapstructure:"re-lock"`
 	Level          *des.Time `mapstructure:"level"`
+	Ramp           string    `mapstructure:"ramp"`
 	Report         string    `mapstructure:"report"`
 	Correlation    *des.Time `mapstructure:"correlation"`
 	TrafficReady   *des.Time `mapstructure:"traffic-ready"`
@@ -152,6 +153,7 @@ type rawCircuit struct {
 	HoldingPriority *int         `mapstructure:"holding-priority"`
 	HoldOff         *des.Time    `mapstructure:"hold-off"`
 	Shrink          *bool        `mapstructure:"shrink"`
+	Policy          rawPolicy    `mapstructure:"policy"`
 	WhenDown        string       `mapstructure:"when-down"`
 	MTU             *nodes.Bytes `mapstructure:"mtu"`
 	Framing         string       `mapstructure:"framing"`

@@ -67,7 +67,7 @@ func TestCoast(t *testing.T) {
 	check("scaled", s.Timeline[2].Moved, []MovedWay{{Way: 4}, {Way: 6}}) // aggregates 2 and 3, one way each
 	check("defaults", strings.Join(s.Defaults, "\n"), strings.Join([]string{
 		"defaults.timing.switch = 50ms", "defaults.timing.re-lock = 1s", "defaults.timing.level = 1s",
-		"defaults.timing.report = fibre", "defaults.timing.correlation = 0s",
+		"defaults.timing.ramp = standard, 512Mbps each second", "defaults.timing.report = fibre", "defaults.timing.correlation = 0s",
 		"defaults.timing.traffic-ready = 0s", "defaults.timing.converge = 200ms",
 		"defaults.timing.commands = parallel for slots, sequence for channels", "defaults.timing.loss-of-message = 0",
 		"traffic.calls.flows-arrive = none", "traffic.stream.flows-arrive = none", "traffic.stream.group-of-pictures = 12",

@@ -62,12 +62,22 @@ type Timing struct {
 	Switch         des.Time // from loss of light to the other copy, at the tail of a 1+1 circuit
 	Relock         des.Time // a receiver's on a wavelength that is new to it
 	Level          des.Time // of optical power after a wavelength is added, for each fibre of its route
+	Ramp           Ramp     // how a resize changes a rate
 	Report         Report   // what the controller is told of when a fibre is cut
 	Correlation    des.Time // how long it gathers reports before it restores anything
 	TrafficReady   des.Time // from the last command done to the circuit fit for traffic
 	Converge       des.Time // until the management way is known again after a cut
 	LossOfMessage  float64  // probability in [0, 1) that a control message is lost
 }
+
+// Ramp says how a resize changes the rate of a circuit.
+type Ramp uint8
+
+// Ramps.
+const (
+	RampStandard Ramp = iota // at the slope of an ODUflex, 512 Mb/s per second (ITU-T G.7044)
+	RampNone                 // at once
+)
 
 // Report says what the controller takes for the report of a fault.
 type Report uint8
@@ -84,7 +94,7 @@ type Class struct {
 	Pos           Pos
 	DSCP          uint8 // 0..63 (RFC 2474)
 	Queue         nodes.Queueing
-	Weight        int         // per cent of what strict classes leave; 0 unless nodes.QueueWeight
+	Weight        int         // per cent of what strict classes leave; 0 unless nodes.QueueWeight or nodes.QueueFair
 	BufferTime    des.Time    // buffer as time at the port's rate; 0 if BufferBytes is given
 	BufferBytes   nodes.Bytes // buffer as data; 0 if BufferTime is given
 	BufferPackets int         // buffer as a number of waiting packets; 0 if another is given
@@ -167,10 +177,11 @@ type Circuit struct {
 
 	Carries         nodes.Carriage
 	Recovery        nodes.Recovery
-	Metric          int64 // at least 1; 0 means the delay of its route in ps
-	SetUpPriority   int   // 0 (highest) to 7; nodes.None: from the highest class it carries
-	HoldingPriority int   // likewise
-	Shrink          bool  // may be restored with fewer slots
+	Metric          int64   // at least 1; 0 means the delay of its route in ps
+	SetUpPriority   int     // 0 (highest) to 7; nodes.None: from the highest class it carries
+	HoldingPriority int     // likewise
+	Shrink          bool    // may be restored with fewer slots
+	Policy          *Policy // nil: its slots do not follow its load
 	HoldOff         des.Time
 	WhenDown        nodes.WhenDown
 	MTU             nodes.Bytes

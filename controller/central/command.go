@@ -16,6 +16,7 @@ const (
 	ownerTask                     // a task, by number
 	ownerRequest                  // a request, by place
 	ownerTable                    // the table of the site it went to
+	ownerPoll                     // a circuit under a policy, by place
 	ownerAsk                      // a question that is asked again when a fibre is lit
 )
 
@@ -170,6 +171,8 @@ func (c *Controller) answered(m *nodes.Message) {
 	c.drop(cmd)
 	switch done.owner {
 	case ownerNone, ownerAsk:
+	case ownerPoll:
+		c.polled(done.index, done.to, m.Ref.(*reading))
 	case ownerTask:
 		if m.N == answerDone {
 			c.carriedOut(done.index, &done)
@@ -192,7 +195,7 @@ func (c *Controller) unanswered(cmd *command) {
 	}
 	c.deaf = c.deaf || cmd.m.Settles
 	switch cmd.owner {
-	case ownerAsk:
+	case ownerAsk, ownerPoll:
 	case ownerNone:
 		c.owed = append(c.owed, owed{to: cmd.to, m: cmd.m})
 	case ownerTask:

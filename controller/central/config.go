@@ -37,6 +37,9 @@ type Config struct {
 	PerCircuit     bool       // a fault is what the ends of each circuit report, not what those of a fibre do
 	Correlate      des.Time   // how long reports are gathered before anything is restored
 	OrderBound     des.Time   // what is added to the difference of delays to keep order; default 5 ms
+	Ramp           bool       // slots change their rate at the slope of an ODUflex, not at once
+	Poll           des.Time   // between two readings of the circuits under a policy; default 1 s
+	Policies       []Policy   // of circuits whose slots follow their load
 	Streams        []Stream   // circuit demand without packets
 }
 
@@ -71,6 +74,12 @@ func (c Config) withDefaults(p *nodes.Plant) Config {
 	if c.Attempts == 0 {
 		c.Attempts = 3
 	}
+	if c.Poll == 0 {
+		c.Poll = des.Second
+	}
+	for i := range c.Policies {
+		c.Policies[i].check(p)
+	}
 	if c.CommandsAtOnce == 0 {
 		c.CommandsAtOnce = 1
 	}
@@ -81,7 +90,7 @@ func (c Config) withDefaults(p *nodes.Plant) Config {
 		panic("central: the controller stands at no site")
 	}
 	if c.Compute < 0 || c.Retry < 0 || c.Attempts < 0 || c.CommandsAtOnce < 0 || c.TrafficReady < 0 || c.WaitToRestore < 0 || c.OrderBound < 0 ||
-		c.Relock < 0 || c.Level < 0 || c.Correlate < 0 {
+		c.Poll < 0 || c.Relock < 0 || c.Level < 0 || c.Correlate < 0 {
 		panic("central: a negative duration or number in the configuration")
 	}
 	for i := range p.Fibres {

@@ -17,6 +17,7 @@ type Controller struct {
 	fibres   []fibre
 	sites    []site
 	drains   []drain
+	watched  []watched         // as in Config.Policies
 	free     []int64           // slots it believes free on each fibre, each way
 	spare    []path.Set        // whole channels it believes free on each fibre
 	ways     []way             // by way
@@ -72,6 +73,8 @@ func (c *Controller) Handle(x nodes.Local, now des.Time, m nodes.Message) {
 		c.computed()
 	case opUnplaced:
 		c.unplaced(m.Circuit, m.N)
+	case opPollAll:
+		c.poll()
 	case opGathered:
 		c.gatherEnds()
 	case opAfter:

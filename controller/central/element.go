@@ -69,6 +69,12 @@ func (e *Element) clone() *Element {
 	c.queue = slices.Clone(e.queue)
 	c.books = maps.Clone(e.books)
 	c.ends = slices.Clone(e.ends)
+	for i := range c.ends {
+		if r := c.ends[i].ramp; r != nil {
+			n := *r
+			c.ends[i].ramp = &n
+		}
+	}
 	c.alarms = slices.Clone(e.alarms)
 	c.unheard = slices.Clone(e.unheard)
 	c.steered = maps.Clone(e.steered)
@@ -105,11 +111,12 @@ func (e *Element) dispatch(m *nodes.Message) {
 	case opDrained:
 		e.drained(m)
 	case opRate:
-		if n := e.end(m.Circuit); n.rated < m.A {
-			n.rated = m.A
-			e.x.SetRate(m.Circuit, nodes.Rate(m.B))
-		}
-		e.answer(m, answerDone)
+		e.setRate(m)
+	case opRamp:
+		e.rampOn(m)
+	case opPoll:
+		r := &reading{e.x.Counters(m.Circuit), e.now}
+		e.x.Send(e.k.cfg.Site, nodes.Message{Op: opAnswer, A: m.A, N: answerDone, Circuit: m.Circuit, Ref: r})
 	case opInstall:
 		e.install(m)
 	case opSteer:

@@ -20,10 +20,11 @@ type end struct {
 	timer       int64   // of the hold-off that runs; 0: none
 	draining    int64   // command to drain; 0: none
 	rated       int64   // last command about the rate
+	ramp        *ramping
 }
 
 // busy says whether the port is about to change.
-func (n end) busy() bool { return n.opening || n.timer != 0 || n.draining != 0 }
+func (n end) busy() bool { return n.ramp != nil || n.opening || n.timer != 0 || n.draining != 0 }
 
 // alarm is what the controller has not yet confirmed to have heard.
 type alarm struct {

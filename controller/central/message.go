@@ -18,6 +18,7 @@ const (
 	opInstall                              // Ref = *nodes.Table
 	opSteer                                // Way by Circuit, held for B ps first
 	opHeard                                // an agent's alarm A has been heard
+	opPoll                                 // tell what the end of Circuit has counted
 	opAsk                                  // say again what has gone unheard
 
 	// Messages of the agents.
@@ -30,11 +31,13 @@ const (
 	opSwitched   // the cross-connect has carried out command A
 	opReady      // traffic may go: Circuit, N
 	opHoldOff    // hold-off of Circuit is over: A
+	opRamp       // the next step of a rate on its way: Circuit, A
 	opDrained    // look whether Circuit still has packets waiting: A
 	opAlarmAgain // alarm A is still unheard
 
 	// What the controller tells itself later.
 	opComputed // the job in hand is decided
+	opPollAll  // ask the circuits under a policy
 	opOverdue  // look for unanswered commands
 	opUnplaced // the fault of Circuit, incarnation N, is still not located
 	opGathered // the correlation window is over

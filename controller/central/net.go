@@ -37,6 +37,10 @@ func New(p *nodes.Plant, cfg Config, orders []controller.Order) *Net {
 	for i := range orders {
 		n.ctl.steps = append(n.ctl.steps, newStep(&orders[i]))
 	}
+	n.ctl.watched = make([]watched, len(cfg.Policies))
+	for i := range n.ctl.watched {
+		n.ctl.watched[i].forget()
+	}
 	for i := range cfg.Streams {
 		n.ctl.streams = append(n.ctl.streams, stream{demand: cfg.Streams[i].Demand})
 	}
@@ -82,6 +86,7 @@ func (n *Net) Start(locals []nodes.Local, moves []controller.Order) error {
 	for i := range n.k.cfg.Streams {
 		c.bookArrival(i, home)
 	}
+	c.bookPoll(home, 0)
 	return errors.Join(faults...)
 }
 
@@ -221,6 +226,7 @@ func (c *Controller) clone() *Controller {
 	d.scratch = scratch{mask: path.NewMask(c.finder.Graph()), sites: slices.Clone(c.scratch.sites)}
 	d.commands = c.commands.clone()
 	d.owed = slices.Clone(c.owed)
+	d.watched = slices.Clone(c.watched)
 	d.gathered = slices.Clone(c.gathered)
 	d.tasks = make([]*task, len(c.tasks))
 	for i, t := range c.tasks {

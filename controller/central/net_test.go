@@ -35,6 +35,7 @@ type fakeSite struct {
 	ports  []nodes.PortState // by circuit
 	rates  []nodes.Rate
 	queue  []nodes.Bytes
+	count  []nodes.PortCounters // SentBytes, SentPackets, LostPackets: what Counters tells
 	trails []nodes.Trail
 	copies []nodes.Trail // 1+1
 	upAt   []des.Time
@@ -101,7 +102,9 @@ func (s *fakeSite) Hold(w uint16, until des.Time) { s.until[w], s.heldAt[w] = un
 func (s *fakeSite) Counters(c nodes.CircuitID) nodes.PortCounters {
 	q := s.queue[c]
 	s.queue[c] = 0 // sent by the time of the next look
-	return nodes.PortCounters{QueueBytes: q, Rate: s.rates[c]}
+	n := s.count[c]
+	n.QueueBytes, n.Rate = q, s.rates[c]
+	return n
 }
 func (s *fakeSite) Pending(delta int) { s.f.under += delta }
 func (s *fakeSite) Note(what, subject, detail string) {
@@ -121,6 +124,7 @@ func newFakeSite(f *fakeNet, id nodes.SiteID) fakeSite {
 	n, w := len(f.plant.Circuits), 2*len(f.plant.Aggregates)
 	s := fakeSite{
 		f: f, id: id, ports: make([]nodes.PortState, n), rates: make([]nodes.Rate, n), queue: make([]nodes.Bytes, n),
+		count:  make([]nodes.PortCounters, n),
 		trails: make([]nodes.Trail, n), copies: make([]nodes.Trail, n), upAt: slices.Repeat([]des.Time{-1}, n),
 		ways: slices.Repeat([]nodes.CircuitID{nodes.None}, w), until: make([]des.Time, w), heldAt: make([]des.Time, w),
 	}

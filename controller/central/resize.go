@@ -24,6 +24,7 @@ func (c *Controller) resize(id int32) {
 		if int64(more) > c.free[f] {
 			why := fmt.Sprintf("fibre %s has %d free slots, not %d", c.k.fibreName(f), c.free[f], more)
 			c.x.Note("resize blocked", name, why)
+			c.policyBlocked(t)
 			c.end(id, why)
 			return
 		}
@@ -55,8 +56,12 @@ func (c *Controller) assignSlots(id int32) {
 func (c *Controller) sendRate(id int32) {
 	t := c.tasks[id]
 	t.waiting = 2
+	m := c.rateMessage(t.circuit, t.rate)
+	if r := c.rampFor(t.had, t.slots); r != nil {
+		m.Ref = r
+	}
 	for _, s := range c.k.plant.Circuits[t.circuit].Ends {
-		c.command(s, c.rateMessage(t.circuit, t.rate), ownerTask, id)
+		c.command(s, m, ownerTask, id)
 	}
 }
 
@@ -121,5 +126,6 @@ func (c *Controller) resizeFails(id int32, why string) {
 		c.enter(t.circuit, c.upState(t.circuit))
 	}
 	c.x.Note("resize failed", c.k.circuitName(t.circuit), why)
+	c.policyBlocked(t)
 	c.end(id, why)
 }

@@ -191,7 +191,7 @@ func (n *Network) darkPlace(to *Site, p *pipe, now, offset des.Time, by int) {
 	m := nodes.Message{From: to.id, To: to.id, Circuit: p.circuit, N: p.incarnation, Settles: true}
 	if by > 0 {
 		p.prune(now)
-		p.darken(darkSpan{fibre: equipment, span: int(offset / max(1, p.delay)), offset: offset, from: now, to: des.Never})
+		p.darken(darkSpan{fibre: equipment, offset: offset, from: now, to: des.Never})
 		m.At, m.Op = now+p.delay-offset+n.cfg.Detect, nodes.OpLightLost
 		if p.open {
 			to.book(m)
@@ -210,16 +210,25 @@ func (n *Network) darkPlace(to *Site, p *pipe, now, offset des.Time, by int) {
 	}
 }
 
-// darkEquipment darkens a new pipe where the equipment at its ends is broken.
-func (n *Network) darkEquipment(to *Site, p *pipe, now des.Time) {
+// darkEquipment darkens a new pipe where the equipment at its ends is broken. It
+// has been so since the pipe was opened; its end sees that when light would
+// have come.
+func (n *Network) darkEquipment(to *Site, p *pipe) {
+	opened := p.lines[0].from
+	dark := func(offset des.Time) {
+		p.darken(darkSpan{fibre: equipment, offset: offset, from: opened, to: des.Never})
+		to.book(nodes.Message{
+			At: opened + p.delay + n.cfg.Detect, From: to.id, To: to.id, Op: nodes.OpLightLost, Circuit: p.circuit, N: p.incarnation, Settles: true,
+		})
+	}
 	from := n.sites[p.from]
 	if q := from.portOfCircuit(p.circuit); q != nil {
-		for range q.dead + min(from.deadRouter, 1) {
-			n.darkPlace(to, p, now, 0, 1)
+		for range min(q.dead, 1) + min(from.deadRouter, 1) {
+			dark(0)
 		}
 	}
 	if q := to.portOfCircuit(p.circuit); q != nil && q.dead > 0 {
-		n.darkPlace(to, p, now, p.delay, 1)
+		dark(p.delay)
 	}
 }
 

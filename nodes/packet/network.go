@@ -287,7 +287,7 @@ func (n *Network) register(p *pipe, now des.Time) {
 		before += fibre.Delay
 		at = fibre.Other(at)
 	}
-	n.darkEquipment(to, p, now)
+	n.darkEquipment(to, p)
 }
 
 // Finished reports, once the sources have ended, whether nothing is under way.

@@ -111,6 +111,8 @@ func (m *Model) control() error {
 		TrafficReady: sc.Timing.TrafficReady, Revert: true, WaitToRestore: sc.Timing.WaitToRestore,
 		Relock: sc.Timing.Relock, Level: sc.Timing.Level, PerCircuit: sc.Timing.Report == scenarios.ReportCircuit, Correlate: sc.Timing.Correlation,
 	}
+	cfg.Ramp, cfg.Poll = sc.Timing.Ramp == scenarios.RampStandard, sc.Controller.Poll
+	cfg.Policies = policies(m.Plan)
 	for i := range sc.Requests {
 		s, err := m.stream(&sc.Requests[i])
 		if err != nil {
@@ -149,6 +151,19 @@ func (m *Model) control() error {
 		m.Network.Schedule(packet.Act{At: orders[i].At, Kind: packet.ActOrder, Name: name, Site: cfg.Site})
 	}
 	return nil
+}
+
+// policies are those of the circuits that have one.
+func policies(plan *scenarios.Plan) (list []central.Policy) {
+	for i := range plan.Circuits {
+		if p := plan.Circuits[i].Policy; p != nil {
+			list = append(list, central.Policy{
+				Circuit: nodes.CircuitID(i), Floor: p.Floor, Ceiling: p.Ceiling, Step: p.Step, Up: p.Up, Down: p.Down,
+				Drops: p.Drops, HoldUp: p.HoldUp, HoldDown: p.HoldDown, Weight: p.Smooth,
+			})
+		}
+	}
+	return list
 }
 
 func (m *Model) stream(r *scenarios.Request) (central.Stream, error) {

@@ -21,8 +21,18 @@ type Circuit struct {
 	SetUpS      *float64 `json:"set_up_s,omitempty"`    // from the order to up; absent when in place from the start
 	DelayS      *float64 `json:"delay_s,omitempty"`     // light from end to end
 	Resizes     int64    `json:"resizes"`
-	DownS       float64  `json:"down_s"`          // dark, in all, after the warm-up
-	Turns       []Turn   `json:"turns,omitempty"` // in order of time
+	Preempted   int64    `json:"preempted,omitempty"` // how often others have pushed it out
+	Policy      *Policy  `json:"policy,omitempty"`    // absent: its slots do not follow its load
+	DownS       float64  `json:"down_s"`              // dark, in all, after the warm-up
+	Turns       []Turn   `json:"turns,omitempty"`     // in order of time
+}
+
+// A Policy is what the policy of a circuit has decided.
+type Policy struct {
+	Grown     int64 `json:"grown"`
+	Shrunk    int64 `json:"shrunk"`
+	Blocked   int64 `json:"blocked"`   // decisions that could not be carried out
+	Reversals int64 `json:"reversals"` // decisions the other way than the one before
 }
 
 // A Port is one output queue: one circuit, one direction.

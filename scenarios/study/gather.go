@@ -55,6 +55,7 @@ func gather(m *build.Model, partial bool) *result.Run {
 	g.aggregates()
 	g.classes()
 	g.circuits()
+	g.policies()
 	g.ports()
 	g.fibres()
 	g.steps()

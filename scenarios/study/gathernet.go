@@ -64,9 +64,24 @@ func (g *gatherer) circuits() {
 		if rep.DownSince != des.Never && rep.DownSince < g.end {
 			x.DownS += (g.end - rep.DownSince).Seconds()
 		}
+		x.Preempted = int64(rep.Preempted)
 		g.r.Circuits = append(g.r.Circuits, x)
 	}
 }
+
+// policies reports what the policies of circuits have decided, once those are
+// listed.
+func (g *gatherer) policies() {
+	for _, p := range g.m.Control.Policies() {
+		g.r.Circuits[p.Circuit].Policy = &result.Policy{
+			Grown: int64(p.Grown), Shrunk: int64(p.Shrunk), Blocked: int64(p.Blocked), Reversals: int64(p.Reversals),
+		}
+	}
+}
+
+// swings is from how many reversals on a policy is said to oscillate. Common
+// practice, no source.
+const swings = 3
 
 func carries(c nodes.Carriage) string {
 	switch c {
@@ -277,6 +292,12 @@ func (g *gatherer) cautions() {
 		if p.Utilisation > 0.999 {
 			g.r.Cautions = append(g.r.Cautions, fmt.Sprintf("Overload: %s from %s was busy all the time and lost %d packets; delays there are those of a full buffer.",
 				g.m.Plant.Circuits[p.Circuit].Name, g.m.Plant.Sites[p.From].Name, p.Lost))
+		}
+	}
+	for i := range g.r.Circuits {
+		if p := g.r.Circuits[i].Policy; p != nil && p.Reversals >= swings {
+			g.r.Cautions = append(g.r.Cautions, fmt.Sprintf("The policy of %s oscillates: it grew %d times and shrank %d times; its thresholds are too close together for its step, or its holding times too short.",
+				g.r.Circuits[i].Name, p.Grown, p.Shrunk))
 		}
 	}
 	for i, p := range g.r.Periods {

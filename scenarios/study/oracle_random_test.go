@@ -4,6 +4,8 @@ import (
 	"bytes"
 	"fmt"
 	"math/rand/v2"
+	"regexp"
+	"slices"
 	"strings"
 	"testing"
 
@@ -93,11 +95,16 @@ defaults:
 			fmt.Fprintf(&b, "  - { at: %dms, tear-down: x%d }\n", 200+d.IntN(100), i)
 		}
 	}
+	var cuts []pair // when, in us, and what
 	for range d.IntN(5) {
-		fmt.Fprintf(&b, "  - { at: %dus, cut: f%d }\n", d.IntN(300_000), d.IntN(len(fibres)))
+		cuts = append(cuts, pair{d.IntN(300_000), d.IntN(len(fibres))})
+		fmt.Fprintf(&b, "  - { at: %dus, cut: f%d }\n", cuts[len(cuts)-1].a, cuts[len(cuts)-1].b)
 	}
 	for range d.IntN(5) {
-		fmt.Fprintf(&b, "  - { at: %dms, repair: f%d }\n", d.IntN(300), d.IntN(len(fibres)))
+		at, f := d.IntN(300), d.IntN(len(fibres))
+		if slices.ContainsFunc(cuts, func(c pair) bool { return c.b == f && c.a < at*1000 }) {
+			fmt.Fprintf(&b, "  - { at: %dms, repair: f%d }\n", at, f)
+		}
 	}
 	if d.IntN(3) == 0 {
 		fmt.Fprintf(&b, "  - { at: %dms, cut: g0 }\n  - { at: %dms, repair: g0 }\n", d.IntN(150), 150+d.IntN(150))
@@ -124,6 +131,57 @@ func TestOracleRandomScenarios(t *testing.T) {
 		})
 	}
 }
+
+// rougher changes a scenario so that everything happens in it that can: 1+1,
+// priorities, circuits that shrink or follow their load, reports by circuit,
+// sites, routers and ports that fail, and sites that are drained.
+func (d dice) rougher(text string) string {
+	text = strings.Replace(text, "timing: {", fmt.Sprintf("timing: { switch: %dms, ramp: %s, report: %s, correlation: %dms,",
+		d.IntN(20), d.one("standard", "none"), d.one("fibre", "circuit"), d.IntN(2)*d.IntN(20)), 1)
+	text = regexp.MustCompile(`name: f(\d+)(.*)risk-groups: \[ g\d \]`).ReplaceAllString(text, "name: f${1}${2}risk-groups: [ g$1 ]")
+	text = regexp.MustCompile(`recovery: none(, (when-down|hold-off))`).ReplaceAllStringFunc(text, func(s string) string {
+		return strings.Replace(s, "none", d.one("none", "1+1"), 1)
+	})
+	text = regexp.MustCompile(`slots: \d, (rate|carries)`).ReplaceAllStringFunc(text, func(s string) string {
+		hold := d.IntN(8)
+		s = fmt.Sprintf("set-up-priority: %d, holding-priority: %d, shrink: %s, %s", hold+d.IntN(8-hold), hold, d.one("true", "false"), s)
+		if d.IntN(3) == 0 {
+			s = fmt.Sprintf("policy: { floor: 1, ceiling: 4, up: %d%%, down: %d%%, hold-up: %dms, hold-down: %dms }, %s", 20+d.IntN(60), d.IntN(20), d.IntN(50), d.IntN(50), s)
+		}
+		return s
+	})
+	text = strings.Replace(text, "controller: {", "controller: { poll: 10ms,", 1)
+	var b strings.Builder
+	b.WriteString(text)
+	for range 1 + d.IntN(3) {
+		what := d.one("router s0", "router s1", "site s2", "site s1", "port l0 at s0", "port l1 at s1")
+		from := d.IntN(250_000)
+		fmt.Fprintf(&b, "  - { at: %dus, fail: %s }\n", from, what)
+		if d.IntN(3) > 0 {
+			fmt.Fprintf(&b, "  - { at: %dus, mend: %s }\n", from+1+d.IntN(299_999-from), what)
+		}
+	}
+	for s := range d.IntN(3) {
+		fmt.Fprintf(&b, "  - { at: %dus, drain: s%d }\n  - { at: %dus, undrain: s%d }\n", d.IntN(150_000), s, 150_000+d.IntN(149_000), s)
+	}
+	return b.String()
+}
+
+// The same holds for whatever else can happen.
+func TestOracleRoughScenarios(t *testing.T) {
+	t.Parallel()
+	for seed := range uint64(roughSeeds) {
+		t.Run(fmt.Sprint(seed), func(t *testing.T) {
+			t.Parallel()
+			d := dice{rand.New(rand.NewPCG(seed, 15))}
+			text := d.rougher(d.scenario())
+			sameInAllWindows(t, parse(t, text), text, seed)
+		})
+	}
+}
+
+// roughSeeds is how many rough scenarios are tried.
+const roughSeeds = 10
 
 // sameInAllWindows runs a scenario in several ways.
 func sameInAllWindows(t *testing.T, sc *scenarios.Scenario, text string, seed uint64) {
