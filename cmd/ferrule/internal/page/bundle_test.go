@@ -55,5 +55,5 @@ func licences(t *testing.T) string {
 	if err != nil {
 		t.Fatal(err)
 	}
-	return "/* Contains uPlot 1.6.32 under this licence:\n\n" + strings.TrimSpace(string(b)) + "\n*/"
+	return "/* Contains uPlot 1.6.32, as the style sheet of the page contains its rules, under this licence:\n\n" + strings.TrimSpace(string(b)) + "\n*/"
 }

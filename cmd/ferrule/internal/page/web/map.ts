@@ -10,15 +10,15 @@ import { classColours, quantity, share, svg } from "./dom";
 type Point = [number, number];
 
 const width = 1000;
-const deckHeight = 270;
 const margin = 70;
 const gap = 100; // between the decks
-const tilt = 0.55; // how far a deck leans back
 
 interface Ground {
   at: Map<string, Point>; // sites on the lower deck
   lift: number; // from the lower deck up to the other
   height: number;
+  crowded: boolean; // many fibres: less is written
+  fine: number; // by which what is drawn is smaller than in a small network
 }
 
 // ground lays the sites out: where the scenario says, else on an ellipse.
@@ -32,7 +32,12 @@ function ground(run: Run): Ground {
   const xs = raw.map((p) => p[0]);
   const ys = raw.map((p) => p[1]);
   const [x0, x1, y0, y1] = [Math.min(...xs), Math.max(...xs), Math.min(...ys), Math.max(...ys)];
-  const scale = Math.min((width - 2 * margin) / Math.max(x1 - x0, 1), (deckHeight - 20) / tilt / Math.max(y1 - y0, 1));
+  const crowded = run.fibres.length > 12;
+  const deckHeight = crowded ? 420 : 250;
+  // Decks lean back as far as they must to fit, within reason.
+  let scale = (width - 2 * margin) / Math.max(x1 - x0, 1);
+  const tilt = Math.min(Math.max(deckHeight / (Math.max(y1 - y0, 1) * scale), 0.45), 0.8);
+  scale = Math.min(scale, deckHeight / tilt / Math.max(y1 - y0, 1));
   const deck = Math.max((y1 - y0) * scale * tilt, 40);
   const lift = deck + gap;
   const at = new Map<string, Point>();
@@ -42,7 +47,7 @@ function ground(run: Run): Ground {
       margin + lift + (raw[i][1] - y0) * scale * tilt,
     ]);
   });
-  return { at, lift, height: margin + lift + deck + 60 };
+  return { at, lift, height: margin + lift + deck + 60, crowded, fine: Math.min(Math.max(Math.sqrt(10 / Math.max(run.fibres.length, 1)), 0.45), 1) };
 }
 
 const raise = (p: Point, by: number): Point => [p[0], p[1] - by];
@@ -181,7 +186,7 @@ function lower(run: Run, g: Ground, t: number, used: Map<string, number>): SVGEl
     const [a, b] = [g.at.get(f.ends[0])!, g.at.get(f.ends[1])!];
     const taken = used.get(f.name) ?? 0;
     const full = f.slots > 0 ? Math.min(taken / f.slots, 1) : 0;
-    const w = bore(f);
+    const w = bore(f) * g.fine;
     const item = svg("g", {}, svg("title", {}, `${f.name}: ${f.length_km} km, ${f.channels ?? 0} channels, ${taken} of ${f.slots} slots taken` +
       (f.risk_groups ? `; shares ${f.risk_groups.join(", ")}` : "")));
     item.append(svg("path", { class: "fibre-wall", d: path([a, b]), "stroke-width": w + 2 }));
@@ -198,14 +203,14 @@ function lower(run: Run, g: Ground, t: number, used: Map<string, number>): SVGEl
     const m = mix(a, b, 0.5);
     const n = normal(a[0] <= b[0] ? a : b, a[0] <= b[0] ? b : a);
     const steep = Math.abs(n[0]) > 0.35;
-    item.append(svg("text", { class: "small", x: m[0] + n[0] * 24, y: m[1] + n[1] * 24 + 4, "text-anchor": steep ? (n[0] < 0 ? "end" : "start") : "middle" },
-      `${f.length_km} km · ${taken}/${f.slots}` + (f.risk_groups ? ` · ${f.risk_groups.join(", ")}` : "")));
+    item.append(svg("text", { class: "small", x: m[0] + n[0] * 24 * g.fine, y: m[1] + n[1] * 24 * g.fine + 4, "text-anchor": steep ? (n[0] < 0 ? "end" : "start") : "middle" },
+      (g.crowded ? "" : `${f.length_km} km · `) + `${taken}/${f.slots}` + (f.risk_groups ? ` · ${f.risk_groups.join(", ")}` : "")));
     layer.append(item);
   }
   for (const k of run.cuts ?? []) if (k.from_s <= t && t < (k.to_s ?? Infinity)) layer.append(cutMark(run, g, k));
   for (const [name, p] of g.at) {
-    layer.append(svg("ellipse", { class: "site", cx: p[0], cy: p[1], rx: 11, ry: 7 }));
-    layer.append(svg("text", { class: "site-name", x: p[0], y: p[1] + 25, "text-anchor": "middle" }, name));
+    layer.append(svg("ellipse", { class: "site", cx: p[0], cy: p[1], rx: 11 * g.fine, ry: 7 * g.fine }));
+    layer.append(svg("text", { class: "site-name", x: p[0], y: p[1] + 12 + 13 * g.fine, "text-anchor": "middle" }, name));
   }
   return layer;
 }
@@ -224,11 +229,12 @@ function cutMark(run: Run, g: Ground, k: Cut): SVGElement {
   return mark;
 }
 
-const band = 24; // width of a circuit, casing included
+const widest = 24; // width of a circuit, casing included
 
 function upper(run: Run, g: Ground, t: number): SVGElement {
   const fibres = new Map(run.fibres.map((f) => [f.name, f]));
   const period = periodAt(run, t);
+  const band = widest * g.fine;
   const layer = svg("g", { class: "upper" });
   // Circuits over one fibre lie side by side: each has a lane on it.
   const lanes = new Map<string, Circuit[]>();
@@ -249,19 +255,19 @@ function upper(run: Run, g: Ground, t: number): SVGElement {
     const centre = lane(line, offsets);
     const item = svg("g", { class: "circuit " + look }, svg("title", {}, describe(run, c, look, period?.name)));
     item.append(svg("path", { class: "casing", d: path(centre), "stroke-width": band }));
-    item.append(svg("path", { class: "inside", d: path(centre), "stroke-width": band - 4 }));
-    if (look === "up" || look === "detoured" || look === "draining") ribbons(item, run, c, line, offsets, period?.name);
+    item.append(svg("path", { class: "inside", d: path(centre), "stroke-width": band - Math.min(4, band / 4) }));
+    if (look === "up" || look === "detoured" || look === "draining") ribbons(item, run, c, line, offsets, band, period?.name);
     if (look === "detoured" || look === "broken" || look === "restoring") {
       item.append(svg("path", { class: "state", d: path(centre), "stroke-width": look === "detoured" ? 2 : 4 }));
     }
     layer.append(item);
-    labels.push(label(run, c, look, centre, along, period?.name));
+    labels.push(label(run, c, look, centre, along, g.crowded, period?.name));
   }
   layer.append(...labels);
   for (const [name, p] of g.at) {
     const q = raise(p, g.lift);
-    layer.append(svg("rect", { class: "router", x: q[0] - 15, y: q[1] - 10, width: 30, height: 20, rx: 4 }));
-    layer.append(svg("text", { class: "site-name", x: q[0], y: q[1] - 18, "text-anchor": "middle" }, name));
+    layer.append(svg("rect", { class: "router", x: q[0] - 15 * g.fine, y: q[1] - 10 * g.fine, width: 30 * g.fine, height: 20 * g.fine, rx: 4 }));
+    layer.append(svg("text", { class: "site-name", x: q[0], y: q[1] - 8 - 10 * g.fine, "text-anchor": "middle" }, name));
   }
   return layer;
 }
@@ -276,8 +282,8 @@ const sum = (classes: { bps: number }[]) => classes.reduce((a, x) => a + x.bps, 
 // ribbons draws the load of each class: from the first end on the one side of
 // the middle, to it on the other; a ribbon that filled its side would fill the
 // circuit.
-function ribbons(item: SVGElement, run: Run, c: Circuit, line: Point[], offsets: number[], period: string | undefined): void {
-  const side = (band - 5) / 2;
+function ribbons(item: SVGElement, run: Run, c: Circuit, line: Point[], offsets: number[], band: number, period: string | undefined): void {
+  const side = (band - Math.min(5, band / 3)) / 2;
   item.append(svg("path", { class: "middle", d: path(lane(line, offsets)) }));
   c.ends!.forEach((from, way) => {
     let at = 0.5;
@@ -301,7 +307,7 @@ function describe(run: Run, c: Circuit, look: Look, period: string | undefined):
 }
 
 // label names a circuit in the middle of its longest stretch.
-function label(run: Run, c: Circuit, look: Look, centre: Point[], along: string[], period: string | undefined): SVGElement {
+function label(run: Run, c: Circuit, look: Look, centre: Point[], along: string[], crowded: boolean, period: string | undefined): SVGElement {
   let best = 1;
   let length = 0;
   for (let i = 1; i <= along.length; i++) { // the first and the last stretch fan out
@@ -311,7 +317,7 @@ function label(run: Run, c: Circuit, look: Look, centre: Point[], along: string[
   // Circuits that share a stretch have their names beside each other.
   const m = mix(centre[best], centre[best + 1], along.length > 1 ? 0.28 : 0.5);
   const most = Math.max(...c.ends!.map((from) => sum(loadOf(run, c, from, period)))) / c.payload_bps;
-  const text = look === "broken" || look === "restoring" ? `${c.name} ${look}` : `${c.name} ${share(Number(most.toPrecision(2)))}` + (look === "detoured" ? " detour" : "");
+  const text = crowded && look === "up" ? share(Number((most).toFixed(2))) : look === "broken" || look === "restoring" ? `${c.name} ${look}` : `${c.name} ${share(Number(most.toPrecision(2)))}` + (look === "detoured" ? " detour" : "");
   const wide = 7 * text.length + 8;
   return svg("g", { class: "tag " + look },
     svg("rect", { x: m[0] - wide / 2, y: m[1] - 9, width: wide, height: 18, rx: 9 }),
