@@ -21,11 +21,12 @@ type pipe struct {
 	_ [64]byte
 
 	// Of the receiving site.
-	rbuf []nodes.Packet
-	head uint64
-	vis  uint64 // packets before it may be read
-	dark []darkSpan
-	told bool // the circuit's end has been told of darkness on this pipe
+	rbuf   []nodes.Packet
+	rlines []lineFrom
+	head   uint64
+	vis    uint64 // packets before it may be read
+	dark   []darkSpan
+	told   bool // the circuit's end has been told of darkness on this pipe
 
 	_ [64]byte
 
@@ -38,7 +39,7 @@ type pipe struct {
 	base        uint64 // packets that pipe had taken before
 	from, to    nodes.SiteID
 	fibres      []nodes.FibreID
-	lines       []lineFrom // rates it was filled at
+	lines       []lineFrom // rates it is filled at; of the sending site
 	overhead    nodes.Bytes
 }
 
@@ -81,7 +82,7 @@ func (p *pipe) grow() {
 }
 
 func (p *pipe) publish() {
-	p.rbuf, p.vis, p.seen = p.buf, p.tail, p.head
+	p.rbuf, p.rlines, p.vis, p.seen = p.buf, p.lines, p.tail, p.head
 }
 
 // next reports when the earliest visible packet is due, or Never.
@@ -112,16 +113,25 @@ func (p *pipe) lost(k *nodes.Packet) bool {
 	return false
 }
 
+// setLine notes the rate at which p is filled from an instant on, and forgets
+// rates of which nothing can be under way any more.
+func (p *pipe) setLine(from des.Time, l nodes.Line) {
+	p.lines = append(p.lines, lineFrom{from, l})
+	for len(p.lines) > 2 && p.lines[1].from < from-p.delay-des.Second {
+		p.lines = p.lines[1:]
+	}
+}
+
 // serialisation reports how long a packet whose last bit left at the given
 // instant took to send.
 func (p *pipe) serialisation(left des.Time, size nodes.Bytes) des.Time {
-	i := len(p.lines) - 1
+	i := len(p.rlines) - 1
 	for ; i > 0; i-- {
-		if t := p.lines[i].line.TxTime(size + p.overhead); p.lines[i].from+t <= left {
+		if t := p.rlines[i].line.TxTime(size + p.overhead); p.rlines[i].from+t <= left {
 			return t
 		}
 	}
-	return p.lines[0].line.TxTime(size + p.overhead)
+	return p.rlines[0].line.TxTime(size + p.overhead)
 }
 
 // darken notes a dark place; lighten ends the spans of a fibre.
@@ -197,5 +207,6 @@ func (p *pipe) clone() *pipe {
 	c.rbuf = c.buf
 	c.dark = append([]darkSpan(nil), p.dark...)
 	c.lines = append([]lineFrom(nil), p.lines...)
+	c.rlines = c.lines[:len(p.rlines):len(p.rlines)]
 	return &c
 }

@@ -255,11 +255,10 @@ func (q *port) counters(now des.Time) portCount {
 func (q *port) setRate(r nodes.Rate, now des.Time) {
 	q.line = nodes.NewLine(r)
 	q.disc.SetRate(r)
-	if q.pipe != nil {
-		q.pipe.lines = append(q.pipe.lines, lineFrom{max(now, q.free), q.line})
-	}
-	if q.copy != nil {
-		q.copy.lines = append(q.copy.lines, lineFrom{max(now, q.free), q.line})
+	for _, p := range [2]*pipe{q.pipe, q.copy} {
+		if p != nil {
+			p.setLine(max(now, q.free), q.line)
+		}
 	}
 }
 
