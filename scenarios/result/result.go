@@ -76,10 +76,15 @@ type Run struct {
 	Asked      []Asked     `json:"asked,omitempty"`
 	Transit    []SiteRate  `json:"transit"` // received from a fibre and sent on by each router
 	Demands    []Demand    `json:"demands,omitempty"`
-	Price      Price       `json:"price"`
-	Audit      Audit       `json:"audit"`
-	Defaults   []Default   `json:"defaults"`
-	Cautions   []string    `json:"cautions"`
+	Within     []Within    `json:"within,omitempty"` // classes highest first, then periods
+
+	WarmUpFound bool `json:"warm_up_found,omitempty"` // its end was found from the run itself
+	WarmUpShort bool `json:"warm_up_short,omitempty"` // and took half of what there was: no interval is given
+
+	Price    Price     `json:"price"`
+	Audit    Audit     `json:"audit"`
+	Defaults []Default `json:"defaults"`
+	Cautions []string  `json:"cautions"`
 
 	// For drawings.
 	Sites  []Site   `json:"sites,omitempty"`
@@ -87,6 +92,20 @@ type Run struct {
 	Loads  []Load   `json:"loads,omitempty"`  // periods in order, then ports in the order of Ports
 	Tails  []Tail   `json:"tails,omitempty"`  // classes highest first, then periods
 	Series []Series `json:"series,omitempty"` // classes highest first, the whole run before close-ups
+}
+
+// A Within is the mean delay of a class in one period of one run with an
+// interval from the run itself, by means of batches of bins of time. It speaks
+// of this seed's traffic only as far as the period is long against what the
+// traffic remembers; several seeds are worth more.
+type Within struct {
+	Class    string    `json:"class"`
+	Period   string    `json:"period"`
+	MeanS    *float64  `json:"mean_s,omitempty"`   // of the batches
+	Interval *Interval `json:"interval,omitempty"` // in seconds, at 95 %
+	Batches  int64     `json:"batches"`
+	Lag1     *float64  `json:"lag_1,omitempty"`   // autocorrelation of the batches
+	Refused  string    `json:"refused,omitempty"` // why there is no interval
 }
 
 // A PeriodKind says what a stretch of a run has in common.

@@ -97,6 +97,15 @@ func foldBatch(plan string, samples []*sample, level float64) *result.Batch {
 	if len(samples) == 1 {
 		b.Cautions = append(b.Cautions, "One seed says nothing about chance: there is no interval.")
 	}
+	if seeds := tooShort(samples); seeds != "" {
+		b.Cautions = append(b.Cautions, "No intervals: the warm-up took half of what there was with the seeds "+seeds+".")
+		for _, means := range [][]result.Mean{b.Figures, b.Network} {
+			for i := range means {
+				means[i].Interval = nil
+			}
+		}
+	}
+	b.Cautions = append(b.Cautions, warmUpsDiffer(samples)...)
 	if pricesDiffer(samples) {
 		b.Cautions = append(b.Cautions, fmt.Sprintf("The price differs from seed to seed; it is that of seed %d.", first.seed))
 	}
@@ -170,6 +179,18 @@ func cautionsOf(samples []*sample) []string {
 		}
 	}
 	return out
+}
+
+// warmUpsDiffer says so when the warm-up is not the same in all samples.
+func warmUpsDiffer(samples []*sample) []string {
+	least, most := samples[0].head.WarmUpS, samples[0].head.WarmUpS
+	for _, s := range samples {
+		least, most = min(least, s.head.WarmUpS), max(most, s.head.WarmUpS)
+	}
+	if least == most {
+		return nil
+	}
+	return []string{fmt.Sprintf("The warm-up was found for each seed by itself and lasted from %s to %s.", quantity(least, result.UnitSeconds), quantity(most, result.UnitSeconds))}
 }
 
 // pricesDiffer reports whether what is held at the end differs between

@@ -90,7 +90,7 @@ func compare(ctx context.Context, o Options, plans []string, seeds []uint64, run
 	if len(byPlan[0]) == 0 {
 		return nil, err
 	}
-	c := foldComparison(plans, byPlan, terms{confidence, o.margin()})
+	c := foldComparison(plans, byPlan, terms{level: confidence, margin: o.margin()})
 	c.Partial, c.Runs = err != nil, kept()
 	return c, err
 }
@@ -113,6 +113,11 @@ func foldComparison(plans []string, byPlan [][]*sample, t terms) *result.Compari
 	}
 	c.Audit.OK = auditsOK(all)
 	c.Cautions = cautionsOf(all)
+	if seeds := tooShort(all); seeds != "" {
+		t.short = true
+		c.Cautions = append(c.Cautions, "No intervals and no verdicts: the warm-up took half of what there was in runs with the seeds "+seeds+".")
+	}
+	c.Cautions = append(c.Cautions, warmUpsDiffer(base)...)
 	c.Gates = gatesOf(plans, byPlan, t.level)
 	loose := 0
 	for k := 1; k < len(plans); k++ {

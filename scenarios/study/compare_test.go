@@ -216,4 +216,4 @@ func TestComparePeriods(t *testing.T) {
 }
 
 // at is a level of confidence with the margin that is the default.
-func at(level float64) terms { return terms{level, DefaultMargin} }
+func at(level float64) terms { return terms{level: level, margin: DefaultMargin} }

@@ -17,6 +17,7 @@ const comparedSeeds = 10
 type terms struct {
 	level  float64 // of confidence
 	margin float64 // share of a limit, or of a figure, that does not matter
+	short  bool    // some run is too short for its warm-up: no interval, no verdict
 }
 
 // alpha is the chance of a false call that is borne.
@@ -28,6 +29,7 @@ type contrast struct {
 	base, plan judgement
 	way        sense
 	seeds      int       // of the study
+	tooShort   bool      // as terms have it
 	diffs      []float64 // plan minus base, by pair
 }
 
@@ -42,7 +44,7 @@ func (f *pairing) contrast(s *series) contrast {
 	n := len(f.base)
 	b, p := *s, *s
 	p.readings, b.readings = s.readings[:n], s.readings[n:]
-	x := contrast{base: b.judge(), plan: p.judge(), way: f.sense(s), seeds: n}
+	x := contrast{base: b.judge(), plan: p.judge(), way: f.sense(s), seeds: n, tooShort: f.short}
 	period := f.periods[s.period]
 	x.Difference = result.Difference{Class: s.class, Subject: s.subject, Period: period.Name, Kind: period.Kind,
 		Figure: s.figure, Unit: s.unit, Limit: s.limit, WorstPair: p.worstPair(), BaseMet: x.base.met, PlanMet: x.plan.met,
@@ -70,7 +72,10 @@ func (f *pairing) contrast(s *series) contrast {
 func (x *contrast) weigh(tried, had []float64, by terms) {
 	t := measure.PairedT(tried, had, by.level)
 	x.Difference.Difference, x.Interval, x.Seeds = new(t.Diff.Mean), intervalOf(t.Diff), int64(len(had))
-	if len(had) < 2 {
+	if by.short {
+		x.Interval = nil
+	}
+	if len(had) < 2 || by.short {
 		return
 	}
 	x.diffs = make([]float64, len(had))

@@ -30,6 +30,7 @@ func gatesOf(plans []string, byPlan [][]*sample, level float64) []result.Gate {
 // Too few seeds for their signs alone to say it (measure.LeastP) decide
 // nothing.
 func gateOf(plan string, samples []*sample, level float64) *result.Gate {
+	tooShort := tooShort(samples) != ""
 	figures := collect(samples, func(s *sample) []reading { return s.figures })
 	g := &result.Gate{Plan: plan, Confidence: level}
 	var limited []series
@@ -51,6 +52,10 @@ func gateOf(plan string, samples []*sample, level float64) *result.Gate {
 	met, missed := true, false
 	for i, p := range measure.Holm(ps) {
 		h := limited[i].hold(values[i], p, level, len(limited))
+		if tooShort {
+			h.Standing, h.Interval, h.PMissed, h.MoreSeeds = result.Open, nil, nil, nil
+			h.Text = "too short for its warm-up"
+		}
 		met = met && h.Standing == result.Met
 		missed = missed || h.Standing == result.Missed
 		g.Holds = append(g.Holds, h)

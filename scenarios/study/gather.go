@@ -69,6 +69,7 @@ func gather(m *build.Model, partial bool) *result.Run {
 	}
 	g.cautions()
 	g.drawings()
+	r.Within = withinOf(r)
 	return r
 }
 

@@ -50,7 +50,7 @@ func pairsOf(mean, half float64, n int, limit *float64, margin float64) contrast
 	x := contrast{way: lowerIsBetter, seeds: n}
 	x.Limit, x.Exploratory = limit, limit == nil
 	x.Base, x.Plan = meanOf(had), meanOf(tried)
-	x.weigh(tried, had, terms{0.95, margin})
+	x.weigh(tried, had, terms{level: 0.95, margin: margin})
 	return x
 }
 
@@ -77,7 +77,7 @@ func meanFigureOf(b *result.Batch) result.Mean {
 // 5 % lets all pass: 3, 4 and 30. A fourth at 20 takes the third with it: 4, 6,
 // 40, 40; with one at 30 and one at 28: 5, 8, 84.
 func TestFamily(t *testing.T) {
-	f := pairing{base: hands(1, 2, 3, 4, 5, 6, 7, 8, 9, 10, 11, 12), terms: terms{0.95, 0.01}}
+	f := pairing{base: hands(1, 2, 3, 4, 5, 6, 7, 8, 9, 10, 11, 12), terms: terms{level: 0.95, margin: 0.01}}
 	limit := 1.0
 	of := func(ps ...float64) (out []contrast) {
 		for _, p := range ps {

@@ -23,10 +23,11 @@ type job struct {
 
 // replicator is the replicate that runs sc, each run on one core.
 func replicator(sc *scenarios.Scenario, o Options) replicate {
+	warm := &warmUps{}
 	return func(ctx context.Context, j job, progress func(done, total float64)) (*result.Run, error) {
 		own := *sc // a seed of 0 is no less a seed
 		own.Run.Seed = j.seed
-		return Run(ctx, &own, Options{Plan: j.plan, Seed: j.seed, Cores: 1, Log: o.Log, Progress: progress})
+		return runFrom(ctx, &own, Options{Plan: j.plan, Seed: j.seed, Cores: 1, Log: o.Log, Progress: progress}, warm)
 	}
 }
 

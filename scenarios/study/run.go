@@ -15,8 +15,41 @@ import (
 // Run makes one replication of sc. A scenario that does not fit, such as one
 // whose circuits find no slots, is an error. When ctx is done the run stops at
 // the next window's end: Run then returns what is known, marked partial, and
-// ctx's error.
+// ctx's error. When the scenario leaves the warm-up to the run, pilots of all
+// plans come first: see warmUp.
 func Run(ctx context.Context, sc *scenarios.Scenario, o Options) (*result.Run, error) {
+	return runFrom(ctx, sc, o, &warmUps{})
+}
+
+// runFrom is Run with the ends of warm-ups found so far.
+func runFrom(ctx context.Context, sc *scenarios.Scenario, o Options, warm *warmUps) (*result.Run, error) {
+	if !sc.Run.AutoWarmUp {
+		return runOnce(ctx, sc, o)
+	}
+	if _, err := sc.Plan(o.plan()); err != nil {
+		return nil, err
+	}
+	c, err := warm.find(ctx, sc, o.seed(sc))
+	if err != nil {
+		return nil, err
+	}
+	own := *sc
+	own.Run.WarmUp = c.at
+	r, err := runOnce(ctx, &own, o)
+	if r != nil {
+		r.WarmUpFound, r.WarmUpShort = true, c.short != ""
+		if text := c.caution(); text != "" {
+			r.Cautions = append(r.Cautions, text)
+			for i := range r.Within {
+				r.Within[i].Interval, r.Within[i].Refused = nil, "too short for its warm-up"
+			}
+		}
+	}
+	return r, err
+}
+
+// runOnce makes one replication with the warm-up that the scenario says.
+func runOnce(ctx context.Context, sc *scenarios.Scenario, o Options) (*result.Run, error) {
 	plan, err := sc.Plan(o.plan())
 	if err != nil {
 		return nil, err

@@ -21,6 +21,7 @@ type sample struct {
 	audit    result.Audit
 	defaults []result.Default
 	cautions []string
+	short    bool // too short for its warm-up
 }
 
 // A key says which figure a reading is of.
@@ -49,7 +50,7 @@ type reading struct {
 // sampleOf reduces a run.
 func sampleOf(r *result.Run) *sample {
 	s := &sample{head: r.Head, seed: r.Seed, periods: r.Periods, price: r.Price, transit: r.Transit, audit: r.Audit,
-		defaults: r.Defaults, cautions: r.Cautions}
+		defaults: r.Defaults, cautions: r.Cautions, short: r.WarmUpShort}
 	for i := range r.Classes {
 		c := &r.Classes[i]
 		s.classes = append(s.classes, c.Name)

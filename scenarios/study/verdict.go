@@ -31,6 +31,9 @@ func verdictOf(class string, of []contrast, seeds int, family result.Family) res
 	switch {
 	case seeds < 2:
 		parts = append(parts, "no verdict from one seed")
+	case slices.ContainsFunc(of, func(x contrast) bool { return x.tooShort }):
+		v.Verdict = result.Undecided
+		parts = append(parts, "no verdict: too short for its warm-up")
 	case len(better)+len(worse)+len(same)+len(open) == 0:
 		parts = append(parts, "nothing to compare")
 	case len(better) > 0 && len(worse) > 0:

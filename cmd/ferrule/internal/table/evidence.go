@@ -82,3 +82,21 @@ func standing(s result.Standing) cell {
 		panic("table: unknown standing " + strconv.Quote(string(s)))
 	}
 }
+
+// within shows what one run says of its own precision.
+func (d *doc) within(r *result.Run) {
+	if r.WarmUpFound {
+		d.line(word("the end of the warm-up was found from the run itself"))
+	}
+	if len(r.Within) == 0 {
+		return
+	}
+	d.heading(word("WITHIN THIS RUN, mean delay by means of batches"))
+	g := columns(abbreviated("class"), abbreviated("period"), right("mean delay"), right("interval"), right("batches"), right("lag-1"),
+		wrapped("no interval because"))
+	for _, w := range r.Within {
+		g.add(name(w.Class), name(w.Period), optional(w.MeanS, result.UnitSeconds), interval(w.Interval, result.UnitSeconds),
+			count(w.Batches, ""), plainNumber(w.Lag1), name(w.Refused))
+	}
+	d.grid(g)
+}

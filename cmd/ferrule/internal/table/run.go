@@ -15,6 +15,7 @@ func (d *doc) run(r *result.Run) {
 	for i, p := range r.Periods {
 		d.outcomes(p, r.Classes, i)
 	}
+	d.within(r)
 	d.definitions()
 	d.circuits(r.Circuits)
 	d.ports(r.Ports)

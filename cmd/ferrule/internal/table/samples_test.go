@@ -22,6 +22,14 @@ func spread(p50, p95, p99, p999, most float64) result.Distribution {
 	return result.Distribution{Min: new(p50 / 2), Mean: new(p50), P50: &p50, P95: &p95, P99: &p99, P999: &p999, Max: &most}
 }
 
+func sampleWithin() []result.Within {
+	half := 0.0004
+	return []result.Within{
+		{Class: "voice", Period: "normal", MeanS: new(0.0061), Interval: &result.Interval{Half: &half}, Batches: 20, Lag1: new(0.12)},
+		{Class: "voice", Period: "hit", Refused: "the period is shorter than 20 batches of 5 bins"},
+	}
+}
+
 func sampleRun() *result.Run {
 	full := result.Outcome{OfferedPackets: 1234567, DeliveredPackets: 1234550, InsidePackets: 1,
 		LostPackets:   result.Losses{{Cause: "queue", Packets: 12}, {Cause: "cut", Packets: 4}, {Cause: "ttl"}},
@@ -45,7 +53,7 @@ func sampleRun() *result.Run {
 		}
 		return os
 	}
-	r := &result.Run{Head: sampleHead(), Plan: "as-is", Seed: 18446744073709551615, Periods: samplePeriods(),
+	r := &result.Run{Head: sampleHead(), Within: sampleWithin(), WarmUpFound: true, Plan: "as-is", Seed: 18446744073709551615, Periods: samplePeriods(),
 		Classes: []result.Class{
 			{Name: "voice", Limits: []result.Limit{{Figure: "delay-p99", Unit: "s", Limit: 0.04}}, WorstPair: "voice-tn.out",
 				Periods: in(met, missed, few)},
