@@ -9,6 +9,7 @@ import (
 	"testing/fstest"
 
 	"ferrule/scenarios/result"
+	"ferrule/scenarios/study"
 )
 
 // fakeStudio stands for the packages below. The first word of a scenario's
@@ -122,6 +123,15 @@ func (s *fakeScenario) Compare(ctx context.Context, opt options, base string, pl
 		c.Runs = []*result.Run{{Head: h, Plan: base, Seed: seeds[0]}}
 	}
 	return c, err
+}
+
+func (s *fakeScenario) Failures(ctx context.Context, opt options, w study.Sweep) (*result.Failures, error) {
+	h, a, err := s.outcome(ctx)
+	r := &result.Failures{Head: h, Seeds: w.Seeds, Scale: w.Scale, Audit: a}
+	for _, p := range w.Plans {
+		r.Plans = append(r.Plans, result.FailuresPlan{Plan: p})
+	}
+	return r, err
 }
 
 func (s *fakeScenario) Check(ctx context.Context, opt options) (*result.Check, error) {

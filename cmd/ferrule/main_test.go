@@ -111,7 +111,7 @@ func TestPlansCompared(t *testing.T) {
 func TestInterrupted(t *testing.T) {
 	ctx, cancel := context.WithCancel(t.Context())
 	cancel()
-	for _, command := range []string{"run", "batch", "compare", "check"} {
+	for _, command := range []string{"run", "batch", "compare", "check", "failures"} {
 		out := filepath.Join(t.TempDir(), "r.json")
 		status, text, errOut := try(ctx, false, nil, command, file(t, "waits"), "--out", out)
 		if status != 130 || !strings.Contains(text, "PARTIAL: interrupted") || !strings.Contains(errOut, "the result is partial") {

@@ -7,6 +7,7 @@ import (
 	"go.uber.org/zap"
 
 	"ferrule/scenarios/result"
+	"ferrule/scenarios/study"
 )
 
 // A studio is what the commands need of the packages below: it loads scenarios
@@ -74,5 +75,6 @@ type scenario interface {
 	Batch(ctx context.Context, opt options, seeds []uint64) (*result.Batch, error)
 	BatchUntil(ctx context.Context, opt options, p precision) (*result.Batch, error)
 	Compare(ctx context.Context, opt options, base string, plans []string, seeds []uint64) (*result.Comparison, error)
+	Failures(ctx context.Context, opt options, w study.Sweep) (*result.Failures, error)
 	Check(ctx context.Context, opt options) (*result.Check, error)
 }

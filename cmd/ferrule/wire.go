@@ -77,6 +77,10 @@ func (l loaded) Compare(ctx context.Context, opt options, base string, plans []s
 	return study.Compare(ctx, l.sc, opt.study(), base, plans, seeds)
 }
 
+func (l loaded) Failures(ctx context.Context, opt options, w study.Sweep) (*result.Failures, error) {
+	return study.Failures(ctx, l.sc, opt.study(), w)
+}
+
 func (l loaded) Check(ctx context.Context, opt options) (*result.Check, error) {
 	return study.Check(ctx, l.sc, opt.study())
 }

@@ -179,5 +179,15 @@ func (m *Model) stream(r *scenarios.Request) (central.Stream, error) {
 // Clone implements central.Demand.
 func (d demand) Clone() central.Demand { return demand{d.Requests.Clone()} }
 
+// Clone returns a replication in the same state that shares nothing that
+// either will change. It must be called between windows: before a run, or after
+// the kernel's Advance has returned.
+func (m *Model) Clone() *Model {
+	c := *m
+	c.Network, c.Control = m.Network.Clone(), m.Control.Clone()
+	c.Network.SetAgents(c.Control.Agents)
+	return &c
+}
+
 // Kernel prepares to run the model on exec.
 func (m *Model) Kernel(exec des.Executor) *des.Kernel { return des.NewKernel(m.Network, exec) }

@@ -23,6 +23,8 @@ func WriteCSV(w io.Writer, r Result) error {
 		t.comparison(r)
 	case *Check:
 		t.check(r)
+	case *Failures:
+		t.failures(r)
 	default:
 		panic("result: unknown kind of result")
 	}

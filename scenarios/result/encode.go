@@ -10,7 +10,8 @@ import (
 	"strings"
 )
 
-// A Result is any kind of result: *Run, *Batch, *Comparison or *Check.
+// A Result is any kind of result: *Run, *Batch, *Comparison, *Check or
+// *Failures.
 type Result interface {
 	head() *Head
 	kind() Kind
@@ -22,6 +23,7 @@ func (*Run) kind() Kind        { return KindRun }
 func (*Batch) kind() Kind      { return KindBatch }
 func (*Comparison) kind() Kind { return KindComparison }
 func (*Check) kind() Kind      { return KindCheck }
+func (*Failures) kind() Kind   { return KindFailures }
 
 // HeadOf returns the head of r.
 func HeadOf(r Result) Head {
@@ -102,8 +104,10 @@ func Decode(data []byte) (Result, error) {
 		r = new(Comparison)
 	case KindCheck:
 		r = new(Check)
+	case KindFailures:
+		r = new(Failures)
 	default:
-		return nil, fmt.Errorf("result: kind %q is none of run, batch, comparison, check", h.Kind)
+		return nil, fmt.Errorf("result: kind %q is none of run, batch, comparison, check, failures", h.Kind)
 	}
 	if err := json.Unmarshal(data, r); err != nil {
 		return nil, fmt.Errorf("result: %w", err)

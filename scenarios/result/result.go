@@ -2,7 +2,7 @@
 //
 // A [Run] is one replication, a [Batch] several seeds of one plan, a
 // [Comparison] one plan beside others on the same seeds, a [Check] what can be
-// said before anything runs. Tables, files, pages and the console are views of
+// said before anything runs, [Failures] what single failures do. Tables, files, pages and the console are views of
 // these values and compute nothing.
 //
 // # The file format
@@ -34,6 +34,7 @@ const (
 	KindBatch      Kind = "batch"
 	KindComparison Kind = "comparison"
 	KindCheck      Kind = "check"
+	KindFailures   Kind = "failures"
 )
 
 // Tool names the program that made a result.

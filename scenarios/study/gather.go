@@ -37,19 +37,7 @@ type lossCell [packet.Causes]uint64
 
 // gather reads everything a result holds from a model at rest.
 func gather(m *build.Model, partial bool) *result.Run {
-	sc := m.Scenario
-	g := &gatherer{m: m, n: m.Network, r: &result.Run{}}
-	r := g.r
-	r.Scenario, r.ScenarioHash = sc.Name, sc.Hash
-	r.LengthS, r.WarmUpS = sc.Run.Length.Seconds(), sc.Run.WarmUp.Seconds()
-	r.Plan, r.Seed, r.Partial = m.Plan.Name, m.Seed, partial
-	g.end = min(g.n.Now(), sc.Run.Length)
-	for i := range sc.Aggregates {
-		g.ways = append(g.ways, nodes.WayOf(nodes.AggID(i), nodes.Out))
-		if sc.Aggregates[i].BothWays {
-			g.ways = append(g.ways, nodes.WayOf(nodes.AggID(i), nodes.Back))
-		}
-	}
+	g := newGatherer(m, partial)
 	g.listPeriods()
 	g.collectLosses()
 	g.aggregates()
@@ -63,14 +51,37 @@ func gather(m *build.Model, partial bool) *result.Run {
 	g.asked()
 	g.price()
 	g.audit()
-	for _, d := range sc.Defaults {
-		key, value, _ := strings.Cut(d, " = ")
-		r.Defaults = append(r.Defaults, result.Default{Key: key, Value: value})
-	}
+	g.defaults()
 	g.cautions()
 	g.drawings()
-	r.Within = withinOf(r)
-	return r
+	g.r.Within = withinOf(g.r)
+	return g.r
+}
+
+// newGatherer is a gatherer with the head of its result.
+func newGatherer(m *build.Model, partial bool) *gatherer {
+	sc := m.Scenario
+	g := &gatherer{m: m, n: m.Network, r: &result.Run{}}
+	r := g.r
+	r.Scenario, r.ScenarioHash = sc.Name, sc.Hash
+	r.LengthS, r.WarmUpS = sc.Run.Length.Seconds(), sc.Run.WarmUp.Seconds()
+	r.Plan, r.Seed, r.Partial = m.Plan.Name, m.Seed, partial
+	g.end = min(g.n.Now(), sc.Run.Length)
+	for i := range sc.Aggregates {
+		g.ways = append(g.ways, nodes.WayOf(nodes.AggID(i), nodes.Out))
+		if sc.Aggregates[i].BothWays {
+			g.ways = append(g.ways, nodes.WayOf(nodes.AggID(i), nodes.Back))
+		}
+	}
+	return g
+}
+
+// defaults lists the values that the scenario did not give.
+func (g *gatherer) defaults() {
+	for _, d := range g.m.Scenario.Defaults {
+		key, value, _ := strings.Cut(d, " = ")
+		g.r.Defaults = append(g.r.Defaults, result.Default{Key: key, Value: value})
+	}
 }
 
 // listPeriods names the stretches after the warm-up, each once.

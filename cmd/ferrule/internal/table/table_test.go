@@ -21,7 +21,7 @@ import (
 var update = flag.Bool("update", false, "rewrite the golden files; explain why in the commit")
 
 func samples() map[string]result.Result {
-	return map[string]result.Result{"run": sampleRun(), "batch": sampleBatch(), "compare": sampleComparison(), "check": sampleCheck()}
+	return map[string]result.Result{"run": sampleRun(), "batch": sampleBatch(), "compare": sampleComparison(), "check": sampleCheck(), "failures": sampleFailures()}
 }
 
 func text(t *testing.T, r result.Result, opt Options) string {
@@ -94,7 +94,7 @@ func gather(v any, numbers map[float64]bool, texts map[string]bool) {
 
 // sizes gives the SI size of each unit a table may use, written out anew.
 var sizes = map[string]float64{"s": 1, "ms": 1e-3, "us": 1e-6, "ns": 1e-9, "Gb/s": 1e9, "Mb/s": 1e6, "kb/s": 1e3, "b/s": 1,
-	"GB": 1e9, "MB": 1e6, "kB": 1e3, "B": 1, "%": 1e-2, "ppm": 1e-6, "pp": 1e-2}
+	"GB": 1e9, "MB": 1e6, "kB": 1e3, "B": 1, "min": 60, "%": 1e-2, "ppm": 1e-6, "pp": 1e-2}
 
 var shown = regexp.MustCompile(`[-+]?[0-9][0-9,]*(\.[0-9]+)?(e[-+]?[0-9]+)?`)
 
