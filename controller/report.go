@@ -119,6 +119,7 @@ type StepReport struct {
 	Done   des.Time // when it was done, or failed; des.Never: not yet
 	State  StepState
 	Detail string
+	Undoes int // an order of the controller's own: the place of the one it takes back; -1: none
 }
 
 // DemandReport counts the requests of one stream of circuit demand without

@@ -169,7 +169,7 @@ func (n *Net) Reports() ([]controller.Report, []controller.StepReport) {
 	for i := range c.steps {
 		s := &c.steps[i]
 		steps[i] = controller.StepReport{
-			Name: s.order.Name, Kind: s.order.Kind, Asked: s.asked, Begun: s.begun, Done: s.done, State: s.state, Detail: s.detail,
+			Name: s.order.Name, Kind: s.order.Kind, Asked: s.asked, Begun: s.begun, Done: s.done, State: s.state, Detail: s.detail, Undoes: s.undoes,
 		}
 	}
 	return reports, steps

@@ -19,12 +19,12 @@ type step struct {
 	done   des.Time
 	detail string
 	before before // what it is about to change
-	own    bool   // an order of the controller's own
+	undoes int    // an order of the controller's own: the step it takes back; -1: none
 }
 
 // newStep is an order that has not been given yet.
 func newStep(o *controller.Order) step {
-	return step{order: o, asked: des.Never, begun: des.Never, done: des.Never}
+	return step{order: o, asked: des.Never, begun: des.Never, done: des.Never, undoes: -1}
 }
 
 // ordered takes in an order. Those known in advance come with their number.

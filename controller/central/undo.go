@@ -82,17 +82,18 @@ func (c *Controller) takeBack(i int) {
 	case controller.Request:
 		return // it ends by itself
 	case controller.Move, controller.Return:
-		c.moveBack(s.order, s.before.chains, o)
+		c.moveBack(i, o)
 		return
 	default:
 		panic("central: unknown kind of order")
 	}
-	c.orderAgain(o)
+	c.orderAgain(o, i)
 }
 
-// moveBack gives the orders that bring ways back to the chains they had.
-func (c *Controller) moveBack(was *controller.Order, chains [][]nodes.CircuitID, o controller.Order) {
-	name := o.Name
+// moveBack gives the orders that bring the ways of a step back to the chains
+// they had.
+func (c *Controller) moveBack(step int, o controller.Order) {
+	was, chains, name := c.steps[step].order, c.steps[step].before.chains, o.Name
 	for i, w := range was.Ways {
 		o.Name, o.Ways, o.Circuits = name, []uint16{w}, chains[i]
 		if len(was.Ways) > 1 {
@@ -102,18 +103,18 @@ func (c *Controller) moveBack(was *controller.Order, chains [][]nodes.CircuitID,
 		if chains[i] == nil {
 			o.Kind = controller.Return
 		}
-		c.orderAgain(o)
+		c.orderAgain(o, step)
 	}
 }
 
-// orderAgain gives an order of the controller's own, to be taken up once its
-// last one is over.
-func (c *Controller) orderAgain(o controller.Order) {
-	if n := len(c.steps); c.steps[n-1].own {
+// orderAgain gives an order of the controller's own, which takes back a step,
+// to be taken up once its last one is over.
+func (c *Controller) orderAgain(o controller.Order, step int) {
+	if n := len(c.steps); c.steps[n-1].undoes >= 0 {
 		o.After = controller.Condition{Kind: controller.StepOver, Step: c.steps[n-1].order.Name}
 	}
 	s := newStep(&o)
-	s.asked, s.own = c.now, true
+	s.asked, s.undoes = c.now, step
 	c.steps = append(c.steps, s)
 	c.changed = true
 }

@@ -152,18 +152,31 @@ func (g *gatherer) steps() {
 				x.State = controller.Waiting.String()
 			}
 		} else {
-			rep := reports[s.Order]
-			x.State, x.Detail = rep.State.String(), rep.Detail
-			if rep.Begun != des.Never {
-				t := rep.Begun.Seconds()
-				x.OrderedS = &t
-			}
-			if rep.Done != des.Never {
-				t := rep.Done.Seconds()
-				x.DoneS = &t
-			}
+			stand(&x, &reports[s.Order])
 		}
 		g.r.Steps = append(g.r.Steps, x)
+	}
+	for i := range reports {
+		for _, s := range g.m.Steps {
+			if rep := &reports[i]; rep.Undoes >= 0 && s.Order == rep.Undoes {
+				x := result.Step{Act: "undo of " + s.Act.Verb.String(), Subject: build.Describe(s.Act)}
+				stand(&x, rep)
+				g.r.Steps = append(g.r.Steps, x)
+			}
+		}
+	}
+}
+
+// stand says how an order stands.
+func stand(x *result.Step, rep *controller.StepReport) {
+	x.State, x.Detail = rep.State.String(), rep.Detail
+	if rep.Begun != des.Never {
+		t := rep.Begun.Seconds()
+		x.OrderedS = &t
+	}
+	if rep.Done != des.Never {
+		t := rep.Done.Seconds()
+		x.DoneS = &t
 	}
 }
 

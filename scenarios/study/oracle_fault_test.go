@@ -3,6 +3,7 @@ package study_test
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 	"testing"
 
@@ -151,5 +152,37 @@ func TestOracleDrain(t *testing.T) {
 		if s.State != "done" {
 			t.Errorf("%+v", s)
 		}
+	}
+}
+
+// A step of a plan that is blocked has the others taken back, and the report
+// lists when each was undone; the change and its undoing are one period.
+func TestOracleUndo(t *testing.T) {
+	t.Parallel()
+	text := transit("") + `  - name: q
+    when-blocked: undo
+    steps:
+      - { at: 1s, set-up: { name: vy, between: [a, b], slots: 1, carries: moved } }
+      - { after: vy up, move: moved, onto: [vy] }
+      - { after: moved moved, set-up: { name: wide, between: [a, b], slots: 80, carries: moved } }
+      - { after: wide up, tear-down: vx }
+`
+	r := run(t, parse(t, text), study.Options{Plan: "q", Cores: 1, Seed: 1})
+	var got []string
+	for _, s := range r.Steps {
+		got = append(got, s.Act+" "+s.State)
+	}
+	want := []string{"set-up done", "move done", "set-up failed", "tear-down never", "undo of move done", "undo of set-up done"}
+	if !slices.Equal(got, want) {
+		t.Fatalf("steps %q, want %q", got, want)
+	}
+	if move, circuit := r.Steps[4], r.Steps[5]; *move.DoneS > *circuit.OrderedS || *circuit.DoneS <= *r.Steps[2].DoneS {
+		t.Errorf("undone in the wrong order: %+v, %+v", move, circuit)
+	}
+	if s := circuitOf(t, r, "vy").State; s != "torn down" {
+		t.Errorf("vy is %s in the end", s)
+	}
+	if p := r.Periods[1]; p.Kind != result.Change || p.ToS < *r.Steps[5].DoneS {
+		t.Errorf("%+v ends before the last is undone at %v", p, *r.Steps[5].DoneS)
 	}
 }
