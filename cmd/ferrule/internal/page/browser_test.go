@@ -365,6 +365,10 @@ func TestSchemes(t *testing.T) {
 	}
 	narrow := open(t, b, r, "light", 390, 1600)
 	narrow.shoot("narrow")
+	narrow.scroll()
+	if wide := ask[float64](narrow, `Math.max(...[...document.querySelectorAll(".uplot")].map((e) => e.getBoundingClientRect().right))`); wide > 390 {
+		t.Errorf("a chart reaches to %.0f of 390 pixels", wide)
+	}
 	if wide := ask[int](narrow, "document.documentElement.scrollWidth"); wide > 390 {
 		t.Errorf("a window of 390 pixels shows a page of %d", wide)
 	}
