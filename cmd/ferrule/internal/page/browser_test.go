@@ -45,14 +45,33 @@ func (v *visit) note(format string, args ...any) {
 	v.bad = append(v.bad, fmt.Sprintf(format, args...))
 }
 
-// browser starts one; the tests need Debian's chromium, or one in the path.
-func browser(t *testing.T) context.Context {
+// chromium finds the browser. Where it is missing it is installed from Debian's
+// packages, which takes root, or sudo without a password.
+func chromium(t *testing.T) string {
 	t.Helper()
 	path, err := exec.LookPath("chromium")
-	if err != nil {
-		t.Fatalf("these tests need chromium (apt-get install chromium): %v", err)
+	if err == nil {
+		return path
 	}
+	const install = "apt-get update -qq && DEBIAN_FRONTEND=noninteractive apt-get install -y -qq --no-install-recommends chromium fonts-dejavu-core"
+	shell := []string{"sh", "-c", install}
+	if os.Getuid() != 0 {
+		shell = append([]string{"sudo", "-n"}, shell...)
+	}
+	if out, err := exec.Command(shell[0], shell[1:]...).CombinedOutput(); err != nil {
+		t.Fatalf("these tests need chromium; %s: %v\n%s", install, err, out)
+	}
+	if path, err = exec.LookPath("chromium"); err != nil {
+		t.Fatal(err)
+	}
+	return path
+}
+
+// browser starts one.
+func browser(t *testing.T) context.Context {
+	t.Helper()
 	started.Do(func() {
+		path := chromium(t)
 		ctx, _ := chromedp.NewExecAllocator(running, append(chromedp.DefaultExecAllocatorOptions[:],
 			chromedp.ExecPath(path), chromedp.NoSandbox, chromedp.DisableGPU)...) // with an empty directory of its own
 		tab, _ := chromedp.NewContext(ctx) // both end with running
