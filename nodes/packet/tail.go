@@ -25,6 +25,7 @@ type tail struct {
 	picks  []pick   // what was selected, oldest first
 	runs   []fates  // of what arrives first
 	number int64    // of the wait-to-restore that runs
+	hand   nodes.Packet
 }
 
 // pick is what a tail passes from an instant on.
@@ -226,7 +227,11 @@ func (s *Site) receiveCopies(i int, end des.Time, sorted bool) {
 			if in.lat.varies && k.Seq%64 == 0 {
 				s.latencies.Add(uint64(due-k.Due) / 1000)
 			}
-			s.goOn(k, due, int32(i), sorted, surplus)
+			t.hand = *k // what is in the pipe is only read
+			if surplus {
+				t.hand.Bits |= nodes.BitCopy
+			}
+			s.goOn(&t.hand, due, int32(i), sorted)
 		}
 	}
 }
@@ -240,31 +245,27 @@ func causeOf(dark bool) Cause {
 }
 
 // goOn takes a packet that the tail has passed further, as receive does.
-func (s *Site) goOn(p *nodes.Packet, due des.Time, key int32, sorted, surplus bool) {
-	k := *p
-	if surplus {
-		k.Bits |= nodes.BitCopy
-	}
+func (s *Site) goOn(k *nodes.Packet, due des.Time, key int32, sorted bool) {
 	h := s.hop[k.Way]
 	if h >= hopHeld {
 		h = s.resolve(k.Way)
 	}
 	switch {
 	case h >= 0 && k.TTL <= 1:
-		s.lose(&k, due, LostTTL)
+		s.lose(k, due, LostTTL)
 	case h >= 0:
 		if h >= hopSets {
-			h = s.choose(&k, h)
+			h = s.choose(k, h)
 		}
 		k.TTL--
-		s.ports[h].in.put(&k, key).Due = due
+		s.ports[h].in.put(k, key).Due = due
 		s.transit += uint64(k.Size)
 	case h == hopHere && sorted:
-		s.sink.put(&k, key).Due = due
+		s.sink.put(k, key).Due = due
 	case h == hopHere:
-		s.deliver(&k, due)
+		s.deliver(k, due)
 	default:
-		s.lose(&k, due, noHop(h))
+		s.lose(k, due, noHop(h))
 	}
 }
 

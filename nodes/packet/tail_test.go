@@ -264,3 +264,21 @@ func TestOnePlusTimeline(t *testing.T) {
 		}
 	}
 }
+
+// Packets on a 1+1 circuit need no memory of their own, also while the tail has
+// changed over.
+func TestOnePlusAllocatesNothing(t *testing.T) {
+	n, _ := onePlus(2*des.Millisecond, 7*des.Millisecond, 20*des.Microsecond, packet.Config{Length: 20 * des.Second, Detect: 3 * des.Millisecond})
+	n.Schedule(packet.Act{At: des.Second, Kind: packet.ActCut, Where: des.Millisecond})
+	k := des.NewKernel(n, nil)
+	k.Advance(2*des.Second, nil)
+	before := memory()
+	k.Advance(18*des.Second, nil)
+	after := memory()
+	if got := after.Mallocs - before.Mallocs; got > 100 {
+		t.Errorf("%d allocations for 3.2 million copies", got)
+	}
+	if twice := duplicatesOf(n, 0); twice == 0 {
+		t.Error("the tail has not changed over")
+	}
+}
