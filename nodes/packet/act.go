@@ -187,7 +187,10 @@ func (n *Network) end(now des.Time) {
 func (n *Network) scale(now des.Time, way uint16, factor float64) {
 	a, d := nodes.AggOf(way)
 	s := n.sites[n.plant.Aggregates[a].Origin(d)]
-	if i := s.sourceOf(way); i >= 0 {
+	if t := n.sites[n.plant.Aggregates[a].Target(d)]; t.hostOf != nil && t.hostOf[way] > 0 {
+		t.scaleHost(now, way, factor)
+	}
+	if i := s.sourceOf(way); i >= 0 && s.sources[i].host == nil {
 		s.sources[i].s.Scale(now, factor)
 		s.next[i] = s.sources[i].s.Next()
 		s.srcMin = des.Never

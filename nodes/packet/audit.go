@@ -44,6 +44,7 @@ func (n *Network) Inside(f func(p *nodes.Packet)) {
 		}
 		for i := range s.sources {
 			s.sources[i].gate.each(f)
+			s.sources[i].host.each(f)
 		}
 		for i := range s.held {
 			for j := range s.held[i].buf {

@@ -83,7 +83,11 @@ func (s *Site) clone(n *Network, pipes map[*pipe]*pipe) *Site {
 	}
 	c.sources = slices.Clone(s.sources)
 	for i := range c.sources {
-		c.sources[i].s = s.sources[i].s.Clone()
+		if c.sources[i].host != nil {
+			c.sources[i].host = s.sources[i].host.clone()
+		} else {
+			c.sources[i].s = s.sources[i].s.Clone()
+		}
 		c.sources[i].gate = s.sources[i].gate.clone()
 	}
 	c.next = slices.Clone(s.next)

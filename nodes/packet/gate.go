@@ -60,7 +60,7 @@ func (s *Site) passGate(g *gate, k *nodes.Packet, due des.Time) bool {
 	g.buf = append(g.buf, *k)
 	w := &g.buf[len(g.buf)-1]
 	w.Due = at
-	w.Word += uint32((at - due) / des.Nanosecond)
+	w.Word += uint32((at-due)/des.Nanosecond) & waitMask(k.Bits)
 	s.gateMin = min(s.gateMin, at)
 	return false
 }

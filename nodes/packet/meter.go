@@ -83,7 +83,7 @@ func (m *Meter) add(p *nodes.Packet, at des.Time, stretch, fault int32) {
 	}
 	c.Delay.Add(uint64(above) / 1000)
 	c.Exact.Add(delay)
-	c.Queueing += uint64(p.Word)
+	c.Queueing += uint64(p.Word & waitMask(p.Bits))
 	c.Bytes += uint64(p.Size)
 	m.trace.deliver(p.Born, uint64(delay)/1000, p.Size)
 	m.jitter.Add(delay)
@@ -104,6 +104,10 @@ func (m *Meter) add(p *nodes.Packet, at des.Time, stretch, fault int32) {
 	}
 	m.next, m.last = p.Seq+1, p.Born
 }
+
+// waitMask is all ones for packets whose Word counts the time they waited, and
+// 0 for those of transports.
+func waitMask(b nodes.PacketBits) uint32 { return uint32((int32(b&nodes.KindMask) - 1) >> 31) }
 
 //go:noinline
 func (m *Meter) cell(stretch int32) *Cell {

@@ -21,6 +21,7 @@ type Config struct {
 	Plant       *nodes.Plant
 	Forwarding  []Forwarding // per site; nil: no latency
 	Sources     []Source
+	Endpoints   []Endpoint
 	Seed        uint64
 	WarmUp      des.Time
 	Length      des.Time // when sources end
@@ -106,7 +107,7 @@ func New(cfg Config) (*Network, error) {
 		n.regions = append(n.regions, &region{net: n, inner: within[i]})
 	}
 	for i := range p.Sites {
-		s := &Site{id: nodes.SiteID(i), net: n, srcMin: des.Never, gateMin: des.Never, st: view{to: cfg.WarmUp, fault: -1}}
+		s := &Site{id: nodes.SiteID(i), net: n, srcMin: des.Never, gateMin: des.Never, hostMin: des.Never, st: view{to: cfg.WarmUp, fault: -1}}
 		s.hop = make([]int32, len(n.classOf))
 		s.lossOf = make([]int32, len(n.classOf))
 		s.via, s.sink.key = make([]uint64, len(n.classOf)), -1
@@ -129,6 +130,9 @@ func New(cfg Config) (*Network, error) {
 		s.sources = append(s.sources, source{s: src.Source, way: src.Way, gate: newGate(&src)})
 		s.next = append(s.next, src.Source.Next())
 		s.srcMin = min(s.srcMin, src.Source.Next())
+	}
+	for i := range cfg.Endpoints {
+		n.addHost(&cfg.Endpoints[i])
 	}
 	n.traceSites()
 	for _, s := range n.sites {
@@ -311,7 +315,7 @@ func (n *Network) Finished() bool {
 				return false
 			}
 		}
-		if s.srcMin < n.cfg.Length || s.gateMin < des.Never {
+		if s.srcMin < n.cfg.Length || s.gateMin < des.Never || !s.hostsDone() {
 			return false
 		}
 	}

@@ -210,7 +210,7 @@ func (q *port) catch(s *Site, end des.Time) {
 			q.count.delayed++
 		}
 		k := q.send(p, t)
-		k.Word += uint32(wait / des.Nanosecond)
+		k.Word += uint32(wait/des.Nanosecond) & waitMask(k.Bits)
 		if q.copy != nil {
 			q.double(k)
 		}

@@ -24,6 +24,8 @@ type Site struct {
 	next    []des.Time // of each source
 	srcMin  des.Time
 	gateMin des.Time // when the next packet leaves a shaper, or Never
+	hostOf  []int32  // way -> source that is the endpoint it leads to, plus one; nil: there is none
+	hostMin des.Time // when an endpoint next does something or something it has sent is due, or Never
 
 	table *nodes.Table
 	steer []nodes.CircuitID // way -> circuit it is moved onto; nil: none is
@@ -88,6 +90,7 @@ type source struct {
 	markP   uint64 // at the end of the warm-up
 	markB   uint64
 	gate    *gate // what conditions it; or nil
+	host    *host // an endpoint, and then s is nil; or nil
 }
 
 // held is a way whose packets wait at the ingress.
@@ -153,7 +156,7 @@ func (s *Site) portOfCircuit(c nodes.CircuitID) *port {
 
 // nextWork reports when the site next has something to do.
 func (s *Site) nextWork() des.Time {
-	t := min(s.agenda.Next(), s.gateMin)
+	t := min(s.agenda.Next(), s.gateMin, s.hostMin)
 	if s.srcMin < des.Never {
 		t = min(t, s.access.out(s.srcMin))
 	}
@@ -282,6 +285,9 @@ func (s *Site) segment(end des.Time) {
 	}
 	if before := s.access.before(end); s.srcMin < before {
 		s.emit(before)
+	}
+	if s.hostMin < end {
+		s.runHosts(end)
 	}
 	if s.gateMin < end {
 		s.openGates(end)
@@ -421,10 +427,13 @@ func (s *Site) deliver(k *nodes.Packet, due des.Time) {
 	m := &s.net.meters[k.Way]
 	if k.Born >= s.st.from && due < s.st.to {
 		m.add(k, due, s.st.stretch, s.st.fault)
-		return
+	} else {
+		stretch, fault := s.net.history.find(k.Born, due)
+		m.add(k, due, stretch, fault)
 	}
-	stretch, fault := s.net.history.find(k.Born, due)
-	m.add(k, due, stretch, fault)
+	if s.hostOf != nil {
+		s.hear(k, due)
+	}
 }
 
 // lose counts a packet lost here at the given instant.

@@ -1,0 +1,173 @@
+package transport_test
+
+import (
+	"fmt"
+	"math/rand/v2"
+	"runtime"
+	"strings"
+	"testing"
+
+	"ferrule/des"
+	"ferrule/des/random"
+	"ferrule/nodes"
+	"ferrule/nodes/packet"
+	"ferrule/workloads/transport"
+)
+
+// busy is many short transfers and some endless ones over a line too small for
+// them, with losses and marks, both ways.
+func busy(t testing.TB) line {
+	t.Helper()
+	size, err := random.Spec{Kind: random.Pareto, Mean: 60e3, Shape: 1.3, AtMost: 20e6}.Law()
+	if err != nil {
+		t.Fatal(err)
+	}
+	l := line{rate: 20 * nodes.Mbps, delay: 4 * des.Millisecond, length: 6 * des.Second, class: nodes.Class{BufferTime: 30 * des.Millisecond, Queue: nodes.QueueFIFO, Drop: nodes.DropRED, ECN: true}}
+	for i, a := range []transport.Algorithm{transport.Reno, transport.NewReno, transport.Cubic} {
+		l.pairs = append(l.pairs, transport.Config{Name: fmt.Sprint("x", i), Seed: 4, PerSecond: 15, Size: size, Standing: 2 - i, Algorithm: a, ECN: i == 1})
+	}
+	return l
+}
+
+// told writes down what a network of transports can tell.
+func told(n *packet.Network) string {
+	var b strings.Builder
+	totals, bad := n.Audit()
+	fmt.Fprintf(&b, "now %v totals %+v audit %q offered %v\n", n.Now(), totals, bad, n.Offered())
+	for w := range n.Meters() {
+		for i, c := range n.Meters()[w].Cells {
+			if c != nil {
+				fmt.Fprintf(&b, "way %d stretch %d %+v queueing %d bytes %d reordered %d jitter %x\n", w, i, c.Exact, c.Queueing, c.Bytes, c.Reordered, c.Jitter)
+			}
+		}
+		for i, c := range n.Flows(uint16(w)) {
+			if c != nil {
+				fmt.Fprintf(&b, "flows of way %d stretch %d %+v began %d good %d resent %d time-outs %d", w, i, c.Exact, c.Began, c.Good, c.Resent, c.Timeouts)
+				c.Times.Each(func(low, high, count uint64) { fmt.Fprintf(&b, " %d:%d", low, count) })
+				fmt.Fprintln(&b)
+			}
+		}
+	}
+	n.Losses(func(site nodes.SiteID, l *packet.Loss) { fmt.Fprintf(&b, "loss at %d: %+v\n", site, *l) })
+	for _, r := range n.PortReports() {
+		fmt.Fprintf(&b, "port %+v\n", r)
+	}
+	n.Inside(func(p *nodes.Packet) { fmt.Fprintf(&b, "inside %+v\n", *p) })
+	return b.String()
+}
+
+// How a run is cut into windows never shows in what a closed loop does, nor
+// does it when the run is copied half-way.
+func TestWindowsDoNotShow(t *testing.T) {
+	l := busy(t)
+	n, _ := l.build(t)
+	run(t, n)
+	want := told(n)
+	totals, _ := n.Audit()
+	f := flows(n, 1)
+	if totals.Lost[packet.LostAQM] == 0 || f.Resent == 0 || f.Exact.N < 50 {
+		t.Fatalf("%d lost to queue management, %d sent again, %d complete: the loop is not tried", totals.Lost[packet.LostAQM], f.Resent, f.Exact.N)
+	}
+	r := rand.New(rand.NewPCG(5, 6))
+	for name, set := range map[string]func(k *des.Kernel){
+		"a seventh": func(k *des.Kernel) { k.Window = n.Lookahead() / 7 },
+		"random": func(k *des.Kernel) {
+			k.WindowFunc = func() des.Time { return des.Time(r.Int64N(int64(n.Lookahead()))) >> r.IntN(3) }
+		},
+	} {
+		m, _ := l.build(t)
+		k := des.NewKernel(m, nil)
+		set(k)
+		m.Run(k, nil)
+		if got := told(m); got != want {
+			t.Errorf("windows %s show", name)
+		}
+	}
+	a, _ := l.build(t)
+	des.NewKernel(a, nil).Advance(2*des.Second, nil)
+	b := a.Clone()
+	run(t, a)
+	run(t, b)
+	if told(a) != want || told(b) != want {
+		t.Errorf("a copy goes its own way")
+	}
+}
+
+// Transfers are asked for at the rate given, all over the run, whatever the
+// network does with them: those of a faster line are the same.
+func TestDemandIsTheSame(t *testing.T) {
+	l := busy(t)
+	slow, _ := l.build(t)
+	run(t, slow)
+	l.rate *= 10
+	fast, _ := l.build(t)
+	run(t, fast)
+	for a := range nodes.AggID(3) {
+		x, y := flows(slow, a), flows(fast, a)
+		if x.Began != y.Began || y.Exact.N < x.Exact.N || x.Began < 60 || x.Began > 130 { // 90 +- 4 sigma, 0 to 2 endless
+			t.Errorf("aggregate %d: %d and %d asked for, %d and %d complete", a, x.Began, y.Began, x.Exact.N, y.Exact.N)
+		}
+	}
+}
+
+// A transfer is complete also when handshakes, data, acknowledgements are lost.
+func TestEverythingMayBeLost(t *testing.T) {
+	for _, a := range []transport.Algorithm{transport.Reno, transport.NewReno, transport.Cubic} {
+		r := rand.New(rand.NewPCG(9, uint64(a)))
+		l := line{rate: 100 * nodes.Mbps, delay: 5 * des.Millisecond, length: 2 * des.Hour, class: nodes.Class{BufferPackets: 12, Queue: nodes.QueueFIFO}}
+		l.pairs = []transport.Config{{Name: "x", PerSecond: 20, Most: 300, Size: fixed(t, 50_000), Algorithm: a}}
+		l.lossy = func(*nodes.Packet) bool { return r.Float64() < 0.2 }
+		l.deaf = func(*nodes.Packet) bool { return r.Float64() < 0.2 }
+		n, _ := l.build(t)
+		run(t, n)
+		if f := flows(n, 0); f.Exact.N != 300 || f.Good != 300*50_000 || f.Timeouts == 0 {
+			t.Errorf("algorithm %d: %d of 300 complete, %d B arrived, %d time-outs", a, f.Exact.N, f.Good, f.Timeouts)
+		}
+	}
+}
+
+// Once buffers and pools have grown a closed loop allocates nothing.
+func TestLoopAllocatesNothing(t *testing.T) {
+	l := line{rate: 200 * nodes.Mbps, delay: 5 * des.Millisecond, length: 30 * des.Second, class: nodes.Class{BufferTime: 20 * des.Millisecond, Queue: nodes.QueueFIFO, Drop: nodes.DropCoDel}}
+	l.pairs = []transport.Config{
+		{Name: "x", Standing: 20, Algorithm: transport.Cubic},
+		{Name: "y", PerSecond: 100, Size: fixed(t, 30_000), Algorithm: transport.NewReno},
+	}
+	n, _ := l.build(t)
+	k := des.NewKernel(n, nil)
+	k.Advance(14*des.Second, nil)
+	var a, b runtime.MemStats
+	before, _ := n.Audit()
+	runtime.ReadMemStats(&a)
+	k.Advance(20*des.Second, nil)
+	runtime.ReadMemStats(&b)
+	after, bad := n.Audit()
+	hops := after.Hops - before.Hops
+	if got := float64(b.Mallocs-a.Mallocs) / float64(hops); len(bad) > 0 || hops < 100_000 || got > 2e-3 {
+		t.Errorf("%g allocations a hop over %d hops; audit %q", got, hops, bad)
+	}
+}
+
+// BenchmarkHop is a packet-hop of a closed loop: endless transfers that share a
+// line of 10 Gb/s.
+func BenchmarkHop(b *testing.B) {
+	for _, flows := range []int{10, 1000, 50_000} {
+		b.Run(fmt.Sprint(flows), func(b *testing.B) {
+			l := line{rate: 10 * nodes.Gbps, delay: 5 * des.Millisecond, length: des.Hour, class: nodes.Class{BufferTime: 20 * des.Millisecond, Queue: nodes.QueueFIFO}}
+			l.pairs = []transport.Config{{Name: "x", Standing: flows, Algorithm: transport.Cubic}}
+			n, _ := l.build(b)
+			k := des.NewKernel(n, nil)
+			k.Advance(des.Second/2, nil)
+			before, _ := n.Audit()
+			at := des.Second / 2
+			hops := uint64(0)
+			for b.Loop() {
+				at += 10 * des.Millisecond
+				k.Advance(at, nil)
+			}
+			after, _ := n.Audit()
+			hops = after.Hops - before.Hops
+			b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(hops), "ns/hop")
+		})
+	}
+}
