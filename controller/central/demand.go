@@ -98,6 +98,11 @@ func (c *Controller) findSlots(ends [2]nodes.SiteID, slots int, choose nodes.Cho
 			s.mask.Edges.Add(f)
 		}
 	}
+	for v := range c.sites {
+		if c.sites[v].drained && nodes.SiteID(v) != ends[0] && nodes.SiteID(v) != ends[1] {
+			s.mask.Nodes.Add(v)
+		}
+	}
 	q := path.Query{From: int32(ends[0]), To: int32(ends[1]), Avoid: s.mask, Width: c.free, Need: int64(slots)}
 	switch choose {
 	case nodes.ChooseLeastDelay:

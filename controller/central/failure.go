@@ -1,7 +1,6 @@
 package central
 
 import (
-	"fmt"
 	"slices"
 	"strings"
 
@@ -39,15 +38,13 @@ func (c *Controller) fibreAlarm(m *nodes.Message) {
 // fibreDies takes every circuit over f for down: one report for one cut.
 func (c *Controller) fibreDies(f nodes.FibreID, from nodes.SiteID) {
 	var hit []nodes.CircuitID
-	var names []string
 	for i := range c.circuits {
 		if k := &c.circuits[i]; k.held.over(f) && (carries(k.state) || k.state == controller.Down) {
 			hit = append(hit, nodes.CircuitID(i))
-			names = append(names, c.k.circuitName(nodes.CircuitID(i)))
 		}
 	}
 	c.seeWhoIsCutOff()
-	c.x.Note("fibre down", c.k.fibreName(f), fmt.Sprintf("told by %s; %d circuits: %s", c.k.siteName(from), len(hit), strings.Join(names, ", ")))
+	c.x.Note("fibre down", c.k.fibreName(f), "told by "+c.k.siteName(from)+"; "+c.counted(hit))
 	for _, id := range hit {
 		k := &c.circuits[id]
 		if c.k.cfg.PerCircuit && !k.searching {

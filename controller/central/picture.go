@@ -2,9 +2,7 @@ package central
 
 import (
 	"fmt"
-	"math"
 	"slices"
-	"strconv"
 
 	"ferrule/controller"
 	"ferrule/controller/path"
@@ -331,43 +329,6 @@ func (c *Controller) fibreList(route []nodes.FibreID) string {
 		b = append(b, c.k.fibreName(f)...)
 	}
 	return string(b)
-}
-
-// people words a duration for people: three significant digits.
-func people(d des.Time) string {
-	switch d {
-	case 0:
-		return "0 s"
-	case des.Never:
-		return "never"
-	}
-	unit, name := des.Picosecond, "ps"
-	for _, u := range [...]struct {
-		size des.Time
-		name string
-	}{{des.Second, "s"}, {des.Millisecond, "ms"}, {des.Microsecond, "us"}, {des.Nanosecond, "ns"}} {
-		if max(d, -d) >= u.size {
-			unit, name = u.size, u.name
-			break
-		}
-	}
-	v := float64(d) / float64(unit)
-	digits := 2
-	switch size := math.Abs(v); {
-	case size >= 99.95:
-		digits = 0
-	case size >= 9.995:
-		digits = 1
-	}
-	return strconv.FormatFloat(v, 'f', digits, 64) + " " + name
-}
-
-// attempts words a number of attempts.
-func attempts(n int) string {
-	if n == 1 {
-		return "1 attempt"
-	}
-	return fmt.Sprintf("%d attempts", n)
 }
 
 // releaseAll tells every site of h's routes, up to part upto of them, to free

@@ -177,6 +177,21 @@ func (c *Controller) upState(id nodes.CircuitID) controller.CircuitState {
 	return controller.Up
 }
 
+// darkFibres names the fibres of h without light, or, when none is known to be
+// so, says that.
+func (c *Controller) darkFibres(h *holding) string {
+	var dark []nodes.FibreID
+	for _, f := range h.routes() {
+		if c.fibres[f].dead() {
+			dark = append(dark, f)
+		}
+	}
+	if dark == nil {
+		return "one route"
+	}
+	return c.fibreList(dark)
+}
+
 // assess brings the state of a 1+1 circuit up to date after news of light.
 // With told, its ends stop sending by themselves when all is lost.
 func (c *Controller) assess(id nodes.CircuitID, told bool) {
@@ -192,7 +207,11 @@ func (c *Controller) assess(id nodes.CircuitID, told bool) {
 		c.revive(id)
 	case (k.state == controller.Up || k.state == controller.UpUnprotected) && k.state != is:
 		c.enter(id, is)
-		c.x.Note(is.String(), c.k.circuitName(id), "")
+		detail := "both routes have light"
+		if is == controller.UpUnprotected {
+			detail = "light is missing on " + c.darkFibres(&k.held)
+		}
+		c.x.Note(is.String(), c.k.circuitName(id), detail)
 	}
 }
 

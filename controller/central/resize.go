@@ -30,7 +30,7 @@ func (c *Controller) resize(id int32) {
 		}
 	}
 	c.enter(t.circuit, controller.Resizing)
-	c.x.Note("resize", name, fmt.Sprintf("%d to %d slots, %d to %d bit/s", k.held.slots, t.slots, k.rate, t.rate))
+	c.x.Note("resize", name, fmt.Sprintf("%d to %d slots, %s to %s", k.held.slots, t.slots, rateWords(k.rate), rateWords(t.rate)))
 	if more > 0 {
 		grown := k.held.withSlots(more)
 		c.reserve(&grown)
