@@ -21,10 +21,10 @@ type Policy struct {
 	Smooth   float64 // weight of the latest reading, in (0, 1]
 }
 
-// What a policy takes when the file does not say. Common practice, no source.
+// What a policy takes when the file does not say; it shrinks at half of what it
+// grows at. Common practice, no source.
 const (
 	defaultUp       = 0.8
-	defaultDown     = 0.4
 	defaultDrops    = 0.001
 	defaultHoldUp   = 2 * des.Second
 	defaultHoldDown = 10 * des.Second
@@ -51,10 +51,11 @@ func (r *resolver) policy(p *place, raw *rawPolicy, c *Circuit) *Policy {
 	}
 	q := &Policy{
 		Pos: p.pos(), Floor: slots("floor", raw.Floor, max(1, c.Slots)), Ceiling: slots("ceiling", raw.Ceiling, max(1, c.Slots)), Step: slots("step", raw.Step, 1),
-		Up: part("up", raw.Up, 1e-6, defaultUp), Down: part("down", raw.Down, 0, defaultDown), Drops: defaultDrops,
+		Up: part("up", raw.Up, 1e-6, defaultUp), Drops: defaultDrops,
 		HoldUp: span("hold-up", raw.HoldUp, defaultHoldUp), HoldDown: span("hold-down", raw.HoldDown, defaultHoldDown),
 		Smooth: part("smooth", raw.Smooth, 1e-6, defaultSmooth),
 	}
+	q.Down = part("down", raw.Down, 0, q.Up/2)
 	if raw.Drops != nil {
 		q.Drops = float64(*raw.Drops)
 	}

@@ -251,8 +251,8 @@ func (c *Controller) clone() *Controller {
 
 // Settled says whether nothing is under way but circuit demand: no task, job,
 // command without an answer or owed, alarm unheard, hold-off, search for a
-// fault, or port that is about to change. Timers that have become idle do not count, unlike messages
-// that settle. Wait-to-restore does not count either.
+// fault, or port that is about to change. Timers that have become idle do not
+// count, unlike messages that settle. Wait-to-restore does not count either.
 func (n *Net) Settled() bool {
 	c := n.ctl
 	for _, t := range c.tasks {

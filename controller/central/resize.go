@@ -48,7 +48,7 @@ func (c *Controller) assignSlots(id int32) {
 	t.phase, t.waiting = phaseConnect, h.parts()
 	for i := range h.parts() {
 		s, a, incarnation := h.part(i)
-		c.command(s, a.message(t.circuit, incarnation, true), ownerTask, id)
+		c.command(s, a.message(t.circuit, incarnation, t.settles()), ownerTask, id)
 	}
 }
 
@@ -57,6 +57,7 @@ func (c *Controller) sendRate(id int32) {
 	t := c.tasks[id]
 	t.waiting = 2
 	m := c.rateMessage(t.circuit, t.rate)
+	m.Settles = t.settles()
 	if r := c.rampFor(t.had, t.slots); r != nil {
 		m.Ref = r
 	}

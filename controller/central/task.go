@@ -64,6 +64,10 @@ type task struct {
 	keep   bool
 }
 
+// settles says whether the network is unsettled while t is in hand. What a
+// policy decides for itself is no consequence of an act: it may go on for ever.
+func (t *task) settles() bool { return t.kind != taskResize || t.step != nodes.None }
+
 // begin takes a task in hand and lets it wait to be decided.
 func (c *Controller) begin(t task, rank uint8) {
 	c.number++
