@@ -269,6 +269,7 @@ func (f *fakeNet) clone() *fakeNet {
 		s := &g.sites[i]
 		s.f = &g
 		s.ports, s.rates, s.queue = slices.Clone(s.ports), slices.Clone(s.rates), slices.Clone(s.queue)
+		s.count = slices.Clone(s.count)
 		s.trails, s.copies, s.upAt, s.ways = slices.Clone(s.trails), slices.Clone(s.copies), slices.Clone(s.upAt), slices.Clone(s.ways)
 		s.until, s.heldAt, s.steers = slices.Clone(s.until), slices.Clone(s.heldAt), slices.Clone(s.steers)
 	}

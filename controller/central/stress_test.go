@@ -97,21 +97,38 @@ func TestAllAgreeInTheEnd(t *testing.T) {
 				t.Fatalf("seed %d", seed)
 			}
 		}
-		// Alarms may have been lost for good: one more change of every fibre,
-		// with nothing lost, tells all.
-		for i := range p.Fibres {
-			f.light(40*des.Second, nodes.FibreID(i), true)
+		var copied *fakeNet
+		if loss == 0 {
+			copied = f.clone() // in the middle of everything
 		}
-		for i := range p.Fibres {
-			f.light(60*des.Second, nodes.FibreID(i), false)
-		}
-		f.run(100 * des.Second)
+		f.endInLight()
 		f.agree(t)
+		if copied != nil {
+			copied.endInLight()
+			copied.agree(t)
+			want, steps := f.net.Reports()
+			got, stepsToo := copied.net.Reports()
+			if fmt.Sprint(got, stepsToo, copied.under) != fmt.Sprint(want, steps, f.under) {
+				t.Errorf("a copy ends otherwise:\n%v\n%v", got, want)
+			}
+		}
 		if t.Failed() {
 			f.log(t)
 			t.Fatalf("seed %d", seed)
 		}
 	}
+}
+
+// endInLight darkens every fibre once more and lights it again: alarms may have
+// been lost for good, and now, with nothing lost, all is told.
+func (f *fakeNet) endInLight() {
+	for i := range f.plant.Fibres {
+		f.light(40*des.Second, nodes.FibreID(i), true)
+	}
+	for i := range f.plant.Fibres {
+		f.light(60*des.Second, nodes.FibreID(i), false)
+	}
+	f.run(100 * des.Second)
 }
 
 // agree checks that all state is what the controller believes.

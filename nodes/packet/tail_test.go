@@ -282,3 +282,55 @@ func TestOnePlusAllocatesNothing(t *testing.T) {
 		t.Error("the tail has not changed over")
 	}
 }
+
+// Routers, sites and ports that fail keep the books, and a copy of the network
+// made while they are broken goes on in the same way.
+func TestFailuresRepeat(t *testing.T) {
+	run := func(join des.Time, clone bool) (packet.Totals, []nodes.Event) {
+		n, _ := onePlus(2*des.Millisecond, 3*des.Millisecond, 20*des.Microsecond, packet.Config{
+			Length: 900 * des.Millisecond, Detect: 3 * des.Millisecond, Switch: des.Millisecond, JoinBelow: join,
+		})
+		for _, a := range []packet.Act{
+			{At: 100 * des.Millisecond, Kind: packet.ActFail, Part: packet.PartRouter, Site: 1},
+			{At: 200 * des.Millisecond, Kind: packet.ActMend, Part: packet.PartRouter, Site: 1},
+			{At: 300 * des.Millisecond, Kind: packet.ActFail, Part: packet.PartPort, Site: 0},
+			{At: 400 * des.Millisecond, Kind: packet.ActMend, Part: packet.PartPort, Site: 0},
+			{At: 500 * des.Millisecond, Kind: packet.ActFail, Part: packet.PartSite, Site: 2},
+			{At: 520 * des.Millisecond, Kind: packet.ActCut, Fibre: 1, Where: des.Millisecond},
+			{At: 600 * des.Millisecond, Kind: packet.ActMend, Part: packet.PartSite, Site: 2},
+			{At: 700 * des.Millisecond, Kind: packet.ActRepair, Fibre: 1},
+		} {
+			n.Schedule(a)
+		}
+		if clone {
+			for _, at := range []des.Time{150, 350, 550} {
+				des.NewKernel(n, nil).Advance(at*des.Millisecond, nil)
+				n = n.Clone()
+			}
+		}
+		return finish(t, n), n.Events()
+	}
+	want, events := run(-1, false)
+	// The stream out of site 1, and what comes to it, is lost for 100 ms and the
+	// light on the way; the port takes as much, for both ways.
+	if want.Lost[packet.LostFailed] < 9900 || want.Lost[packet.LostFailed] > 10200 || want.Lost[packet.LostCut] < 9900 {
+		t.Errorf("%+v", want)
+	}
+	back := 0
+	for _, e := range events {
+		if e.What == "light back" && e.At > 600*des.Millisecond {
+			back++
+		}
+	}
+	if back != 2 {
+		t.Errorf("light comes back %d times after the site is mended, want twice, when the cut is repaired too", back)
+	}
+	for _, other := range []struct {
+		join  des.Time
+		clone bool
+	}{{10 * des.Millisecond, false}, {-1, true}} {
+		if got, _ := run(other.join, other.clone); got != want {
+			t.Errorf("%+v: %+v, want %+v", other, got, want)
+		}
+	}
+}
