@@ -121,13 +121,18 @@ func (r *resolver) load(p *place, raw *rawAggregate, a *Aggregate) {
 		flows.fault("write load or flows", "stands beside load")
 	case load.given():
 		a.Load = within(load, raw.Load, 1, maxRate, 1, FormatRate)
+		if a.Traffic >= 0 && r.s.Traffic[a.Traffic].Model == ModelBulk {
+			load.fault("write flows: and a number", "transfers without end take what they get")
+		}
 	case flows.given():
 		a.Flows = within(flows, raw.Flows, 1, 1000000, 1, plain)
 		if a.Traffic < 0 {
 			return
 		}
 		t := &r.s.Traffic[a.Traffic]
-		if t.Rate == 0 && t.Model != ModelVoice {
+		if t.Model == ModelBulk {
+			a.Flows = within(flows, raw.Flows, 1, 10000, 1, plain)
+		} else if t.Rate == 0 && t.Model != ModelVoice {
 			flows.fault("write load: and a rate", "the traffic %s does not say the rate of a flow", t.Name)
 		} else if t.Rate > 0 && int64(t.Rate) > int64(maxRate)/int64(a.Flows) {
 			flows.fault("write fewer", "%d flows of %s pass %s", a.Flows, FormatRate(t.Rate), FormatRate(maxRate))
@@ -284,6 +289,10 @@ func (r *resolver) matrixRow(c *csv.Reader, name string, row []string, scale flo
 	}
 	if a.Traffic < 0 && !r.classKey(a.Class, "traffic").given() {
 		bad(2, "the class has no traffic", "write traffic: at the class "+row[2])
+		return
+	}
+	if a.Traffic >= 0 && r.s.Traffic[a.Traffic].Model == ModelBulk {
+		bad(2, "the traffic of the class has no rate: it sends without end", "write the aggregate in the scenario, with flows: and a number")
 		return
 	}
 	r.aggregates.ids[a.Name] = len(r.aggregates.names)

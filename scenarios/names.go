@@ -15,6 +15,8 @@ const (
 	ModelVoice                 // talk spurts of a codec
 	ModelVideo                 // frames, each sent as a train of packets
 	ModelFiles                 // files that arrive at random and are sent at a pace
+	ModelWeb                   // files that are asked for at random and sent by a transport
+	ModelBulk                  // transfers without end, sent by a transport
 )
 
 // FlowArrival is how flows start.
@@ -128,9 +130,10 @@ const (
 )
 
 var (
-	modelWords   = []string{"constant", "poisson", "voice", "video", "files"}
-	arrivalWords = []string{"none", "poisson", "regular"}
-	figureWords  = []string{
+	modelWords     = []string{"constant", "poisson", "voice", "video", "files", "web", "bulk"}
+	transportWords = []string{"reno", "newreno", "cubic"} // in the order of transport.Algorithm
+	arrivalWords   = []string{"none", "poisson", "regular"}
+	figureWords    = []string{
 		"delay-mean", "delay-p50", "delay-p95", "delay-p99", "delay-p99.9",
 		"pdv-p50", "pdv-p95", "pdv-p99", "pdv-p99.9", "ipdv-p99.9", "jitter", "loss", "out",
 	}

@@ -115,6 +115,7 @@ type rawTraffic struct {
 	GroupOfPictures *int        `mapstructure:"group-of-pictures"`
 	Size            *byteLaw    `mapstructure:"size"`
 	Pace            *nodes.Rate `mapstructure:"pace"`
+	Transport       string      `mapstructure:"transport"`
 	FlowsArrive     string      `mapstructure:"flows-arrive"`
 	Hold            *timeLaw    `mapstructure:"hold"`
 	Start           *des.Time   `mapstructure:"start"`

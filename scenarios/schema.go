@@ -4,6 +4,7 @@ import (
 	"ferrule/des"
 	"ferrule/des/random"
 	"ferrule/nodes"
+	"ferrule/workloads/transport"
 )
 
 // Pos is a place in a file. Line and Col count from 1; a Line of 0 means that
@@ -120,10 +121,11 @@ type Traffic struct {
 	Rate   nodes.Rate  // of one flow, IP bits; 0 if the model or the codec says it
 	Codec  string      // voice
 
-	Frames          float64     // video: frames per second
-	GroupOfPictures int         // video: frames from one whole picture to the next
-	Size            random.Spec // files: bytes of a file
-	Pace            nodes.Rate  // files: the rate at which one file is sent
+	Frames          float64             // video: frames per second
+	GroupOfPictures int                 // video: frames from one whole picture to the next
+	Size            random.Spec         // files, web: bytes of a file
+	Pace            nodes.Rate          // files: the rate at which one file is sent
+	Transport       transport.Algorithm // web, bulk
 
 	FlowsArrive FlowArrival // voice, video
 	Hold        random.Spec // voice, video: picoseconds a flow lasts; the zero Spec (constant 0) if it never ends

@@ -1,6 +1,7 @@
 package scenarios
 
 import (
+	"errors"
 	"slices"
 	"strconv"
 	"strings"
@@ -9,6 +10,7 @@ import (
 	"ferrule/des/random"
 	"ferrule/nodes"
 	"ferrule/workloads"
+	"ferrule/workloads/transport"
 )
 
 // modelKeys are the keys that each model uses, beside those of every model.
@@ -18,6 +20,8 @@ var modelKeys = [][]string{
 	ModelVoice:    {"codec", "flows-arrive", "hold"},
 	ModelVideo:    {"rate", "frames", "group-of-pictures", "flows-arrive", "hold"},
 	ModelFiles:    {"size", "pace"},
+	ModelWeb:      {"size", "transport"},
+	ModelBulk:     {"transport"},
 }
 
 // resolveTraffic reads the ways of sending.
@@ -43,7 +47,7 @@ func (r *resolver) resolveTraffic() {
 
 // modelUses finds keys that the model has no use for.
 func (r *resolver) modelUses(p *place, m Model) {
-	for _, key := range []string{"packet", "rate", "codec", "frames", "group-of-pictures", "size", "pace", "flows-arrive", "hold"} {
+	for _, key := range []string{"packet", "rate", "codec", "frames", "group-of-pictures", "size", "pace", "flows-arrive", "hold", "transport"} {
 		if q := p.field(key); q.given() && !slices.Contains(modelKeys[m], key) {
 			q.fault("the model uses "+strings.Join(modelKeys[m], ", "), "the model %s does not use it", m)
 		}
@@ -88,9 +92,38 @@ func (r *resolver) model(p *place, raw *rawTraffic, t *Traffic) {
 			_, err := workloads.FilesConfig{Common: sound, Size: t.Size}.Check()
 			lawFault(p.field("size"), err)
 		}
+	case ModelWeb:
+		need("size", "write for instance size: 80kB")
+		t.Size = random.Spec(value(raw.Size, byteLaw{}))
+		r.transportOf(p, raw, t)
+		if raw.Size != nil {
+			lawFault(p.field("size"), transferSize(t.Size))
+		}
+	case ModelBulk:
+		r.transportOf(p, raw, t)
 	default:
 		panic("scenarios: unknown model " + t.Model.String())
 	}
+}
+
+// transportOf reads which transport sends.
+func (r *resolver) transportOf(p *place, raw *rawTraffic, t *Traffic) {
+	t.Transport = transport.Algorithm(r.choice(p.field("transport"), raw.Transport, transportWords, int(transport.Cubic)))
+	r.unless(p, "transport", transportWords[transport.Cubic])
+}
+
+// transferSize is what is wrong with a law of the bytes of a transfer.
+func transferSize(s random.Spec) error {
+	law, err := s.Law()
+	switch {
+	case err != nil:
+		return err
+	case law.Mean() < 1:
+		return errors.New("a transfer holds a byte or more")
+	case law.Mean() > transport.Endless/10:
+		return errors.New("the mean of a transfer is 100 MB at most; bulk sends without end")
+	}
+	return nil
 }
 
 // packet reads the size of a packet; 0 is none.

@@ -62,6 +62,9 @@ func NewWith(sc *scenarios.Scenario, plan *scenarios.Plan, seed uint64, o Option
 	sources := newMaker(sc, seed)
 	for i := range sc.Aggregates {
 		for d := range nodes.Direction(2) {
+			if sources.closed(nodes.AggID(i)) {
+				continue
+			}
 			if d == nodes.Back && !sc.Aggregates[i].BothWays {
 				continue
 			}
@@ -73,6 +76,16 @@ func NewWith(sc *scenarios.Scenario, plan *scenarios.Plan, seed uint64, o Option
 			m.Asked[way] = s.MeanRate()
 			cfg.Sources = append(cfg.Sources, conditioned(&sc.Aggregates[i], packet.Source{Way: way, Source: s}))
 		}
+	}
+	for i := range sc.Aggregates {
+		if !sources.closed(nodes.AggID(i)) {
+			continue
+		}
+		ends, err := sources.endpoints(nodes.AggID(i), m.Asked)
+		if err != nil {
+			return nil, err
+		}
+		cfg.Endpoints = append(cfg.Endpoints, ends...)
 	}
 	if m.Network, err = packet.New(cfg); err != nil {
 		return nil, err

@@ -41,10 +41,11 @@ type maker struct {
 	sc    *scenarios.Scenario
 	seed  uint64
 	files []*workloads.Files // by traffic
+	wire  []float64          // by traffic: mean IP bytes of a transfer, headers included; 0: not yet known
 }
 
 func newMaker(sc *scenarios.Scenario, seed uint64) *maker {
-	return &maker{sc: sc, seed: seed, files: make([]*workloads.Files, len(sc.Traffic))}
+	return &maker{sc: sc, seed: seed, files: make([]*workloads.Files, len(sc.Traffic)), wire: make([]float64, len(sc.Traffic))}
 }
 
 // A constructor makes the source of one way from what the file says of it.

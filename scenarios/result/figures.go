@@ -32,6 +32,16 @@ const (
 	FigReordered  = "reordered"
 	FigOut        = "out"
 	FigRecovery   = "recovery"
+
+	// Of closed-loop transports.
+	FigTransfers    = "transfers"
+	FigTransferMean = "transfer-mean"
+	FigTransferP50  = "transfer-p50"
+	FigTransferP95  = "transfer-p95"
+	FigTransferP99  = "transfer-p99"
+	FigGoodput      = "goodput"
+	FigResent       = "resent"
+	FigTimeouts     = "time-outs"
 )
 
 // Units of figures.
@@ -73,7 +83,14 @@ func (o Outcome) Figures() []Value {
 	vs = appendValue(vs, FigJitter, UnitSeconds, o.JitterS)
 	vs = appendValue(vs, FigReordered, UnitRatio, o.ReorderedRatio)
 	vs = appendValue(vs, FigOut, UnitSeconds, o.OutageS)
-	return appendValue(vs, FigRecovery, UnitSeconds, o.RecoveryS)
+	vs = appendValue(vs, FigRecovery, UnitSeconds, o.RecoveryS)
+	if t := o.Transfers; t != nil {
+		vs = append(vs, Value{FigTransfers, UnitCount, float64(t.Complete)})
+		vs = appendDistribution(vs, "transfer", t.TimeS)
+		vs = appendValue(vs, FigGoodput, UnitBps, t.GoodputBps)
+		vs = append(vs, Value{FigResent, UnitPackets, float64(t.ResentCount)}, Value{FigTimeouts, UnitCount, float64(t.Timeouts)})
+	}
+	return vs
 }
 
 // Figure reports the figure with the given id; ok is false when it cannot be

@@ -177,8 +177,20 @@ type Outcome struct {
 	ReorderedRatio   *float64     `json:"reordered_ratio,omitempty"`       // RFC 4737
 	OutageS          *float64     `json:"outage_s,omitempty"`              // sending time from first lost to next delivered
 	RecoveryS        *float64     `json:"recovery_s,omitempty"`            // from the fault until the objective is met again
+	Transfers        *Transfers   `json:"transfers,omitempty"`             // of closed-loop transports; nil when there are none
 	WorstPair        string       `json:"worst_pair,omitempty"`            // of a class: the worst aggregate in this period
 	Objective        *Objective   `json:"objective,omitempty"`             // nil when the class has none
+}
+
+// Transfers is what closed-loop transports did. A transfer belongs to the
+// period it was asked for in; the rest to that in which it happened.
+type Transfers struct {
+	Asked       int64        `json:"asked"`                 // transfers begun
+	Complete    int64        `json:"complete"`              // by the end of the run
+	TimeS       Distribution `json:"time_s,omitzero"`       // of those complete: from the request to the last byte
+	GoodputBps  *float64     `json:"goodput_bps,omitempty"` // payload bits that arrived for the first time, per second of the period
+	ResentCount int64        `json:"resent_packets"`        // segments sent again
+	Timeouts    int64        `json:"time_outs"`             // retransmission timers that ran out
 }
 
 // An Objective says whether every limit held. Met is nil when that cannot be

@@ -189,6 +189,9 @@ func (g *gatherer) outcome(way uint16, k int) result.Outcome {
 	o := f.outcome()
 	o.Period = g.r.Periods[k].Name
 	o.OutageS = g.outage(way, s)
+	var t transfers
+	t.add(g.n.Flows(way), s)
+	o.Transfers = t.outcome(f.seconds)
 	return o
 }
 
@@ -249,18 +252,21 @@ func (g *gatherer) classes() {
 		for k, s := range g.periods {
 			f := fold{seconds: g.r.Periods[k].ToS - g.r.Periods[k].FromS}
 			var members []*result.Aggregate
+			var t transfers
 			for i, way := range g.ways {
 				if a, _ := nodes.AggOf(way); int(sc.Aggregates[a].Class) != c {
 					continue
 				}
 				members = append(members, &g.r.Aggregates[i])
 				f.lost(g.lossesOf(way, s), g.insideOf(way, s))
+				t.add(g.n.Flows(way), s)
 				if m := &meters[way]; s < len(m.Cells) && m.Cells[s] != nil {
 					f.add(m.Cells[s], m.Floor)
 				}
 			}
 			o := f.outcome()
 			o.Period = g.r.Periods[k].Name
+			o.Transfers = t.outcome(f.seconds)
 			g.tail(class.Name, o.Period, &f)
 			judgeClass(&o, members, k, sc.Classes[c].Objective)
 			class.Periods = append(class.Periods, o)

@@ -108,8 +108,10 @@ func packetSize(t *scenarios.Traffic) float64 {
 		}
 		frame := rate / 8 / frames
 		return frame / (frame/longestPacket + 0.5)
-	case scenarios.ModelFiles:
+	case scenarios.ModelFiles, scenarios.ModelWeb:
 		return filePacket(t.Size)
+	case scenarios.ModelBulk:
+		return longestPacket
 	default:
 		panic("study: unknown model " + t.Model.String())
 	}
