@@ -3,6 +3,7 @@ package scenarios
 import (
 	"strings"
 
+	"ferrule/des"
 	"ferrule/nodes"
 )
 
@@ -101,28 +102,74 @@ func moves(a, b *Act) bool {
 	return false
 }
 
+// agreeWork bounds how many ways and pairs of acts are compared, for the sake of
+// time: of acts beyond it contradictions are not noted.
+const agreeWork = 4 << 20
+
+// thing is what can be broken and mended.
+type thing struct {
+	fibre   nodes.FibreID // or None
+	part    Part
+	site    nodes.SiteID
+	circuit nodes.CircuitID
+}
+
+// things lists what an act breaks or mends.
+func (a *Act) things() (list []thing) {
+	switch {
+	case a.Verb == VerbCut || a.Verb == VerbRepair || a.Part == PartFibre:
+		for _, f := range a.Fibres {
+			list = append(list, thing{fibre: f})
+		}
+	case a.Verb == VerbFail || a.Verb == VerbMend:
+		if a.Part != PartNone && a.Site >= 0 {
+			list = append(list, thing{nodes.None, a.Part, a.Site, a.Circuit})
+		}
+	}
+	return list
+}
+
 // agree notes acts of one list that contradict each other at one instant, and
 // repairs before there is anything to repair.
 func (l *actList) agree(acts []Act, first int, raw []int) {
-	at := map[int64][]int{} // looked up only: acts by instant
-	for i := range acts {
-		if acts[i].After == nodes.None {
-			at[int64(acts[i].At)] = append(at[int64(acts[i].At)], i)
-		}
+	if l.kind == inPlace {
+		return
 	}
-	for i := first; i < len(acts); i++ {
-		b := &acts[i]
-		where := l.list.item(raw[i-first])
-		if b.After == nodes.None && l.kind != inPlace {
-			for _, j := range at[int64(b.At)] {
-				if j < i && contradict(&acts[j], b) {
-					where.fault("give one of them another instant", "%s %s and %s %s contradict each other at %s",
-						acts[j].Verb, acts[j].Subject, b.Verb, b.Subject, FormatTime(b.At))
-					break
+	at := map[des.Time][]int{}     // looked up only: acts by instant
+	broken := map[thing]des.Time{} // looked up only: since when, at first
+	for i := range acts {
+		a := &acts[i]
+		if a.After == nodes.None {
+			at[a.At] = append(at[a.At], i)
+		}
+		if a.Verb == VerbCut || a.Verb == VerbFail {
+			for _, x := range a.things() {
+				if since, ok := broken[x]; !ok || a.At < since {
+					broken[x] = a.At
 				}
 			}
 		}
-		l.begun(acts, i, where)
+	}
+	work := 0
+	for i := first; i < len(acts); i++ {
+		b := &acts[i]
+		where := l.list.item(raw[i-first])
+		if b.Verb == VerbRepair || b.Verb == VerbMend {
+			begun(b, broken, where)
+		}
+		if b.After != nodes.None {
+			continue
+		}
+		for _, j := range at[b.At] {
+			if work += 1 + len(acts[j].Moved) + len(b.Moved); j >= i || work > agreeWork {
+				break
+			}
+			if contradict(&acts[j], b) {
+				where.fault("give one of them another instant", "%s %s and %s %s contradict each other at %s",
+					acts[j].Verb, acts[j].Subject, b.Verb, b.Subject, FormatTime(b.At))
+				break
+			}
+		}
 	}
 }
 
@@ -146,30 +193,22 @@ func contradict(a, b *Act) bool {
 }
 
 // begun notes a repair or a mending that nothing before it calls for.
-func (l *actList) begun(acts []Act, i int, where *place) {
-	b := &acts[i]
-	if b.Verb != VerbRepair && b.Verb != VerbMend || b.Part == PartFibre && b.Fibres == nil || b.Verb == VerbRepair && b.Fibres == nil {
-		return // noted already
-	}
-	later := -1
-	for j := range acts {
-		a := &acts[j]
-		begins := a.Verb == VerbCut && len(b.Fibres) > 0 && meet(a, b)
-		for _, s := range spans[:2] {
-			begins = begins || a.Verb == s.begins && b.Verb == s.ends && s.same(a, b)
-		}
-		begins = begins || a.Verb == VerbFail && a.Part == PartFibre && meet(a, b)
-		if !begins {
-			continue
-		}
-		if a.At <= b.At { // at one instant: noted by agree
+func begun(b *Act, broken map[thing]des.Time, where *place) {
+	later := des.Never
+	for _, x := range b.things() {
+		since, ok := broken[x]
+		if ok && since <= b.At { // at one instant: noted by agree
 			return
 		}
-		later = j
+		if ok {
+			later = min(later, since)
+		}
 	}
-	if later >= 0 {
-		where.fault("write a later instant", "%s %s at %s comes before what it is for, at %s", b.Verb, b.Subject, FormatTime(b.At), FormatTime(acts[later].At))
-		return
+	switch {
+	case len(b.things()) == 0: // noted already
+	case later != des.Never:
+		where.fault("write a later instant", "%s %s at %s comes before what it is for, at %s", b.Verb, b.Subject, FormatTime(b.At), FormatTime(later))
+	default:
+		where.fault("cut or fail it first, or leave this out", "nothing before calls for %s %s", b.Verb, b.Subject)
 	}
-	where.fault("cut or fail it first, or leave this out", "nothing before calls for %s %s", b.Verb, b.Subject)
 }

@@ -6,8 +6,15 @@
 // its site and the sending ends of the circuits that end there. A command may
 // arrive twice: it is then carried out once and answered twice.
 //
-// Every duration is an integer of picoseconds; the only floating-point number
-// is the draw of a cross-connect's latency, rounded to a whole picosecond.
+// A circuit whose light is lost is restored in order of importance, if need be
+// at the cost of circuits of lower holding priority, or with fewer slots; one
+// with 1+1 recovery changes over without the controller, which only keeps its
+// state; one whose router or port has failed waits. A site can be drained, the
+// steps of a plan be taken back, and a circuit under a policy follows its load.
+//
+// Every duration is an integer of picoseconds. Floating-point numbers are the
+// draw of a cross-connect's latency, rounded to a whole picosecond, and the
+// smoothed readings of policies, pinned against fused operations.
 // Nothing here ranges over a map, starts a goroutine or reads a clock.
 package central
 

@@ -200,7 +200,7 @@ func (c *Controller) gatherEnds() {
 }
 
 // tryAgain seeks routes for all circuits that wait for one, after something has
-// become free.
+// become free, and lets those that have shrunk grow again if all of it is there.
 func (c *Controller) tryAgain() {
 	var again []nodes.CircuitID
 	for i := range c.circuits {
@@ -211,4 +211,12 @@ func (c *Controller) tryAgain() {
 	}
 	c.byImportance(again)
 	c.restore(again, nil)
+	for i := range c.circuits {
+		k := &c.circuits[i]
+		more := int64(k.slots - k.held.slots)
+		short := func(f nodes.FibreID) bool { return c.free[f] < more }
+		if carries(k.state) && k.task == nodes.None && k.held.channels == nil && more > 0 && len(again) == 0 && !slices.ContainsFunc(k.held.routes(), short) {
+			c.begin(task{kind: taskResize, circuit: nodes.CircuitID(i), step: nodes.None, slots: k.slots, rate: k.whole}, rankOrder)
+		}
+	}
 }

@@ -140,6 +140,13 @@ func TestRestorePushesOut(t *testing.T) {
 		t.Errorf("shrunk: %+v, port at %d", r, f.sites[2].rates[2])
 	}
 	f.sound(t)
+	// When there is room again it has all its slots.
+	f.light(ms(1000), 0, false)
+	f.run(ms(3000))
+	if r := f.report(2); r.State != controller.Up || r.Slots != 3 || r.Rate != p.Circuits[2].Rate || f.sites[3].rates[2] != r.Rate {
+		t.Errorf("with room again: %+v", r)
+	}
+	f.sound(t)
 	f.log(t)
 }
 

@@ -27,12 +27,14 @@ func newStep(o *controller.Order) step {
 	return step{order: o, asked: des.Never, begun: des.Never, done: des.Never, undoes: -1}
 }
 
-// ordered takes in an order. Those known in advance come with their number.
+// ordered takes in an order. Those known in advance come with their number;
+// the number of one given while the network runs says something else.
 func (c *Controller) ordered(m *nodes.Message) {
+	o := m.Ref.(*controller.Order)
 	i := int(m.N) - 1
-	if i < 0 {
+	if i < 0 || i >= len(c.k.orders) || &c.k.orders[i] != o {
 		i = len(c.steps)
-		c.steps = append(c.steps, newStep(m.Ref.(*controller.Order)))
+		c.steps = append(c.steps, newStep(o))
 	}
 	c.steps[i].asked = c.now
 	c.changed = true

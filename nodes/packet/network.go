@@ -2,6 +2,10 @@
 // latency, ports with their queues, pipes of packets in flight, and the meters
 // that judge what arrives.
 //
+// Trails that are cut, routers, ports and sites that fail, and the two trails of
+// 1+1 circuits with the tail that selects between them are physical: what is
+// lost to them does not depend on what anybody knows.
+//
 // A Network is a des.Model. Its sites are touched only by their own events
 // while a window runs; pipes and messages change hands at the window's edge.
 package packet
