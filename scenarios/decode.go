@@ -19,7 +19,7 @@ import (
 
 // read has viper read the file and lay the options over it, and decodes the
 // outcome into raw. What cannot be decoded is noted and left out.
-func (t *tree) read(data []byte, changed []string, raw *rawScenario) {
+func (t *tree) read(data []byte, changed []string, raw any) {
 	// Names may hold dots, so keys are split at a character that no name has.
 	v := viper.NewWithOptions(viper.KeyDelimiter("\x1f"))
 	v.SetConfigType("yaml")

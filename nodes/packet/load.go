@@ -61,6 +61,19 @@ func (n *Network) Loads(from, to des.Time) []PortLoad {
 	return out
 }
 
+// Sent reports what every port has sent since the start of the run, by site and
+// circuit.
+func (n *Network) Sent() []PortLoad {
+	var out []PortLoad
+	for _, s := range n.sites {
+		for i := range s.ports {
+			q := &s.ports[i]
+			out = append(out, PortLoad{Circuit: q.circuit, From: s.id, IPBytes: slices.Clone(q.load)})
+		}
+	}
+	return out
+}
+
 // sentBy is what the port had sent at the act at the given instant.
 func (q *port) sentBy(at des.Time) []uint64 {
 	for i := range q.loads {

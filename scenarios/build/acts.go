@@ -14,7 +14,8 @@ import (
 // Step is an act of the timeline or of the plan, for the report.
 type Step struct {
 	Act   *scenarios.Act
-	Order int // index among the controller's orders, or -1
+	Order int    // index among the orders that the controller knew in advance, or -1
+	Live  string // the name of an order given while the model ran; empty for all others
 }
 
 // acts turns the timeline and the steps of the plan into acts from outside and

@@ -144,7 +144,14 @@ func (g *gatherer) steps() {
 	_, reports := g.m.Control.Reports()
 	for _, s := range g.m.Steps {
 		x := result.Step{Act: s.Act.Verb.String(), Subject: build.Describe(s.Act), State: controller.Done.String()}
-		if s.Order < 0 {
+		if s.Live != "" {
+			x.State = controller.Waiting.String()
+			for i := range reports {
+				if reports[i].Name == s.Live {
+					stand(&x, &reports[i])
+				}
+			}
+		} else if s.Order < 0 {
 			if at := s.Act.At; at < g.end {
 				t := at.Seconds()
 				x.OrderedS, x.DoneS = &t, &t
