@@ -44,6 +44,7 @@ type Message struct {
 	Ref     any   // immutable, or nil
 	Epoch   int32 // set by the sender's site: state of the management ways
 	Remote  bool  // set by the sender's site: came over the management ways
+	Over    bool  // set by the sender's site: came over Circuit instead, of incarnation Epoch
 }
 
 // Trail is one incarnation of a circuit's route in one direction, as a sender

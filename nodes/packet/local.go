@@ -16,7 +16,7 @@ func (x *local) Later(m nodes.Message) {
 	if m.At < x.now {
 		panic("packet: Later in the past")
 	}
-	m.From, m.To, m.Sent, m.Remote = x.id, x.id, x.now, false
+	m.From, m.To, m.Sent, m.Remote, m.Over = x.id, x.id, x.now, false, false
 	x.serial++
 	m.Serial = x.serial
 	(*Site)(x).book(m)
@@ -30,7 +30,7 @@ func (x *local) Send(to nodes.SiteID, m nodes.Message) {
 		return
 	}
 	n := x.net
-	m.From, m.To, m.Sent, m.Remote = x.id, to, x.now, true
+	m.From, m.To, m.Sent, m.Remote, m.Over = x.id, to, x.now, true, false
 	m.Epoch = n.ways.Epoch(x.now)
 	x.serial++
 	m.Serial = x.serial

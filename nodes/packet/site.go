@@ -204,6 +204,12 @@ func (s *Site) control(now des.Time) {
 func (s *Site) handle(now des.Time, m nodes.Message) {
 	n := s.net
 	switch {
+	case m.Over:
+		if !s.passed(&m) || s.deadRouter > 0 || n.dropped(m) {
+			s.messages.Lost++
+			return
+		}
+		s.messages.Arrived++
 	case m.Remote:
 		if !n.ways.Passes(n.light, m.Epoch, m.From, s.id, m.Sent) || n.dropped(m) {
 			s.messages.Lost++
