@@ -38,6 +38,13 @@ const (
 	defaultRetry    = 200 * des.Millisecond
 	defaultPoll     = des.Second
 	defaultAttempts = 3
+
+	// Timers of routers that route among themselves; common practice, no source.
+	defaultHello       = des.Second
+	defaultAdjacencyUp = 200 * des.Millisecond
+	defaultFlood       = des.Millisecond
+	defaultInstall     = 50 * des.Millisecond
+
 	defaultBuffer   = 50 * des.Millisecond
 	defaultFrames   = 25
 	defaultPictures = 12
@@ -204,4 +211,21 @@ func (r *resolver) resolveController() {
 	c.Poll = span("poll", raw.Poll, des.Millisecond, defaultPoll)
 	c.Attempts = within(p.field("attempts"), raw.Attempts, 1, 100, defaultAttempts, plain)
 	r.unless(p, "attempts", plain(defaultAttempts))
+	c.Routing = Routing(r.choice(p.field("routing"), raw.Routing, routingWords, int(RoutingCentral)))
+	for _, t := range []struct {
+		key string
+		raw *des.Time
+		to  *des.Time
+		or  des.Time
+	}{
+		{"hello", raw.Hello, &c.Hello, defaultHello}, {"adjacency-up", raw.AdjacencyUp, &c.AdjacencyUp, defaultAdjacencyUp},
+		{"flood", raw.Flood, &c.Flood, defaultFlood}, {"install", raw.Install, &c.Install, defaultInstall},
+	} {
+		switch {
+		case c.Routing == RoutingDistributed:
+			*t.to = span(t.key, t.raw, des.Microsecond, t.or)
+		case p.field(t.key).given():
+			p.field(t.key).fault("write routing: distributed beside it", "the controller alone routes, and has no use for it")
+		}
+	}
 }

@@ -141,6 +141,7 @@ var (
 	commandWords   = []string{"by-kind", "parallel", "sequence"}
 	rampWords      = []string{"standard", "none"}
 	reportWords    = []string{"fibre", "circuit"}
+	routingWords   = []string{"central", "distributed"}
 	sizeWords      = []string{"slots", "container", "channel"}
 	framingWords   = []string{"gfp", "none"}
 	orderWords     = []string{"free", "kept"}
@@ -170,6 +171,9 @@ func (c CommandOrder) String() string { return word(commandWords, uint8(c)) }
 
 // String returns the word of the file.
 func (r Ramp) String() string { return word(rampWords, uint8(r)) }
+
+// String returns the word of the file.
+func (r Routing) String() string { return word(routingWords, uint8(r)) }
 
 // String returns the word of the file.
 func (r Report) String() string { return word(reportWords, uint8(r)) }

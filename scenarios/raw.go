@@ -212,6 +212,12 @@ type rawController struct {
 	Retry    *des.Time `mapstructure:"retry"`
 	Poll     *des.Time `mapstructure:"poll"`
 	Attempts *int      `mapstructure:"attempts"`
+
+	Routing     string    `mapstructure:"routing"`
+	Hello       *des.Time `mapstructure:"hello"`
+	AdjacencyUp *des.Time `mapstructure:"adjacency-up"`
+	Flood       *des.Time `mapstructure:"flood"`
+	Install     *des.Time `mapstructure:"install"`
 }
 
 type rawPlan struct {

@@ -248,7 +248,22 @@ type Controller struct {
 	Retry    des.Time // until a command without an answer is sent again
 	Poll     des.Time // between two readings of the ports
 	Attempts int      // at most, for one command or one set-up; at least 1
+
+	Routing     Routing  // of what is not moved
+	Hello       des.Time // RoutingDistributed: between two hellos on a circuit
+	AdjacencyUp des.Time // likewise: from hearing each other to using the circuit
+	Flood       des.Time // likewise: to take in one advertisement and pass it on
+	Install     des.Time // likewise: of a table in the forwarding hardware
 }
+
+// Routing says who finds the ways of what is not moved.
+type Routing uint8
+
+// Kinds of routing.
+const (
+	RoutingCentral     Routing = iota // the controller
+	RoutingDistributed                // the routers among themselves
+)
 
 // Act is something done to the network or to the traffic. Which fields hold
 // depends on Verb; the others are zero.

@@ -1,6 +1,10 @@
 package central
 
-import "ferrule/nodes"
+import (
+	"slices"
+
+	"ferrule/nodes"
+)
 
 // Carried names the circuits that carry a way in the controller's picture, in
 // the order its packets pass them: the chain it was moved onto, or the routed
@@ -68,3 +72,7 @@ func (n *Net) SlotsOnFibres() []int64 {
 	}
 	return most
 }
+
+// Tables lists the tables that each site should have in the controller's
+// picture, by site; the caller must not change them.
+func (n *Net) Tables() []*nodes.Table { return slices.Clone(n.ctl.tables) }

@@ -5,6 +5,7 @@ import (
 
 	"ferrule/controller"
 	"ferrule/controller/central"
+	"ferrule/controller/distributed"
 	"ferrule/des"
 	"ferrule/nodes"
 	"ferrule/nodes/conditioner"
@@ -20,6 +21,7 @@ type Model struct {
 	Plant    *nodes.Plant
 	Network  *packet.Network
 	Control  *central.Net
+	Routing  *distributed.Net // nil: the controller routes
 	Steps    []Step
 	Asked    []float64 // by way: the load its source means to send, bit/s of IP bytes
 	Seed     uint64
@@ -114,6 +116,12 @@ func (m *Model) control() error {
 		return err
 	}
 	m.Steps = steps
+	for _, s := range steps {
+		if s.Act.Verb == scenarios.VerbDrain && sc.Controller.Routing == scenarios.RoutingDistributed {
+			return fmt.Errorf("%s:%d: drain %s: the routers route among themselves, and a controller cannot drain one; write routing: central",
+				s.Act.Pos.File, s.Act.Pos.Line, s.Act.Subject)
+		}
+	}
 	command, err := sc.Timing.Command.Law()
 	if err != nil {
 		return fmt.Errorf("command: %w", err)
@@ -135,6 +143,12 @@ func (m *Model) control() error {
 	}
 	m.Control = central.New(m.Plant, cfg, orders)
 	m.Network.SetAgents(m.Control.Agents)
+	if sc.Controller.Routing == scenarios.RoutingDistributed {
+		m.Routing = distributed.New(m.Plant, distributed.Config{
+			Hello: sc.Controller.Hello, AdjacencyUp: sc.Controller.AdjacencyUp, Flood: sc.Controller.Flood, Install: sc.Controller.Install,
+		}, m.Control.Agents)
+		m.Network.SetAgents(m.Routing.Agents)
+	}
 	locals := make([]nodes.Local, len(m.Plant.Sites))
 	for i := range locals {
 		locals[i] = m.Network.Local(nodes.SiteID(i))
@@ -144,8 +158,15 @@ func (m *Model) control() error {
 		agg, d := nodes.AggOf(c.Way)
 		moves = append(moves, controller.Order{Kind: controller.Move, Name: WayName(&sc.Aggregates[agg], d), Ways: []uint16{c.Way}, Circuits: c.Chain})
 	}
-	if err := m.Control.Start(locals, moves); err != nil {
+	through := locals
+	if m.Routing != nil {
+		through = m.Routing.Locals(locals)
+	}
+	if err := m.Control.Start(through, moves); err != nil {
 		return fmt.Errorf("%s: plan %s: %w", sc.File, m.Plan.Name, err)
+	}
+	if m.Routing != nil {
+		m.Routing.Start(locals)
 	}
 	m.Network.Begin()
 	for _, a := range outside {
@@ -199,6 +220,10 @@ func (m *Model) Clone() *Model {
 	c := *m
 	c.Network, c.Control = m.Network.Clone(), m.Control.Clone()
 	c.Network.SetAgents(c.Control.Agents)
+	if m.Routing != nil {
+		c.Routing = m.Routing.Clone(c.Control.Agents)
+		c.Network.SetAgents(c.Routing.Agents)
+	}
 	return &c
 }
 

@@ -78,7 +78,14 @@ func bytesOf(t testing.TB, r *result.Run) []byte {
 // gives the bytes of a run of its own that has the cut in its timeline; and
 // neither the copying nor what a copy does changes the original.
 func TestTrialIsARunOfItsOwn(t *testing.T) {
-	sc := load(t, allSorts)
+	t.Run("central", func(t *testing.T) { trialIsARun(t, allSorts) })
+	t.Run("distributed", func(t *testing.T) {
+		trialIsARun(t, strings.Replace(allSorts, "compute: 1ms", "compute: 1ms, routing: distributed, hello: 50ms", 1))
+	})
+}
+
+func trialIsARun(t *testing.T, text string) {
+	sc := load(t, text)
 	w, err := Sweep{Plans: []string{"express"}, Kinds: []string{FailFibre, FailRouter}, Before: 100 * des.Millisecond, After: 600 * des.Millisecond}.withDefaults(sc, Options{})
 	if err != nil {
 		t.Fatal(err)

@@ -1,8 +1,10 @@
 package study
 
 import (
+	"cmp"
 	"fmt"
 	"slices"
+	"strings"
 
 	"ferrule/controller"
 	"ferrule/des"
@@ -198,6 +200,26 @@ func (g *gatherer) events() {
 			detail = where + detail
 		}
 		g.r.Events = append(g.r.Events, result.Event{AtS: e.At.Seconds(), What: e.What, Subject: e.Subject, Detail: detail})
+	}
+	g.loops()
+}
+
+// loops adds the loops that routers made among themselves to the events.
+func (g *gatherer) loops() {
+	if g.m.Routing == nil {
+		return
+	}
+	all := g.m.Routing.Loops()
+	for _, l := range all {
+		detail := strings.Join(g.siteNames(l.Sites), ", ")
+		if l.To < des.Never {
+			detail += fmt.Sprintf(", for %.3g ms", 1e3*(l.To-l.From).Seconds())
+		}
+		g.r.Events = append(g.r.Events, result.Event{AtS: l.From.Seconds(), What: "loop", Subject: "to " + g.m.Plant.Sites[l.Target].Name, Detail: detail})
+	}
+	slices.SortStableFunc(g.r.Events, func(a, b result.Event) int { return cmp.Compare(a.AtS, b.AtS) })
+	if len(all) > 0 {
+		g.r.Cautions = append(g.r.Cautions, fmt.Sprintf("The routers sent packets round in %d loops before they agreed; the events name them.", len(all)))
 	}
 }
 
