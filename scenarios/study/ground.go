@@ -37,14 +37,7 @@ type line struct {
 // newGround places the circuits that stand at the start, those whose route is
 // given first, as the controller does.
 func newGround(sc *scenarios.Scenario, plan *scenarios.Plan) (*ground, error) {
-	p := *plan // what a run cannot do yet, a check can
-	p.Circuits = slices.Clone(plan.Circuits)
-	for i := range p.Circuits {
-		if p.Circuits[i].Recovery == nodes.RecoveryOnePlus {
-			p.Circuits[i].Recovery = nodes.RecoveryNone
-		}
-	}
-	plant, err := build.Plant(sc, &p)
+	plant, err := build.Plant(sc, plan)
 	if err != nil {
 		return nil, err
 	}
