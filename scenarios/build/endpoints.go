@@ -13,11 +13,8 @@ import (
 // closed reports whether an aggregate is a closed loop: hosts at its ends
 // rather than sources.
 func (m *maker) closed(id nodes.AggID) bool {
-	switch m.sc.Traffic[m.sc.Aggregates[id].Traffic].Model {
-	case scenarios.ModelWeb, scenarios.ModelBulk:
-		return true
-	}
-	return false
+	model := m.sc.Traffic[m.sc.Aggregates[id].Traffic].Model
+	return model == scenarios.ModelWeb || model == scenarios.ModelBulk
 }
 
 // Segments as hosts cut transfers into them, in bytes.

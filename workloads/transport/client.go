@@ -79,6 +79,8 @@ func (h *Host) lapsed(c *client, now des.Time) {
 		h.confirm(c, now)
 	case stateMoving:
 		h.acknowledge(c, now, 0)
+	default:
+		panic("transport: a timer of a client that waits for nothing")
 	}
 }
 

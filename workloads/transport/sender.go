@@ -153,6 +153,8 @@ func (h *Host) advanced(s *sender, now des.Time, n int) {
 		s.grow(h.serve.Algorithm, now, s.smooth, n, 1)
 	case phaseOpen:
 		s.grow(h.serve.Algorithm, now, s.smooth, n, 2)
+	default:
+		panic("transport: unknown phase")
 	}
 	s.cwnd = min(s.cwnd, Window)
 }
