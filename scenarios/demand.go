@@ -36,6 +36,7 @@ func (r *resolver) resolveAggregates() {
 		}
 		a.Traffic = r.trafficOf(p, raw.Traffic, a.Class)
 		r.load(p, raw, &a)
+		r.replayed(p, &a)
 		r.interval(p, a.Start, a.Stop)
 		r.overlap(p, &a)
 		r.condition(p, raw, &a)
@@ -137,6 +138,7 @@ func (r *resolver) load(p *place, raw *rawAggregate, a *Aggregate) {
 		} else if t.Rate > 0 && int64(t.Rate) > int64(maxRate)/int64(a.Flows) {
 			flows.fault("write fewer", "%d flows of %s pass %s", a.Flows, FormatRate(t.Rate), FormatRate(maxRate))
 		}
+	case a.Traffic >= 0 && r.s.Traffic[a.Traffic].Model == ModelReplay: // as the file has it
 	default:
 		r.missing(p, "load", "write load: and a rate, or flows: and a number")
 	}
@@ -293,6 +295,10 @@ func (r *resolver) matrixRow(c *csv.Reader, name string, row []string, scale flo
 	}
 	if a.Traffic >= 0 && r.s.Traffic[a.Traffic].Model == ModelBulk {
 		bad(2, "the traffic of the class has no rate: it sends without end", "write the aggregate in the scenario, with flows: and a number")
+		return
+	}
+	if field, msg, hint := r.speeds(&a); msg != "" {
+		bad(map[string]int{"class": 2, "load": 3}[field], msg, hint)
 		return
 	}
 	r.aggregates.ids[a.Name] = len(r.aggregates.names)

@@ -18,8 +18,9 @@ import (
 
 // Load reads a scenario from data; name stands for it in messages. Options in
 // sets, each of the form path=value, are laid over the file before it is
-// checked. Demand matrices are read through files, which may be nil if the
-// scenario names none. When anything is wrong the error is of type Problems
+// checked. Demand matrices and captures are read through files, which may be
+// nil if the scenario names none; a large capture stays open as long as the
+// scenario is in use. When anything is wrong the error is of type Problems
 // and lists every fault; the Scenario is then nil.
 //
 // Load is safe on any input: a file above 8 MB, deeper than 24 levels, or made
@@ -55,7 +56,8 @@ func Load(name string, data []byte, files fs.FS, sets []string) (*Scenario, erro
 
 // Hash names a scenario by what it was made of: the SHA-256 sum, in
 // hexadecimal, over the file, the options laid over it and the matrices it
-// reads, each with its length before it.
+// reads, each with its length before it. A file that is replayed stands among
+// the matrices with the SHA-256 sum of what is in it.
 func Hash(data []byte, sets []string, matrices [][]byte) string {
 	h := sha256.New()
 	part := func(b []byte) {
@@ -106,6 +108,7 @@ func (r *resolver) resolve() {
 	r.builtIn()
 	r.resolveTraffic()
 	r.resolveClasses()
+	r.resolveReplays()
 	r.resolveSites()
 	r.resolveFibres()
 	r.resolveCircuits()

@@ -17,6 +17,10 @@ const (
 	ModelFiles                 // files that arrive at random and are sent at a pace
 	ModelWeb                   // files that are asked for at random and sent by a transport
 	ModelBulk                  // transfers without end, sent by a transport
+	ModelOnOff                 // flows that send and fall silent for times with heavy tails
+	ModelMMPP                  // packets of a Markov-modulated Poisson process
+	ModelPages                 // web pages that arrive at random and are sent at a pace
+	ModelReplay                // packets as a file has them
 )
 
 // FlowArrival is how flows start.
@@ -130,8 +134,10 @@ const (
 )
 
 var (
-	modelWords     = []string{"constant", "poisson", "voice", "video", "files", "web", "bulk"}
-	transportWords = []string{"reno", "newreno", "cubic"} // in the order of transport.Algorithm
+	modelWords     = []string{"constant", "poisson", "voice", "video", "files", "web", "bulk", "onoff", "mmpp", "pages", "replay"}
+	formatWords    = []string{"auto", "pcap", "pcapng", "packets", "flows"} // as replay.Format
+	wayWords       = []string{"both", "out", "back"}                        // as replay.Ways
+	transportWords = []string{"reno", "newreno", "cubic"}                   // in the order of transport.Algorithm
 	arrivalWords   = []string{"none", "poisson", "regular"}
 	figureWords    = []string{
 		"delay-mean", "delay-p50", "delay-p95", "delay-p99", "delay-p99.9",

@@ -118,8 +118,33 @@ type rawTraffic struct {
 	Transport       string      `mapstructure:"transport"`
 	FlowsArrive     string      `mapstructure:"flows-arrive"`
 	Hold            *timeLaw    `mapstructure:"hold"`
+	Talkspurts      *bool       `mapstructure:"talkspurts"`
+	Spurt           *des.Time   `mapstructure:"spurt"`
+	Silence         *des.Time   `mapstructure:"silence"`
+	Hurst           *ratio      `mapstructure:"hurst"`
+	Peak            *nodes.Rate `mapstructure:"peak"`
+	OnFor           *des.Time   `mapstructure:"on-for"`
+	OffFor          *des.Time   `mapstructure:"off-for"`
+	Low             *ratio      `mapstructure:"low"`
+	HighFor         *des.Time   `mapstructure:"high-for"`
+	LowFor          *des.Time   `mapstructure:"low-for"`
+	Parse           *des.Time   `mapstructure:"parse"`
+	File            string      `mapstructure:"file"`
+	Format          string      `mapstructure:"format"`
+	Loop            *bool       `mapstructure:"loop"`
+	TimeScale       *percent    `mapstructure:"time-scale"`
+	Assign          []rawAssign `mapstructure:"assign"`
 	Start           *des.Time   `mapstructure:"start"`
 	Stop            *des.Time   `mapstructure:"stop"`
+}
+
+// rawAssign is a rule that gives packets of a file to a class.
+type rawAssign struct {
+	DSCP  *codePoint `mapstructure:"dscp"`
+	From  string     `mapstructure:"from"`
+	To    string     `mapstructure:"to"`
+	Class string     `mapstructure:"class"`
+	Way   string     `mapstructure:"way"`
 }
 
 type rawSite struct {

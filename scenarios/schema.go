@@ -4,6 +4,7 @@ import (
 	"ferrule/des"
 	"ferrule/des/random"
 	"ferrule/nodes"
+	"ferrule/workloads/replay"
 	"ferrule/workloads/transport"
 )
 
@@ -43,6 +44,9 @@ type Scenario struct {
 
 	// Matrices lists the files of demand that were read, in order.
 	Matrices []string
+
+	// Captures lists the files that are replayed, in order.
+	Captures []string
 }
 
 // Run says how long a run is and with which seed.
@@ -117,15 +121,32 @@ type Traffic struct {
 	Name   string
 	Pos    Pos
 	Model  Model
-	Packet random.Spec // constant, poisson: bytes of a packet at the IP layer
+	Packet random.Spec // constant, poisson, onoff, mmpp: bytes of a packet at the IP layer
 	Rate   nodes.Rate  // of one flow, IP bits; 0 if the model or the codec says it
 	Codec  string      // voice
 
 	Frames          float64             // video: frames per second
 	GroupOfPictures int                 // video: frames from one whole picture to the next
 	Size            random.Spec         // files, web: bytes of a file
-	Pace            nodes.Rate          // files: the rate at which one file is sent
+	Pace            nodes.Rate          // files, pages: the rate at which one of them is sent
 	Transport       transport.Algorithm // web, bulk
+	Parse           des.Time            // pages: mean time between a page and the objects in it
+
+	Talkspurts bool     // voice: nothing is sent while a speaker listens
+	Spurt      des.Time // voice with talkspurts: mean
+	Silence    des.Time // voice with talkspurts: mean
+
+	Hurst   float64    // onoff
+	Peak    nodes.Rate // onoff: of one flow while it sends
+	OnFor   des.Time   // onoff: mean time a flow sends
+	OffFor  des.Time   // onoff: least mean silence
+	Low     float64    // mmpp: rate of the low state over that of the high one
+	HighFor des.Time   // mmpp: mean time in the high state
+	LowFor  des.Time   // mmpp: mean time in the low state
+
+	Trace     *replay.Trace // replay; nil for every other model
+	TimeScale float64       // replay: distances in time over those of the file
+	Loop      bool          // replay: the file begins again at its end
 
 	FlowsArrive FlowArrival // voice, video
 	Hold        random.Spec // voice, video: picoseconds a flow lasts; the zero Spec (constant 0) if it never ends
@@ -202,6 +223,7 @@ type Aggregate struct {
 	Class    nodes.ClassID
 	Traffic  int        // index in Scenario.Traffic
 	Load     nodes.Rate // each way, IP bits; 0 if Flows is given
+	Speed    [2]float64 // by direction: times as fast as the file; 0 unless the traffic is a replay
 	Flows    int        // each way; 0 if Load is given
 	Start    des.Time
 	Stop     des.Time // des.Never if it goes on to the end

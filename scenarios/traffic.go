@@ -2,6 +2,7 @@ package scenarios
 
 import (
 	"errors"
+	"reflect"
 	"slices"
 	"strconv"
 	"strings"
@@ -17,9 +18,13 @@ import (
 var modelKeys = [][]string{
 	ModelConstant: {"packet", "rate"},
 	ModelPoisson:  {"packet", "rate"},
-	ModelVoice:    {"codec", "flows-arrive", "hold"},
+	ModelVoice:    {"codec", "flows-arrive", "hold", "talkspurts", "spurt", "silence"},
 	ModelVideo:    {"rate", "frames", "group-of-pictures", "flows-arrive", "hold"},
 	ModelFiles:    {"size", "pace"},
+	ModelOnOff:    {"packet", "hurst", "peak", "on-for", "off-for"},
+	ModelMMPP:     {"packet", "low", "high-for", "low-for"},
+	ModelPages:    {"pace", "parse"},
+	ModelReplay:   {"file", "format", "loop", "time-scale", "assign"},
 	ModelWeb:      {"size", "transport"},
 	ModelBulk:     {"transport"},
 }
@@ -47,7 +52,10 @@ func (r *resolver) resolveTraffic() {
 
 // modelUses finds keys that the model has no use for.
 func (r *resolver) modelUses(p *place, m Model) {
-	for _, key := range []string{"packet", "rate", "codec", "frames", "group-of-pictures", "size", "pace", "flows-arrive", "hold", "transport"} {
+	for _, key := range tagsOf(reflect.TypeFor[rawTraffic]()) {
+		if slices.Contains([]string{"name", "model", "start", "stop"}, key) { // of every model
+			continue
+		}
 		if q := p.field(key); q.given() && !slices.Contains(modelKeys[m], key) {
 			q.fault("the model uses "+strings.Join(modelKeys[m], ", "), "the model %s does not use it", m)
 		}
@@ -73,6 +81,7 @@ func (r *resolver) model(p *place, raw *rawTraffic, t *Traffic) {
 		r.flows(p, raw, t)
 		t.Codec = codecs[r.choice(p.field("codec"), raw.Codec, codecs, 0)]
 		r.unless(p, "codec", defaultCodec)
+		r.talk(p, raw, t)
 	case ModelVideo:
 		r.flows(p, raw, t)
 		need("rate", "write the mean rate of one flow, such as 8Mbps")
@@ -101,6 +110,15 @@ func (r *resolver) model(p *place, raw *rawTraffic, t *Traffic) {
 		}
 	case ModelBulk:
 		r.transportOf(p, raw, t)
+	case ModelOnOff:
+		r.onOff(p, raw, t)
+	case ModelMMPP:
+		need("packet", "write for instance packet: 1000B")
+		r.mmpp(p, raw, t)
+	case ModelPages:
+		r.pages(p, raw, t)
+	case ModelReplay: // read with the classes: see resolveReplays
+		need("file", "write the name of a capture or a table beside the scenario")
 	default:
 		panic("scenarios: unknown model " + t.Model.String())
 	}

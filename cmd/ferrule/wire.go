@@ -2,6 +2,7 @@ package main
 
 import (
 	"context"
+	"slices"
 
 	"ferrule/scenarios"
 	"ferrule/scenarios/library"
@@ -47,7 +48,7 @@ type loaded struct{ sc *scenarios.Scenario }
 
 func (l loaded) Seed() uint64       { return l.sc.Run.Seed }
 func (l loaded) Hash() string       { return l.sc.Hash }
-func (l loaded) Matrices() []string { return l.sc.Matrices }
+func (l loaded) Matrices() []string { return slices.Concat(l.sc.Matrices, l.sc.Captures) }
 
 func (l loaded) Plans() []string {
 	names := make([]string, len(l.sc.Plans))

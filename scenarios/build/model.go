@@ -12,6 +12,7 @@ import (
 	"ferrule/nodes/packet"
 	"ferrule/scenarios"
 	"ferrule/workloads"
+	"ferrule/workloads/replay"
 )
 
 // Model is one replication, ready to run.
@@ -25,6 +26,19 @@ type Model struct {
 	Steps    []Step
 	Asked    []float64 // by way: the load its source means to send, bit/s of IP bytes
 	Seed     uint64
+
+	replays []*replay.Source
+}
+
+// Err reports why traffic that is replayed has ended before its time: its file
+// was changed or could not be read any more. It is nil if nothing went wrong.
+func (m *Model) Err() error {
+	for _, s := range m.replays {
+		if err := s.Err(); err != nil {
+			return err
+		}
+	}
+	return nil
 }
 
 // Options change how a run is carried out and never what comes of it. The zero
@@ -76,6 +90,9 @@ func NewWith(sc *scenarios.Scenario, plan *scenarios.Plan, seed uint64, o Option
 			}
 			way := nodes.WayOf(nodes.AggID(i), d)
 			m.Asked[way] = s.MeanRate()
+			if again, ok := s.(*replay.Source); ok {
+				m.replays = append(m.replays, again)
+			}
 			cfg.Sources = append(cfg.Sources, conditioned(&sc.Aggregates[i], packet.Source{Way: way, Source: s}))
 		}
 	}

@@ -9,6 +9,7 @@ import (
 	"ferrule/nodes"
 	"ferrule/scenarios"
 	"ferrule/workloads"
+	"ferrule/workloads/replay"
 )
 
 func psTime(ps float64) des.Time { return des.Time(math.Round(ps)) }
@@ -68,6 +69,20 @@ var constructors = [...]constructor{
 		}
 		return f, err
 	},
+	scenarios.ModelOnOff: func(m *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+		return workloads.NewOnOff(workloads.OnOffConfig{
+			Common: c, Hurst: t.Hurst, Peak: t.Peak, Packet: nodes.Bytes(t.Packet.Mean), On: t.OnFor, Off: t.OffFor,
+		})
+	},
+	scenarios.ModelMMPP: func(m *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+		return workloads.NewMMPP(workloads.MMPPConfig{
+			Common: c, Size: t.Packet, Flows: streamFlows(a, t), Low: t.Low, HighFor: t.HighFor, LowFor: t.LowFor,
+		})
+	},
+	scenarios.ModelPages: func(m *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+		return workloads.NewPages(workloads.PagesConfig{Common: c, Pace: t.Pace, Parse: t.Parse})
+	},
+	scenarios.ModelReplay: again,
 }
 
 // Flows of a stream whose number the file does not say.
@@ -107,7 +122,18 @@ func flowPattern(f scenarios.FlowArrival) workloads.Pattern {
 // callInterval is from packet to packet of a call (RFC 3551, section 4.5).
 const callInterval = 20 * des.Millisecond
 
+// again replays what a file has of the class of an aggregate.
+func again(_ *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+	_, d := nodes.AggOf(c.Way)
+	return replay.NewSource(replay.Config{
+		Trace: t.Trace, Class: a.Class, Dir: d, Way: c.Way, Start: c.Start, Stop: c.Stop, Speed: a.Speed[d], Loop: t.Loop,
+	})
+}
+
 func voice(_ *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+	if t.Talkspurts {
+		return talk(c, a, t)
+	}
 	v := workloads.VoiceConfig{Common: c, Codec: workloads.G711}
 	if t.Codec == "G.729" {
 		v.Codec = workloads.G729
@@ -125,6 +151,18 @@ func voice(_ *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Tr
 		}
 	}
 	return workloads.NewVoice(v)
+}
+
+// talk makes calls with talkspurts.
+func talk(c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {
+	v := workloads.TalkConfig{Common: c, Codec: workloads.G711, Interval: callInterval, Calls: a.Flows, Spurt: t.Spurt, Silence: t.Silence}
+	if t.Codec == "G.729" {
+		v.Codec = workloads.G729
+	}
+	if a.Flows > 0 {
+		v.Load = 0
+	}
+	return workloads.NewTalk(v)
 }
 
 func video(_ *maker, c workloads.Common, a *scenarios.Aggregate, t *scenarios.Traffic) (workloads.Source, error) {

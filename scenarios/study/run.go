@@ -70,6 +70,9 @@ func runOnce(ctx context.Context, sc *scenarios.Scenario, o Options) (*result.Ru
 		exec = e
 	}
 	at := advance(ctx, m, m.Kernel(exec), o.Progress)
+	if err := m.Err(); err != nil {
+		return nil, fmt.Errorf("run of %s: %w", sc.Name, err)
+	}
 	partial := ctx.Err() != nil
 	r := gather(m, partial)
 	log.Info("run ends", zap.Float64("sim_s", at.Seconds()), zap.Int64("packets", r.Audit.OfferedPackets), zap.Bool("audit", r.Audit.OK), zap.Bool("partial", partial))

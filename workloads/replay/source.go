@@ -48,7 +48,7 @@ func (c Config) Check() (Config, error) {
 		return c, errors.Join(append(faults, errNoPackets)...)
 	}
 	if load := c.Trace.Load(c.Class, c.Dir) * c.Speed; load > float64(workloads.MaxLoad) {
-		faults = append(faults, fmt.Errorf("speed: %v makes %.3g bit/s, which is above 4 Pbit/s", c.Speed, load))
+		faults = append(faults, fmt.Errorf("speed: %v makes %.3g bit/s, which is above 4 Tbit/s", c.Speed, load))
 	}
 	return c, errors.Join(faults...)
 }

@@ -307,3 +307,22 @@ func (t *Trace) Period() des.Time {
 func (t *Trace) Load(c nodes.ClassID, d nodes.Direction) float64 {
 	return float64(t.Share(c, d).Bytes) * 8 / t.Period().Seconds()
 }
+
+// Held reports whether the file is held in memory, so that it can be closed.
+func (t *Trace) Held() bool { return t.held != nil || t.flows != nil }
+
+// MeanSize returns the mean size of the packets that have a class, in IP bytes;
+// 0 if there are none.
+func (t *Trace) MeanSize() float64 {
+	var sum Share
+	for _, both := range t.counts.shares {
+		for _, s := range both {
+			sum.Packets += s.Packets
+			sum.Bytes += s.Bytes
+		}
+	}
+	if sum.Packets == 0 {
+		return 0
+	}
+	return float64(sum.Bytes) / float64(sum.Packets)
+}
