@@ -11,6 +11,7 @@ import (
 	"ferrule/des/random"
 	"ferrule/nodes"
 	"ferrule/nodes/packet"
+	"ferrule/workloads"
 	"ferrule/workloads/transport"
 )
 
@@ -149,25 +150,60 @@ func TestLoopAllocatesNothing(t *testing.T) {
 }
 
 // BenchmarkHop is a packet-hop of a closed loop: endless transfers that share a
-// line of 10 Gb/s.
+// line of 10 Gb/s, beside an open loop of as many packets a second over it.
 func BenchmarkHop(b *testing.B) {
-	for _, flows := range []int{10, 1000, 50_000} {
+	for _, flows := range []int{0, 10, 1000, 50_000, 100_000} {
 		b.Run(fmt.Sprint(flows), func(b *testing.B) {
 			l := line{rate: 10 * nodes.Gbps, delay: 5 * des.Millisecond, length: des.Hour, class: nodes.Class{BufferTime: 20 * des.Millisecond, Queue: nodes.QueueFIFO}}
-			l.pairs = []transport.Config{{Name: "x", Standing: flows, Algorithm: transport.Cubic}}
-			n, _ := l.build(b)
+			for i := range max(1, flows/50_000) {
+				l.pairs = append(l.pairs, transport.Config{Name: fmt.Sprint("x", i), Standing: min(flows, 50_000), Algorithm: transport.Cubic})
+			}
+			var n *packet.Network
+			if flows == 0 {
+				n = l.open(b)
+			} else {
+				n, _ = l.build(b)
+			}
 			k := des.NewKernel(n, nil)
-			k.Advance(des.Second/2, nil)
-			before, _ := n.Audit()
 			at := des.Second / 2
-			hops := uint64(0)
+			k.Advance(at, nil)
+			before, _ := n.Audit()
 			for b.Loop() {
 				at += 10 * des.Millisecond
 				k.Advance(at, nil)
 			}
 			after, _ := n.Audit()
-			hops = after.Hops - before.Hops
-			b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(hops), "ns/hop")
+			b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(after.Hops-before.Hops), "ns/hop")
+			var m runtime.MemStats
+			runtime.GC()
+			runtime.ReadMemStats(&m)
+			b.ReportMetric(float64(m.HeapAlloc)/(1<<20), "MiB")
+			runtime.KeepAlive(n)
 		})
 	}
+}
+
+// open is the line with Poisson packets of 1500 B that load it to 0.9 one way,
+// and half as many of 40 B the other way.
+func (l line) open(b *testing.B) *packet.Network {
+	b.Helper()
+	cfg := packet.Config{Plant: l.plant(), Length: l.length, JoinBelow: -1}
+	for d, size := range []int{1500, 40} {
+		way := nodes.WayOf(0, nodes.Direction(d))
+		pps := 0.9 * float64(l.rate) / 8 / 1500 / float64(1+d)
+		s, err := workloads.NewStream(workloads.StreamConfig{
+			Common: workloads.Common{Name: fmt.Sprint(way), Way: way, Load: nodes.Rate(pps * 8 * float64(size))},
+			Gaps:   workloads.Poisson, Size: random.Spec{Kind: random.Constant, Mean: float64(size)}, Flows: 1000,
+		})
+		if err != nil {
+			b.Fatal(err)
+		}
+		cfg.Sources = append(cfg.Sources, packet.Source{Way: way, Source: s})
+	}
+	n, err := packet.New(cfg)
+	if err != nil {
+		b.Fatal(err)
+	}
+	start(n)
+	return n
 }
