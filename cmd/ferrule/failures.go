@@ -70,6 +70,7 @@ func newFailures(env Env) *cobra.Command {
 	}
 	c.flags(cmd)
 	c.seedFlag(cmd, "first seed; the others follow it")
+	c.resumeFlag(cmd)
 	f := cmd.Flags()
 	f.StringArrayVar(&s.plans, "plan", nil, "try failures under this plan only; may be repeated (default all)")
 	f.IntVar(&s.seeds, "seeds", 3, "number of seeds, the same under every plan")

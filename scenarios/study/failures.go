@@ -268,6 +268,9 @@ func breaks(v scenarios.Verb) bool {
 // year an aggregate that is cut off stays so until the repair, any other loses
 // its outage; failures are taken one at a time, and reversion as harmless.
 //
+// With a store in o, each trial is kept in it as it ends, and none that it holds
+// is made again.
+//
 // When ctx ends first, the result holds the failures that were tried with at
 // least one seed and is marked partial; it is nil when there is none. The error
 // is then that of ctx. Any other error is that of a run, and the result is nil.

@@ -306,6 +306,44 @@ func TestFailuresInterrupted(t *testing.T) {
 	}
 }
 
+// A sweep that was interrupted goes on from its store, repeats nothing and
+// gives the bytes of one that was not; another load is another sweep.
+func TestFailuresResumed(t *testing.T) {
+	sc := load(t, threeTowns)
+	w := Sweep{Seeds: []uint64{1, 2}, After: 300 * des.Millisecond}
+	want, err := result.Encode(sweep(t, sc, Options{}, w))
+	if err != nil {
+		t.Fatal(err)
+	}
+	store := &shelf{kept: map[string][]byte{}}
+	ctx, stop := context.WithCancel(context.Background())
+	defer stop()
+	o := Options{Cores: 1, Store: store, Progress: func(done, total float64) {
+		if done/total > 0.4 {
+			stop()
+		}
+	}}
+	if _, err := Failures(ctx, sc, o, w); !errors.Is(err, context.Canceled) {
+		t.Fatal(err)
+	}
+	before := store.saves
+	got, err := result.Encode(sweep(t, sc, Options{Store: store}, w))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if before == 0 || before == 20 || store.saves != 20 { // two plans, two seeds, four failures and nothing
+		t.Errorf("%d trials saved before the interruption, %d in all, want 20", before, store.saves)
+	}
+	if !bytes.Equal(got, want) {
+		t.Errorf("resumed and in one go differ:\n%s", firstDifference(got, want))
+	}
+	w.Scale = 0.5
+	sweep(t, sc, Options{Store: store}, w)
+	if store.saves != 40 {
+		t.Errorf("%d trials saved after a sweep at another load, want 40", store.saves)
+	}
+}
+
 // What waits for what is left out is left out too.
 func TestWithoutFaults(t *testing.T) {
 	none := nodes.None

@@ -20,6 +20,7 @@ type fleet struct {
 	at     des.Time // of the failures
 	groups []group  // all plans of a seed before the next seed
 	bar    *tracker
+	store  Store // nil: none
 
 	mu      sync.Mutex
 	changed *sync.Cond
@@ -47,12 +48,16 @@ func newFleet(sc *scenarios.Scenario, w *Sweep, list []breakage, at des.Time, o 
 		}
 	}
 	f.bar = newTracker(len(f.groups), o.Progress)
+	f.store = o.Store
 	return f
 }
 
 // run carries everything out on so many cores. The error is the first that a
 // worker met, or that of ctx.
 func (f *fleet) run(ctx context.Context, cores int) error {
+	if err := f.recall(); err != nil {
+		return err
+	}
 	inner, stop := context.WithCancel(ctx)
 	defer stop()
 	var wg sync.WaitGroup
@@ -93,13 +98,16 @@ func (f *fleet) work(ctx context.Context) error {
 // pick is the next trial of a prefix that stands, or -1 for a prefix to make.
 func (f *fleet) pick() (*group, int) {
 	for i := range f.groups {
-		if g := &f.groups[i]; g.model != nil && g.next < len(f.list) {
+		g := &f.groups[i]
+		for g.model != nil && g.next < len(f.list) {
 			g.next++
-			return g, g.next - 1
+			if g.trials[g.next-1] == nil {
+				return g, g.next - 1
+			}
 		}
 	}
 	for i := range f.groups {
-		if g := &f.groups[i]; !g.begun {
+		if g := &f.groups[i]; !g.begun && g.open > 0 {
 			g.begun = true
 			return g, -1
 		}
@@ -142,8 +150,13 @@ func (f *fleet) trial(ctx context.Context, g *group, i int) {
 	m := g.model
 	f.mu.Unlock()
 	t, err := trialOf(ctx, m.Clone(), &f.list[i], f.at)
+	if err == nil {
+		err = f.keep(g, i, t)
+	}
 	f.mu.Lock()
-	g.trials[i] = t
+	if err == nil {
+		g.trials[i] = t
+	}
 	if g.open--; g.open == 0 {
 		g.model = nil
 	}

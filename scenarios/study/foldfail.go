@@ -38,11 +38,11 @@ func (f *fleet) fold() *result.Failures {
 				continue
 			}
 			for _, t := range trials {
-				r.Head, r.Defaults = t.head, t.defaults
+				r.Head, r.Defaults = t.Head, t.Defaults
 				r.Runs++
-				addAudit(&r.Audit, t.audit, fmt.Sprintf("plan %s, %s %s: ", out.Plan, f.list[i].kind, f.list[i].name))
-				r.Audit.OK = r.Audit.OK && t.audit.OK
-				for _, s := range t.waiting {
+				addAudit(&r.Audit, t.Audit, fmt.Sprintf("plan %s, %s %s: ", out.Plan, f.list[i].kind, f.list[i].name))
+				r.Audit.OK = r.Audit.OK && t.Audit.OK
+				for _, s := range t.Waiting {
 					if s = out.Plan + ": " + s; !slices.Contains(waiting, s) {
 						waiting = append(waiting, s)
 					}
@@ -144,27 +144,27 @@ func (x *folding) failure(i int, trials []*trial) result.Failure {
 	}
 	use, settled := 0.0, 0
 	for _, t := range trials {
-		for _, c := range t.unrestored {
+		for _, c := range t.Unrestored {
 			if !slices.Contains(r.Unrestored, c) {
 				r.Unrestored = append(r.Unrestored, c)
 			}
 		}
-		if t.use == nil {
+		if t.Use == nil {
 			r.Unsettled++
 			continue
 		}
 		if settled == 0 {
-			r.WorstPort = t.port
+			r.WorstPort = t.Port
 		}
-		use += *t.use
+		use += *t.Use
 		settled++
 	}
 	if settled > 0 {
 		r.WorstUse = new(use / float64(settled))
 	}
-	for w := range trials[0].ways {
-		if slices.ContainsFunc(trials, func(t *trial) bool { return t.ways[w].cutOff }) {
-			r.CutOff = append(r.CutOff, trials[0].ways[w].name)
+	for w := range trials[0].Ways {
+		if slices.ContainsFunc(trials, func(t *trial) bool { return t.Ways[w].CutOff }) {
+			r.CutOff = append(r.CutOff, trials[0].Ways[w].Name)
 		}
 	}
 	for c := range x.sc.Classes {
@@ -179,21 +179,21 @@ func (x *folding) failure(i int, trials []*trial) result.Failure {
 func hurtOf(class string, trials, nothing []*trial, self bool) result.Hurt {
 	h := result.Hurt{Class: class}
 	var outages []float64
-	for w := range trials[0].ways {
-		if trials[0].ways[w].class != class {
+	for w := range trials[0].Ways {
+		if trials[0].Ways[w].Class != class {
 			continue
 		}
 		var hit, cutOff, missed bool
 		for _, t := range trials {
-			a := &t.ways[w]
-			h.LostPackets += float64(a.lost)
-			hit, cutOff, missed = hit || a.hit, cutOff || a.cutOff, missed || a.missed && (self || !missedWith(nothing, t.seed, w))
-			if !a.hit {
+			a := &t.Ways[w]
+			h.LostPackets += float64(a.Lost)
+			hit, cutOff, missed = hit || a.Hit, cutOff || a.CutOff, missed || a.Missed && (self || !missedWith(nothing, t.Seed, w))
+			if !a.Hit {
 				continue
 			}
-			outages = append(outages, a.outage)
-			if h.OutageWorstS == nil || a.outage > *h.OutageWorstS {
-				h.OutageWorstS, h.WorstPair = new(a.outage), a.name
+			outages = append(outages, a.Outage)
+			if h.OutageWorstS == nil || a.Outage > *h.OutageWorstS {
+				h.OutageWorstS, h.WorstPair = new(a.Outage), a.Name
 			}
 		}
 		h.Hit += one(hit)
@@ -210,7 +210,7 @@ func hurtOf(class string, trials, nothing []*trial, self bool) result.Hurt {
 
 // missedWith reports whether way w missed its objective with the given seed.
 func missedWith(trials []*trial, seed uint64, w int) bool {
-	return slices.ContainsFunc(trials, func(t *trial) bool { return t.seed == seed && t.ways[w].missed })
+	return slices.ContainsFunc(trials, func(t *trial) bool { return t.Seed == seed && t.Ways[w].Missed })
 }
 
 func one(b bool) int64 {
@@ -246,17 +246,17 @@ func (x *folding) year(out *result.FailuresPlan) {
 		}
 		if first == nil {
 			first = trials[0]
-			lost, weight = make([]float64, len(first.ways)), first.asked
+			lost, weight = make([]float64, len(first.Ways)), first.Asked
 		}
 		rated = rated || rate > 0
 		for w := range lost {
 			sum := 0.0
 			for _, t := range trials {
-				switch a := &t.ways[w]; {
-				case a.cutOff:
+				switch a := &t.Ways[w]; {
+				case a.CutOff:
 					sum += repair
-				case a.hit:
-					sum += a.outage
+				case a.Hit:
+					sum += a.Outage
 				}
 			}
 			lost[w] += float64(rate * sum / float64(len(trials)))
@@ -266,14 +266,14 @@ func (x *folding) year(out *result.FailuresPlan) {
 		y := result.YearOfClass{Class: x.sc.Classes[c].Name}
 		x.hurtMost(out, c, &y)
 		total, weights := 0.0, 0.0
-		for w := range first.ways {
-			if first.ways[w].class != y.Class {
+		for w := range first.Ways {
+			if first.Ways[w].Class != y.Class {
 				continue
 			}
 			total += float64(weight[w] * lost[w])
 			weights += weight[w]
 			if rated && (y.WorstLost == nil || lost[w] > *y.WorstLost) {
-				y.WorstLost, y.WorstPair = new(lost[w]), first.ways[w].name
+				y.WorstLost, y.WorstPair = new(lost[w]), first.Ways[w].Name
 			}
 		}
 		if rated && weights > 0 {
@@ -282,9 +282,9 @@ func (x *folding) year(out *result.FailuresPlan) {
 		}
 		out.Classes = append(out.Classes, y)
 	}
-	for w := range first.ways {
+	for w := range first.Ways {
 		if rated {
-			out.Each = append(out.Each, result.YearOfTraffic{Aggregate: first.ways[w].name, Class: first.ways[w].class,
+			out.Each = append(out.Each, result.YearOfTraffic{Aggregate: first.Ways[w].Name, Class: first.Ways[w].Class,
 				Lost: lost[w], Availability: 1 - lost[w]/secondsPerYear})
 		}
 	}

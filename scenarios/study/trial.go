@@ -10,28 +10,29 @@ import (
 	"ferrule/scenarios/result"
 )
 
-// A trial is what one failure did under one plan with one seed.
+// A trial is what one failure did under one plan with one seed. Its fields are
+// exported so that it can be stored.
 type trial struct {
-	head       result.Head
-	seed       uint64
-	defaults   []result.Default
-	asked      []float64 // by way in the order of aggregates: the load asked for
-	ways       []wayTrial
-	unrestored []string
-	use        *float64 // the busiest port in after, nil when nothing settled
-	port       string
-	waiting    []string // steps of the plan that were not done before the failure
-	audit      result.Audit
+	Head       result.Head
+	Seed       uint64
+	Defaults   []result.Default
+	Asked      []float64 // by way in the order of aggregates: the load asked for
+	Ways       []wayTrial
+	Unrestored []string
+	Use        *float64 // the busiest port in after, nil when nothing settled
+	Port       string
+	Waiting    []string // steps of the plan that were not done before the failure
+	Audit      result.Audit
 }
 
 // A wayTrial is what a failure did to one way of an aggregate.
 type wayTrial struct {
-	name, class string
-	lost        int64   // from the failure on
-	hit         bool    // it lost packets to the failure
-	outage      float64 // seconds
-	cutOff      bool    // nothing of it arrived after the last one lost
-	missed      bool    // its objective, once all had settled
+	Name, Class string
+	Lost        int64   // from the failure on
+	Hit         bool    // it lost packets to the failure
+	Outage      float64 // seconds
+	CutOff      bool    // nothing of it arrived after the last one lost
+	Missed      bool    // its objective, once all had settled
 }
 
 // newTrial reads a model that has run to its end; the failure came at the
@@ -46,21 +47,21 @@ func newTrial(m *build.Model, at des.Time) *trial {
 	g.steps()
 	g.audit()
 	g.defaults()
-	t := &trial{head: g.r.Head, seed: m.Seed, defaults: g.r.Defaults, audit: g.r.Audit}
+	t := &trial{Head: g.r.Head, Seed: m.Seed, Defaults: g.r.Defaults, Audit: g.r.Audit}
 	for i, way := range g.ways {
-		t.asked = append(t.asked, m.Asked[way])
-		t.ways = append(t.ways, g.wayTrial(&g.r.Aggregates[i], way, at))
+		t.Asked = append(t.Asked, m.Asked[way])
+		t.Ways = append(t.Ways, g.wayTrial(&g.r.Aggregates[i], way, at))
 	}
 	reports, _ := m.Control.Reports()
 	for i := range reports {
 		if s := reports[i].State; s == controller.Down || s == controller.Restoring {
-			t.unrestored = append(t.unrestored, m.Plant.Circuits[reports[i].Circuit].Name)
+			t.Unrestored = append(t.Unrestored, m.Plant.Circuits[reports[i].Circuit].Name)
 		}
 	}
-	t.use, t.port = g.busiest()
+	t.Use, t.Port = g.busiest()
 	for i := range g.r.Steps {
 		if s := &g.r.Steps[i]; s.State != controller.Done.String() {
-			t.waiting = append(t.waiting, s.Act+" "+s.Subject)
+			t.Waiting = append(t.Waiting, s.Act+" "+s.Subject)
 		}
 	}
 	return t
@@ -68,31 +69,31 @@ func newTrial(m *build.Model, at des.Time) *trial {
 
 // wayTrial reads one way; the failure came at the instant at.
 func (g *gatherer) wayTrial(a *result.Aggregate, way uint16, at des.Time) wayTrial {
-	w := wayTrial{name: a.Name, class: a.Class}
+	w := wayTrial{Name: a.Name, Class: a.Class}
 	settled := g.end - packet.SettleTime
 	for k := range a.Periods {
 		o, p := &a.Periods[k], &g.r.Periods[k]
 		if p.FromS < at.Seconds() {
 			continue
 		}
-		w.lost += o.LostPackets.Total()
+		w.Lost += o.LostPackets.Total()
 		if o.OutageS != nil {
-			w.outage = max(w.outage, *o.OutageS)
+			w.Outage = max(w.Outage, *o.OutageS)
 		}
 		if k == len(a.Periods)-1 && quietKind(p.Kind) {
 			settled = g.n.Stretches()[g.periods[k]].From
-			w.missed = o.Objective != nil && o.Objective.Met != nil && !*o.Objective.Met
+			w.Missed = o.Objective != nil && o.Objective.Met != nil && !*o.Objective.Met
 		}
 	}
 	for _, f := range g.faults[way] {
-		w.hit = true
+		w.Hit = true
 		if g.n.Meters()[way].Last() > f.Last {
 			continue
 		}
 		// Nothing has arrived since. It may have sent nothing since.
-		w.cutOff = f.Last >= settled || g.m.Control.Carried(way) == nil
-		if !w.cutOff {
-			w.outage = (f.Last - f.First).Seconds()
+		w.CutOff = f.Last >= settled || g.m.Control.Carried(way) == nil
+		if !w.CutOff {
+			w.Outage = (f.Last - f.First).Seconds()
 		}
 	}
 	return w
