@@ -149,6 +149,28 @@ func TestLoopAllocatesNothing(t *testing.T) {
 	}
 }
 
+// State is bounded by the flows that there are: over a line that many endless
+// transfers crowd, memory does not go on growing.
+func TestStateIsBounded(t *testing.T) {
+	l := line{rate: 200 * nodes.Mbps, delay: 5 * des.Millisecond, length: des.Hour, class: nodes.Class{BufferTime: 20 * des.Millisecond, Queue: nodes.QueueFIFO}}
+	l.pairs = append(l.pairs, transport.Config{Name: "x", Standing: 2000, Algorithm: transport.Cubic})
+	n, _ := l.build(t)
+	k := des.NewKernel(n, nil)
+	var used [2]uint64
+	for i, s := range []des.Time{20, 80} {
+		k.Advance(s*des.Second, nil)
+		var m runtime.MemStats
+		runtime.GC()
+		runtime.ReadMemStats(&m)
+		used[i] = m.HeapAlloc
+	}
+	runtime.KeepAlive(n)
+	t.Logf("%d B a flow after 20 s, %d B after 80 s", used[0]/2000, used[1]/2000)
+	if used[1] > used[0]*3/2 || used[1]/2000 > 6000 {
+		t.Errorf("%d B a flow after 20 s, %d B after 80 s", used[0]/2000, used[1]/2000)
+	}
+}
+
 // BenchmarkHop is a packet-hop of a closed loop: endless transfers that share a
 // line of 10 Gb/s, beside an open loop of as many packets a second over it.
 func BenchmarkHop(b *testing.B) {

@@ -137,6 +137,9 @@ func (h *Host) acked(s *sender, now des.Time, next, beyond uint32, echo bool) {
 // advanced answers n segments acknowledged in order.
 func (h *Host) advanced(s *sender, now des.Time, n int) {
 	over := int32(s.una-s.recover) >= 0
+	if over && s.phase != phaseOpen && len(s.marks) > leastRing && int(s.nxt-s.una) < len(s.marks)/8 {
+		h.resize(s, len(s.marks)/4) // a segment lost twice has made it long
+	}
 	switch s.phase {
 	case phaseRecovery:
 		if h.serve.Algorithm == Reno {
@@ -290,7 +293,7 @@ func (h *Host) rearm(s *sender, now des.Time) {
 // segment sends one.
 func (h *Host) segment(s *sender, now des.Time, no uint32, again bool) {
 	if !again && s.nxt-s.una == uint32(len(s.marks)) {
-		h.widen(s)
+		h.resize(s, 2*len(s.marks))
 	}
 	size := uint16(header + segment)
 	last := no == s.total-1
@@ -313,11 +316,11 @@ func (h *Host) segment(s *sender, now des.Time, no uint32, again bool) {
 	h.send(now, uint16(s.id>>1), size, bits, dataWord(s.gen, tell, last, no))
 }
 
-// widen doubles the ring of marks.
-func (h *Host) widen(s *sender) {
-	marks := h.rings.get(2 * len(s.marks))
+// resize gives the marks another ring.
+func (h *Host) resize(s *sender, n int) {
+	marks := h.rings.get(n)
 	for no := s.una; no != s.nxt; no++ {
-		marks[no&uint32(len(marks)-1)] = *s.mark(no)
+		marks[no&uint32(n-1)] = *s.mark(no)
 	}
 	h.rings.put(s.marks)
 	s.marks = marks
