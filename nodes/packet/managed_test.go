@@ -117,3 +117,53 @@ func TestShaperRefuses(t *testing.T) {
 		t.Errorf("%d delivered, %d policed; want 550 or so", d, totals.Lost[packet.LostPoliced])
 	}
 }
+
+// A flow that keeps to a token bucket of 15,000 B and 50 Mb/s and has half of
+// three lines of 100 Mb/s by WFQ is never late: (sigma + (K-1) L)/g plus the
+// sum of Lmax/r, light apart (A. K. Parekh and R. G. Gallager, IEEE/ACM
+// Transactions on Networking 2(2), 1994; statement from memory). The other
+// class overloads every line.
+func TestFairQueueingKeepsItsBound(t *testing.T) {
+	const hops, size, burst = 3, 1000, 15
+	p := plantOf(hops+1, [3]des.Time{0, 1, des.Millisecond}, [3]des.Time{1, 2, des.Millisecond}, [3]des.Time{2, 3, des.Millisecond})
+	p.Classes = []nodes.Class{
+		{Name: "kept", Queue: nodes.QueueFair, Weight: 50, BufferBytes: 1 << 20},
+		{Name: "cross", Queue: nodes.QueueFair, Weight: 50, BufferBytes: 60_000},
+	}
+	cfg := packet.Config{Plant: p, Length: 300 * des.Millisecond}
+	for i := range p.Circuits {
+		p.Circuits[i].Rate, p.Circuits[i].Overhead = 100*nodes.Mbps, 0
+		w := between(p, 1, nodes.SiteID(i), nodes.SiteID(i+1))
+		cfg.Sources = append(cfg.Sources, packet.Source{Way: w, Source: &beat{way: w, gap: 100 * des.Microsecond, size: 1500, count: 2900}})
+	}
+	kept := between(p, 0, 0, hops)
+	shaper := conditioner.NewShaper(50*nodes.Mbps, (burst-1)*size, des.Second) // the first packet goes beside it
+	cfg.Sources = append(cfg.Sources, packet.Source{Way: kept, Source: &gust{beat{way: kept, size: size}, shaper}})
+	n := net(cfg, 0)
+	finish(t, n)
+	count, _, most := exact(n, kept)
+	bound := (50 * nodes.Mbps).TxTime((burst+hops-1)*size) + hops*(100*nodes.Mbps).TxTime(1500) + hops*des.Millisecond
+	if count < 1500 || most > bound || most < bound/2 {
+		t.Errorf("%d delivered, the last after %v; want none after %v, nor all long before", count, most, bound)
+	}
+}
+
+// gust sends as much as a token bucket allows: the burst at once, then at the
+// rate.
+type gust struct {
+	beat
+	s *conditioner.Shaper
+}
+
+func (g *gust) Next() des.Time { return g.at }
+
+func (g *gust) Emit(end des.Time, buf []nodes.Packet) []nodes.Packet {
+	for g.at < end {
+		buf = append(buf, nodes.Packet{Born: g.at, Due: g.at, Seq: g.seq, Way: g.way, Size: g.size, TTL: nodes.InitialTTL})
+		g.seq++
+		g.at, _ = g.s.Release(g.at, nodes.Bytes(g.size))
+	}
+	return buf
+}
+
+func (g *gust) Clone() nodes.Source { return &gust{g.beat, g.s.Clone()} }
