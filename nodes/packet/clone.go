@@ -55,6 +55,17 @@ func (n *Network) Clone() *Network {
 	return &c
 }
 
+// SourceOf returns the source of a way, nil when it has none or is a loop of
+// hosts. After Clone it is the clone's own.
+func (n *Network) SourceOf(way uint16) nodes.Source {
+	a, d := nodes.AggOf(way)
+	s := n.sites[n.plant.Aggregates[a].Origin(d)]
+	if i := s.sourceOf(way); i >= 0 {
+		return s.sources[i].s
+	}
+	return nil
+}
+
 func (s *Site) clone(n *Network, pipes map[*pipe]*pipe) *Site {
 	c := *s
 	c.net = n

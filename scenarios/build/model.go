@@ -236,6 +236,12 @@ func (d demand) Clone() central.Demand { return demand{d.Requests.Clone()} }
 func (m *Model) Clone() *Model {
 	c := *m
 	c.Network, c.Control = m.Network.Clone(), m.Control.Clone()
+	c.replays = nil
+	for way := 0; m.replays != nil && way < len(m.Asked); way++ {
+		if s, ok := c.Network.SourceOf(uint16(way)).(*replay.Source); ok {
+			c.replays = append(c.replays, s)
+		}
+	}
 	c.Network.SetAgents(c.Control.Agents)
 	if m.Routing != nil {
 		c.Routing = m.Routing.Clone(c.Control.Agents)

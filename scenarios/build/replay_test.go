@@ -150,6 +150,14 @@ func TestFileFails(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
+	copied := m.Clone()
+	copied.Network.Run(copied.Kernel(des.Serial{}), nil)
+	if err := copied.Err(); err == nil || err.Error() != "table.csv: cannot be read: the disk is gone" {
+		t.Errorf("a copy: %v", err)
+	}
+	if err := m.Err(); err != nil {
+		t.Errorf("the original, of which only a copy has run: %v", err)
+	}
 	m.Network.Run(m.Kernel(des.Serial{}), func() bool { return false })
 	if err := m.Err(); err == nil || err.Error() != "table.csv: cannot be read: the disk is gone" {
 		t.Errorf("%v", err)

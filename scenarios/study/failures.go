@@ -311,5 +311,8 @@ func trialOf(ctx context.Context, m *build.Model, fail *breakage, at des.Time) (
 	if ctx.Err() != nil {
 		return nil, ctx.Err()
 	}
+	if err := m.Err(); err != nil {
+		return nil, err
+	}
 	return newTrial(m, at), nil
 }

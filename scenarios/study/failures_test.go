@@ -27,13 +27,18 @@ defaults:
 classes:
   - { name: voice, queue: strict, buffer: 5ms, traffic: calls }
   - { name: video, queue: weight 60%, buffer: 20ms, traffic: stream }
-  - { name: web,   queue: weight 40%, buffer: 50ms, traffic: pages }
+  - { name: web,   queue: weight 40%, buffer: 50ms, traffic: pages, drop: codel }
 traffic:
   - { name: beats,  model: constant, packet: 200B }
   - { name: chance, model: poisson, packet: 500B }
   - { name: calls,  model: voice, codec: G.711, flows-arrive: poisson, hold: { exponential: { mean: 300ms } } }
   - { name: stream, model: video, rate: 8Mbps, frames: 25/s }
   - { name: pages,  model: files, size: { pareto: { mean: 80kB, shape: 1.5, at-most: 5MB } }, pace: 20Mbps }
+  - { name: reader, model: pages, pace: 5Mbps, parse: 50ms }
+  - { name: bursts, model: onoff, hurst: 0.8, peak: 10Mbps, on-for: 20ms, off-for: 40ms }
+  - { name: states, model: mmpp, packet: 500B, high-for: 10ms, low-for: 10ms }
+  - { name: loops,  model: web, size: { pareto: { mean: 80kB, shape: 1.5, at-most: 1MB } }, transport: cubic }
+  - { name: copies, model: bulk, transport: reno }
 sites: [ { name: a }, { name: b }, { name: c }, { name: d } ]
 fibres:
   - { between: [a, b], length: 100km }
@@ -51,6 +56,11 @@ aggregates:
   - { name: video, between: [a, c], class: video, load: 300Mbps }
   - { name: rest,  from: a, to: b, class: web, traffic: chance, load: 300Mbps }
   - { name: web,   from: a, to: c, class: web, load: 600Mbps }
+  - { name: read,  from: a, to: c, class: web, traffic: reader, load: 20Mbps }
+  - { name: burst, from: a, to: c, class: web, traffic: bursts, load: 20Mbps }
+  - { name: state, from: a, to: c, class: web, traffic: states, load: 20Mbps }
+  - { name: loop,  between: [a, c], class: web, traffic: loops, load: 20Mbps }
+  - { name: copy,  from: a, to: c, class: web, traffic: copies, flows: 3 }
 requests: [ { name: loans, between: [a, c], slots: 2, arrive: 40/s, hold: { exponential: { mean: 50ms } } } ]
 controller: { at: d, compute: 1ms }
 plans:

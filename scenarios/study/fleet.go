@@ -142,7 +142,7 @@ func (f *fleet) begin(ctx context.Context, g *group) (*build.Model, error) {
 		return nil, err
 	}
 	m.Kernel(des.Serial{}).Advance(f.at, func() bool { return ctx.Err() != nil })
-	return m, ctx.Err()
+	return m, errors.Join(ctx.Err(), m.Err())
 }
 
 // trial makes trial i of g. It holds the lock but while it runs.
