@@ -147,7 +147,7 @@ func (s *Site) file(h *host, now des.Time) {
 	c.Began += t.Began
 	for i := range t.Done {
 		x := &t.Done[i]
-		began, _ := s.net.history.find(x.Began, x.Ended)
+		began, _ := s.net.history.find(x.Began, x.Began) // that in which it was asked for
 		c := h.cell(began)
 		c.Times.Add(uint64(x.Ended-x.Began) / 1000)
 		c.Exact.Add(int64(x.Ended - x.Began))
