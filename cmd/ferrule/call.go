@@ -32,6 +32,7 @@ type call struct {
 	level  string
 	gate   gateFlag
 	resume string
+	in     input  // what was loaded
 	again  string // the command that makes the same again
 }
 
@@ -40,7 +41,7 @@ func (c *call) flags(cmd *cobra.Command) {
 	f := cmd.Flags()
 	f.IntVar(&c.cores, "cores", 0, "cores to use; the results do not depend on it (default all)")
 	f.StringArrayVar(&c.cuts, "cut", nil, "cut a fibre, as NAME[:120km]@6s[..9s]; may be repeated")
-	f.StringArrayVar(&c.sets, "set", nil, "lay PATH=VALUE over the scenario, as circuits.vx.slots=4; may be repeated")
+	f.StringArrayVar(&c.sets, "set", nil, "lay PATH=VALUE over the scenario, as circuits.vx.slots=4; may be repeated; variables FERRULE_SET_... of the environment, PATH=VALUE each, go before")
 	f.StringVar(&c.format, "format", "text", "of standard output: text, json, csv or md")
 	f.StringArrayVar(&c.outs, "out", nil, "write a file too, by suffix .html (a report), .json, .csv, .md, .txt or .xml (JUnit); may be repeated")
 	f.StringVar(&c.level, "log", "warn", "least level logged on standard error: debug, info, warn or error")
@@ -73,11 +74,15 @@ func (c *call) begin(cmd *cobra.Command, args []string) (scenario, options, erro
 	if err != nil {
 		return nil, options{}, err
 	}
+	if err := c.around(cmd); err != nil {
+		return nil, options{}, err
+	}
 	in, err := c.input(args)
 	if err != nil {
 		return nil, options{}, err
 	}
 	in.sets, in.cuts = c.sets, c.cuts
+	c.in = in
 	sc, err := c.env.Studio.Load(in)
 	if err != nil {
 		return nil, options{}, fmt.Errorf("the scenario is not sound:\n%w", err)

@@ -20,7 +20,7 @@ const (
 func newCompare(env Env) *cobra.Command {
 	c := &call{env: env}
 	base, n, margin := asIs, defaultCompare, "1%"
-	var only []string
+	var only, growth []string
 	cmd := &cobra.Command{
 		Use:     "compare [FILE]",
 		Short:   "Set each plan beside the network as it is, on the same seeds",
@@ -44,8 +44,17 @@ func newCompare(env Env) *cobra.Command {
 			if err := c.gate.check(sc, append([]string{base}, plans...)); err != nil {
 				return err
 			}
+			factors, err := factorsOf(growth)
+			if err != nil {
+				return err
+			}
 			started := time.Now()
-			r, err := sc.Compare(cmd.Context(), opt, base, plans, seedsFrom(opt.seed, n))
+			var r *result.Comparison
+			if factors == nil {
+				r, err = sc.Compare(cmd.Context(), opt, base, plans, seedsFrom(opt.seed, n))
+			} else {
+				r, err = sc.Grow(cmd.Context(), opt, base, plans, seedsFrom(opt.seed, n), factors)
+			}
 			var audit *result.Audit
 			if r != nil {
 				audit = &r.Audit
@@ -59,9 +68,26 @@ func newCompare(env Env) *cobra.Command {
 	c.seedFlag(cmd, "first seed; the others follow it")
 	cmd.Flags().StringVar(&base, "base", base, "plan the others are compared with")
 	cmd.Flags().StringArrayVar(&only, "plan", nil, "compare this plan only; may be repeated (default all)")
+	cmd.Flags().StringSliceVar(&growth, "growth", nil, "all loads times these factors, as 100%,130%,160%: where each plan breaks")
 	cmd.Flags().StringVar(&margin, "margin", margin, "share of a limit, or of a figure without one, that does not matter")
 	cmd.Flags().IntVar(&n, "seeds", n, "number of seeds, the same under every plan")
 	return cmd
+}
+
+// factorsOf reads the factors of --growth.
+func factorsOf(texts []string) ([]float64, error) {
+	var out []float64
+	for _, t := range texts {
+		f, err := shareOf("growth", t, 100)
+		if err != nil {
+			return nil, err
+		}
+		if n := len(out); n > 0 && f <= out[n-1] {
+			return nil, fmt.Errorf("--growth: %s does not follow what is before it; write factors that rise", t)
+		}
+		out = append(out, f)
+	}
+	return out, nil
 }
 
 // plansAgainst lists the plans to set beside base: those of only, or all.

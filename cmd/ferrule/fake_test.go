@@ -32,6 +32,10 @@ func (fakeStudio) Open(name string) (input, error) {
 	return input{name: name, data: data, files: fakeLibrary}, err
 }
 
+func (fakeStudio) Coverage(context.Context, options, int, float64) ([]covered, error) {
+	return []covered{{"one queue", "mean", "4 ms", 380, 400, 0.92, 0.98, ""}, {"one queue", "p99", "9 ms", 300, 400, 0.92, 0.98, "a note"}, {cell: "none"}}, nil
+}
+
 func (fakeStudio) Load(in input) (scenario, error) {
 	kind, _, _ := strings.Cut(strings.TrimSpace(string(in.data)), " ")
 	if kind == "unsound" {
@@ -132,6 +136,21 @@ func (s *fakeScenario) Failures(ctx context.Context, opt options, w study.Sweep)
 		r.Plans = append(r.Plans, result.FailuresPlan{Plan: p})
 	}
 	return r, err
+}
+
+func (s *fakeScenario) Grow(ctx context.Context, opt options, base string, plans []string, seeds []uint64, factors []float64) (*result.Comparison, error) {
+	c, err := s.Compare(ctx, opt, base, plans, seeds)
+	c.Growth = []result.Growth{{Plan: base}}
+	for _, f := range factors {
+		c.Growth[0].Steps = append(c.Growth[0].Steps, result.GrowthStep{Factor: f, Standing: result.Open})
+	}
+	return c, err
+}
+
+func (s *fakeScenario) Size(ctx context.Context, opt options, q sizeQuestion) (*result.Sizing, error) {
+	h, a, err := s.outcome(ctx)
+	return &result.Sizing{Head: h, Plan: opt.plan, Circuit: q.circuit, Low: int64(q.low), High: int64(q.high), Least: new(int64(q.atMost)), Audit: a,
+		Trail: []result.SizeStep{{Slots: 2, Seeds: 10, Standing: result.Met, Text: strings.Join(q.in.sets, " ")}}}, err
 }
 
 func (s *fakeScenario) Check(ctx context.Context, opt options) (*result.Check, error) {

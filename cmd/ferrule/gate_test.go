@@ -84,3 +84,34 @@ func fakeGates(text string, plans ...string) []result.Gate {
 	}
 	return out
 }
+
+func TestCoverageTable(t *testing.T) {
+	status, out, errOut := try(t.Context(), false, nil, "coverage")
+	if status != 0 || !strings.Contains(out, "| 380 | 400 | 95.0 % | 92.0 to 98.0 % | ok |") ||
+		!strings.Contains(out, "| 75.0 % | 92.0 to 98.0 % | OUTSIDE; a note |") || !strings.Contains(out, "nothing to judge") {
+		t.Errorf("status %d\n%s%s", status, out, errOut)
+	}
+	for _, args := range []string{"--experiments 9", "--seconds 0", "--seconds NaN", "x"} {
+		if status, _, _ := try(t.Context(), false, nil, append([]string{"coverage"}, strings.Fields(args)...)...); status != 2 {
+			t.Errorf("%s: status %d", args, status)
+		}
+	}
+}
+
+func TestGrowthAndSize(t *testing.T) {
+	status, out, errOut := try(t.Context(), false, nil, "compare", "--growth", "100%,130%,1.6")
+	if status != 0 || !strings.Contains(out, "130 %  undecided") || !strings.Contains(out, "160 %  undecided") {
+		t.Errorf("growth: status %d\n%s%s", status, out, errOut)
+	}
+	status, out, errOut = try(t.Context(), false, nil, "size", "--circuit", "vx", "--plan", "express", "--from", "2", "--to", "9", "--at-most", "33", "--set", "a=1")
+	if status != 0 || !strings.Contains(out, "circuit vx, plan express") || !strings.Contains(out, "2 to 9 slots searched") ||
+		!strings.Contains(out, "least that is met: 33 slots") || !strings.Contains(out, "a=1") {
+		t.Errorf("size: status %d\n%s%s", status, out, errOut)
+	}
+	for _, args := range []string{"compare --growth 130%,100%", "compare --growth x", "size", "size --circuit vx --from 0", "size --circuit vx --from 5 --to 3",
+		"size --circuit vx --at-most 9", "size --circuit vx --plan none"} {
+		if status, _, errOut := try(t.Context(), false, nil, strings.Fields(args)...); status != 2 {
+			t.Errorf("%s: status %d, %s", args, status, errOut)
+		}
+	}
+}

@@ -23,6 +23,9 @@ type studio interface {
 	// Open returns an embedded scenario and the files beside it; "" names the
 	// demo.
 	Open(name string) (in input, err error)
+
+	// Coverage studies how often intervals hold the truth.
+	Coverage(ctx context.Context, opt options, experiments int, seconds float64) ([]covered, error)
 }
 
 // An entry is one embedded scenario.
@@ -76,5 +79,7 @@ type scenario interface {
 	BatchUntil(ctx context.Context, opt options, p precision) (*result.Batch, error)
 	Compare(ctx context.Context, opt options, base string, plans []string, seeds []uint64) (*result.Comparison, error)
 	Failures(ctx context.Context, opt options, w study.Sweep) (*result.Failures, error)
+	Grow(ctx context.Context, opt options, base string, plans []string, seeds []uint64, factors []float64) (*result.Comparison, error)
+	Size(ctx context.Context, opt options, q sizeQuestion) (*result.Sizing, error)
 	Check(ctx context.Context, opt options) (*result.Check, error)
 }

@@ -23,6 +23,8 @@ func WriteCSV(w io.Writer, r Result) error {
 		t.comparison(r)
 	case *Check:
 		t.check(r)
+	case *Sizing:
+		t.sizing(r)
 	case *Failures:
 		t.failures(r)
 	default:
@@ -237,4 +239,19 @@ func (t *longTable) check(c *Check) {
 	t.value("estimate", "", "", "packet-hops", UnitPackets, c.Estimate.PacketHops)
 	t.value("estimate", "", "", "memory", UnitBytes, c.Estimate.MemoryBytes)
 	t.optional("estimate", "", "", "wall", UnitSeconds, c.Estimate.WallS)
+}
+
+func (t *longTable) sizing(r *Sizing) {
+	for _, s := range r.Trail {
+		name := strconv.FormatInt(s.Slots, 10) + " slots"
+		t.count("size/"+r.Circuit, name, "seeds", UnitCount, s.Seeds)
+		t.row("size/"+r.Circuit, name, "", "standing", "", string(s.Standing))
+	}
+	if r.Least != nil {
+		t.count("size/"+r.Circuit, "", "least", UnitSlots, *r.Least)
+	}
+	if r.Missed != nil {
+		t.count("size/"+r.Circuit, "", "missed", UnitSlots, *r.Missed)
+	}
+	t.value("size/"+r.Circuit, "", "", "load", UnitBps, r.Prediction.LoadBps)
 }

@@ -23,6 +23,7 @@ func (*Run) kind() Kind        { return KindRun }
 func (*Batch) kind() Kind      { return KindBatch }
 func (*Comparison) kind() Kind { return KindComparison }
 func (*Check) kind() Kind      { return KindCheck }
+func (*Sizing) kind() Kind     { return KindSizing }
 func (*Failures) kind() Kind   { return KindFailures }
 
 // HeadOf returns the head of r.
@@ -104,10 +105,12 @@ func Decode(data []byte) (Result, error) {
 		r = new(Comparison)
 	case KindCheck:
 		r = new(Check)
+	case KindSizing:
+		r = new(Sizing)
 	case KindFailures:
 		r = new(Failures)
 	default:
-		return nil, fmt.Errorf("result: kind %q is none of run, batch, comparison, check, failures", h.Kind)
+		return nil, fmt.Errorf("result: kind %q is none of run, batch, comparison, check, failures, sizing", h.Kind)
 	}
 	if err := json.Unmarshal(data, r); err != nil {
 		return nil, fmt.Errorf("result: %w", err)

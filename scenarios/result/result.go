@@ -34,6 +34,7 @@ const (
 	KindBatch      Kind = "batch"
 	KindComparison Kind = "comparison"
 	KindCheck      Kind = "check"
+	KindSizing     Kind = "sizing"
 	KindFailures   Kind = "failures"
 )
 
@@ -105,7 +106,7 @@ type Within struct {
 	MeanS    *float64  `json:"mean_s,omitempty"`   // of the batches
 	Interval *Interval `json:"interval,omitempty"` // in seconds, at 95 %
 	Batches  int64     `json:"batches"`
-	Lag1     *float64  `json:"lag_1,omitempty"`   // autocorrelation of the batches
+	Lag1     *float64  `json:"lag_1,omitempty"`   // autocorrelation of the parts that batches are made of
 	Refused  string    `json:"refused,omitempty"` // why there is no interval
 }
 

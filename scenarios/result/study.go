@@ -40,6 +40,14 @@ type Mean struct {
 	Seeds     int64     `json:"seeds"`              // in how many seeds the figure could be said
 	WorstPair string    `json:"worst_pair,omitempty"`
 	Met       *bool     `json:"met,omitempty"` // absent without a limit, or when undecided
+
+	// Of a percentile of the delay, Mean being the mean of the seeds'
+	// percentiles: the percentile of the packets of all seeds together, and how
+	// many independent exceedances a seed has. With too few of them Interval or Pooled is
+	// absent.
+	Pooled         *float64  `json:"pooled,omitempty"`
+	PooledInterval *Interval `json:"pooled_interval,omitempty"`
+	Effective      *float64  `json:"effective,omitempty"`
 }
 
 // A Verdict says what a paired difference amounts to.
@@ -61,8 +69,9 @@ type Comparison struct {
 	Confidence float64    `json:"confidence"`             // of every interval, such as 0.95
 	Margin     float64    `json:"margin_ratio,omitempty"` // share of a limit or a figure that does not matter
 	Plans      []Compared `json:"plans"`
-	Audit      Audit      `json:"audit"`           // summed over plans and seeds
-	Gates      []Gate     `json:"gates,omitempty"` // of the base, then of the plans, when a class has an objective
+	Audit      Audit      `json:"audit"`            // summed over plans and seeds
+	Gates      []Gate     `json:"gates,omitempty"`  // of the base, then of the plans, when a class has an objective
+	Growth     []Growth   `json:"growth,omitempty"` // of the base, then of the plans, when it was asked for
 
 	Defaults []Default `json:"defaults"`
 	Cautions []string  `json:"cautions"`
@@ -167,6 +176,61 @@ type Hold struct {
 	MoreSeeds *int64    `json:"more_seeds,omitempty"`
 	Standing  Standing  `json:"standing"`
 	Text      string    `json:"text"` // in one sentence
+}
+
+// Growth says how much more load a plan bears: its objectives in the settled
+// periods, normal and after, with all loads times a factor. The figures of the
+// comparison itself are those of the first factor.
+type Growth struct {
+	Plan    string       `json:"plan"`
+	HoldsTo *float64     `json:"holds_to_ratio,omitempty"`  // the greatest factor up to which all tried are met with confidence
+	Breaks  *float64     `json:"breaks_at_ratio,omitempty"` // the least that is missed with confidence
+	Steps   []GrowthStep `json:"steps"`                     // factors upwards
+}
+
+// A GrowthStep is a plan under one factor.
+type GrowthStep struct {
+	Factor   float64  `json:"factor_ratio"`
+	Standing Standing `json:"standing"`
+	First    string   `json:"first,omitempty"` // of the objectives that are not met, the first missed one or else the first
+}
+
+// A Sizing is the search for the least circuit that keeps the objectives of
+// the classes it carries, in the settled periods.
+type Sizing struct {
+	Head
+	Plan       string     `json:"plan"`
+	Circuit    string     `json:"circuit"`
+	Classes    []string   `json:"classes"`    // it carries
+	Confidence float64    `json:"confidence"` // of the answer as a whole
+	StepLevel  float64    `json:"step_level"` // confidence of each look, so that all together have that
+	Low        int64      `json:"low_slots"`  // the range searched
+	High       int64      `json:"high_slots"`
+	Least      *int64     `json:"least_slots,omitempty"`  // the fewest that are met with confidence
+	Missed     *int64     `json:"missed_slots,omitempty"` // the most that are missed with confidence
+	Prediction Prediction `json:"prediction"`
+	Trail      []SizeStep `json:"trail"` // in the order of trying
+	Audit      Audit      `json:"audit"`
+	Defaults   []Default  `json:"defaults"`
+	Cautions   []string   `json:"cautions"`
+}
+
+// A Prediction is what can be said of a circuit without running anything.
+type Prediction struct {
+	LoadBps    float64  `json:"load_bps"`               // on the busier direction
+	PacketB    float64  `json:"packet_bytes"`           // mean
+	Full       *int64   `json:"full_slots,omitempty"`   // the fewest that carry the load at all
+	ByTheory   *int64   `json:"theory_slots,omitempty"` // the fewest at which M/M/1 keeps TightestS
+	TightestS  *float64 `json:"tightest_s,omitempty"`   // limit on the variation of delay
+	Percentile float64  `json:"percentile,omitempty"`   // it is a limit on
+}
+
+// A SizeStep is one size that was tried.
+type SizeStep struct {
+	Slots    int64    `json:"slots"`
+	Seeds    int64    `json:"seeds"`
+	Standing Standing `json:"standing"`
+	Text     string   `json:"text"` // the objective that decided
 }
 
 // A Stopping says how a batch found its number of seeds.

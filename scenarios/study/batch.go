@@ -101,7 +101,7 @@ func foldBatch(plan string, samples []*sample, level float64) *result.Batch {
 		b.Cautions = append(b.Cautions, "No intervals: the warm-up took half of what there was with the seeds "+seeds+".")
 		for _, means := range [][]result.Mean{b.Figures, b.Network} {
 			for i := range means {
-				means[i].Interval = nil
+				means[i].Interval, means[i].PooledInterval = nil, nil
 			}
 		}
 	}
@@ -123,6 +123,7 @@ func (s *series) mean(level float64) result.Mean {
 	i := measure.MeanInterval(v, level)
 	m.Mean = &i.Mean
 	m.Interval = intervalOf(i)
+	s.percentile(&m, level)
 	return m
 }
 

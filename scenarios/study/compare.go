@@ -92,6 +92,15 @@ func compare(ctx context.Context, o Options, plans []string, seeds []uint64, run
 	}
 	c := foldComparison(plans, byPlan, terms{level: confidence, margin: o.margin()})
 	c.Partial, c.Runs = err != nil, kept()
+	if o.settled != nil {
+		var gates []*result.Gate
+		for k, plan := range plans {
+			if g := gateOf(plan, byPlan[k], confidence, func(_ string, kind result.PeriodKind) bool { return settled(kind) }); g != nil {
+				gates = append(gates, g)
+			}
+		}
+		o.settled(gates)
+	}
 	return c, err
 }
 

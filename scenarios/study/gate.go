@@ -13,7 +13,7 @@ import (
 func gatesOf(plans []string, byPlan [][]*sample, level float64) []result.Gate {
 	var out []result.Gate
 	for k, plan := range plans {
-		if g := gateOf(plan, byPlan[k], level); g != nil {
+		if g := gateOf(plan, byPlan[k], level, nil); g != nil {
 			out = append(out, *g)
 		}
 	}
@@ -28,8 +28,8 @@ func gatesOf(plans []string, byPlan [][]*sample, level float64) []result.Gate {
 // beyond and its one-sided p value, corrected by Holm over the objectives,
 // says so at half of what the interval bears, since any one of them is enough.
 // Too few seeds for their signs alone to say it (measure.LeastP) decide
-// nothing.
-func gateOf(plan string, samples []*sample, level float64) *result.Gate {
+// nothing. pick says which objectives count; nil stands for all.
+func gateOf(plan string, samples []*sample, level float64, pick func(class string, kind result.PeriodKind) bool) *result.Gate {
 	tooShort := tooShort(samples) != ""
 	figures := collect(samples, func(s *sample) []reading { return s.figures })
 	g := &result.Gate{Plan: plan, Confidence: level}
@@ -37,7 +37,7 @@ func gateOf(plan string, samples []*sample, level float64) *result.Gate {
 	var values [][]float64
 	ps := []float64{}
 	for _, s := range figures {
-		if s.limit == nil {
+		if s.limit == nil || pick != nil && !pick(s.class, kindOf(samples, s.period)) {
 			continue
 		}
 		v, p := s.worsts(), math.NaN()
@@ -157,3 +157,19 @@ func noneSeen(seeds int64) string {
 	return fmt.Sprintf("no loss in %d seeds: at 95 %% at most %.2g of 100 such runs have an episode of loss",
 		seeds, 100*measure.NoneSeenUpper(uint64(seeds), confidence))
 }
+
+// kindOf is the kind of a period, of whichever sample has it.
+func kindOf(samples []*sample, period string) result.PeriodKind {
+	for _, s := range samples {
+		for _, p := range s.periods {
+			if p.Name == period {
+				return p.Kind
+			}
+		}
+	}
+	return ""
+}
+
+// settled reports whether periods of a kind are those in which a network does
+// what it was sized for: nothing is being changed or put right.
+func settled(kind result.PeriodKind) bool { return kind == result.Normal || kind == result.After }

@@ -7,6 +7,7 @@ import (
 	"go.uber.org/zap"
 
 	"ferrule/scenarios"
+	"ferrule/scenarios/result"
 )
 
 // Options say how a scenario is studied. The zero value studies it as it
@@ -20,6 +21,8 @@ type Options struct {
 	Margin   float64 // in a comparison, the share of a limit or a figure that does not matter; 0: DefaultMargin
 	Store    Store   // keeps finished replications of studies of several; nil: none are kept
 	Runs     bool    // a batch or a comparison also hands out the runs of its first seed
+
+	settled func([]*result.Gate) // told how a comparison stands in settled periods
 }
 
 // DefaultMargin is the share of a limit, or of the figure where there is no

@@ -101,7 +101,7 @@ func batchUntil(ctx context.Context, o Options, p Precision, first uint64, run r
 		if stop.Reached || n == p.AtMost {
 			break
 		}
-		n = min(max(next, n+max(1, n/5)), 2*n, p.AtMost)
+		n = p.next(n, next)
 	}
 	b := foldBatch(o.plan(), samples, confidence)
 	b.Runs, b.Stopping = kept(), stop
@@ -110,6 +110,12 @@ func batchUntil(ctx context.Context, o Options, p Precision, first uint64, run r
 			p.AtMost, stop.Worst, 100*stop.WorstHalf))
 	}
 	return b, nil
+}
+
+// next is the number of seeds at which to look after n, when the variance asks
+// for asked in all.
+func (p Precision) next(n, asked int) int {
+	return min(max(asked, n+max(1, n/5)), 2*n, p.AtMost)
 }
 
 // look notes in stop how precise the figure is, and returns how many seeds in
@@ -127,26 +133,46 @@ func (p Precision) look(samples []*sample, stop *result.Stopping) (next int, err
 			continue
 		}
 		seen = true
-		i := measure.MeanInterval(v, confidence)
-		relative := i.Relative()
-		if math.IsInf(relative, 0) || math.IsNaN(relative) {
-			relative = 1e9 // a mean of zero, or one value: a result holds no infinity
-		}
+		relative, n := p.precisionOf(&s, v)
 		if stop.Worst == "" || relative > stop.WorstHalf {
 			stop.Worst, stop.WorstHalf = s.class+" "+strings.ToUpper(s.period), relative
 		}
-		if relative <= target {
-			continue
+		if relative > target {
+			stop.Reached = false
+			next = max(next, n)
 		}
-		stop.Reached = false
-		n, ok := measure.Replications(v, measure.RelativeHalf(i.Mean, p.Relative), confidence)
-		if !ok || n > p.AtMost {
-			n = p.AtMost
-		}
-		next = max(next, n)
 	}
 	if !seen {
 		return 0, fmt.Errorf("no class has the figure %s in the periods asked for", p.Figure)
 	}
 	return next, nil
+}
+
+// unknown stands for a half-width over a mean that cannot be said: a result
+// holds no infinity.
+const unknown = 1e9
+
+// precisionOf is the half-width over the value of the interval that a batch
+// shows of a figure with values v, and how many seeds the variance so far asks
+// for. Of a percentile of the delay it is that pooled over the seeds.
+func (p Precision) precisionOf(s *series, v []float64) (relative float64, seeds int) {
+	target := p.Relative / (1 + p.Relative)
+	if _, is := shareOfPercentile[s.figure]; is {
+		q, ok := poolOf(s, confidence)
+		if !ok || q.perRun*float64(q.runs) < leastInAll {
+			return unknown, 2 * len(v)
+		}
+		relative = (q.high - q.low) / 2 / q.value
+		return relative, int(min(math.Ceil(float64(len(v))*relative*relative/(target*target)), float64(p.AtMost)))
+	}
+	i := measure.MeanInterval(v, confidence)
+	relative = i.Relative()
+	if math.IsInf(relative, 0) || math.IsNaN(relative) { // a mean of zero, or one value
+		relative = unknown
+	}
+	n, ok := measure.Replications(v, measure.RelativeHalf(i.Mean, p.Relative), confidence)
+	if !ok || n > p.AtMost {
+		n = p.AtMost
+	}
+	return relative, n
 }

@@ -22,6 +22,7 @@ type sample struct {
 	defaults []result.Default
 	cautions []string
 	short    bool // too short for its warm-up
+	within   []result.Within
 }
 
 // A key says which figure a reading is of.
@@ -45,12 +46,17 @@ type reading struct {
 	pair  string
 	worst *float64
 	sure  bool
+
+	// Of a percentile of the delay: the distribution it is taken from, and of
+	// how many packets.
+	tail    *result.Tail
+	packets float64
 }
 
 // sampleOf reduces a run.
 func sampleOf(r *result.Run) *sample {
 	s := &sample{head: r.Head, seed: r.Seed, periods: r.Periods, price: r.Price, transit: r.Transit, audit: r.Audit,
-		defaults: r.Defaults, cautions: r.Cautions, short: r.WarmUpShort}
+		defaults: r.Defaults, cautions: r.Cautions, short: r.WarmUpShort, within: r.Within}
 	for i := range r.Classes {
 		c := &r.Classes[i]
 		s.classes = append(s.classes, c.Name)
@@ -61,7 +67,9 @@ func sampleOf(r *result.Run) *sample {
 			}
 		}
 		for j := range c.Periods {
-			s.figures = append(s.figures, readingsOf(c, &c.Periods[j], members)...)
+			of := readingsOf(c, &c.Periods[j], members)
+			addTail(of, r.Tails, &c.Periods[j])
+			s.figures = append(s.figures, of...)
 		}
 	}
 	s.network = networkOf(r)
@@ -98,6 +106,23 @@ func readingsOf(c *result.Class, o *result.Outcome, members []*result.Aggregate)
 		}
 	}
 	return out
+}
+
+// addTail gives the percentiles of the delay of a class in a period the
+// distribution that they are taken from.
+func addTail(of []reading, tails []result.Tail, o *result.Outcome) {
+	for i := range of {
+		r := &of[i]
+		if _, is := shareOfPercentile[r.figure]; !is {
+			continue
+		}
+		r.packets = float64(o.DeliveredPackets)
+		for j := range tails {
+			if t := &tails[j]; t.Class == r.class && t.Period == r.period && len(t.DelayS) > 0 {
+				r.tail = t
+			}
+		}
+	}
 }
 
 // takeMember lets an aggregate of the class be the worst pair of each figure.

@@ -9,7 +9,6 @@ import (
 	"ferrule/des/random"
 	"ferrule/nodes/packet"
 	"ferrule/scenarios"
-	"ferrule/scenarios/library"
 	"ferrule/scenarios/result"
 )
 
@@ -50,26 +49,19 @@ func TestSettling(t *testing.T) {
 // The cut of a seed is the same under every plan and whichever plan is asked
 // for first, and a run measures nothing before it.
 func TestWarmUpIsOneForAllPlans(t *testing.T) {
-	data, files, err := library.Open(library.Demo)
+	sc, err := sized(3)
 	if err != nil {
 		t.Fatal(err)
 	}
-	sc, err := scenarios.Load("demo", data, files, []string{"run.warm-up=auto"})
-	if err != nil {
-		t.Fatal(err)
-	}
-	sc.Run.Length, sc.Timeline = 1500*des.Millisecond, nil
-	for i := range sc.Plans {
-		sc.Plans[i].Steps = nil
-	}
+	sc.Run.Length, sc.Run.WarmUp, sc.Run.AutoWarmUp = 600*des.Millisecond, 0, true
 	c, err := warmUp(t.Context(), sc, 3)
 	if err != nil {
 		t.Fatal(err)
 	}
-	if c.stretch != 1500*des.Millisecond || c.at > c.stretch/2 {
+	if c.stretch != 600*des.Millisecond || c.at > c.stretch/2 {
 		t.Errorf("cut at %v of %v", c.at, c.stretch)
 	}
-	for _, plan := range []string{"video-express", scenarios.AsIs} {
+	for _, plan := range []string{"moved", scenarios.AsIs} {
 		r, err := Run(t.Context(), sc, Options{Plan: plan, Seed: 3, Cores: 1})
 		if err != nil {
 			t.Fatal(err)
@@ -109,7 +101,7 @@ func TestTooShort(t *testing.T) {
 	}
 	limited := sampleOf(hand{seed: 1, p99: new(1.0), limit: 9}.run())
 	limited.short = true
-	if g := gateOf("as-is", []*sample{limited, limited, limited, limited, limited, limited}, 0.95); g.Standing != result.Open {
+	if g := gateOf("as-is", []*sample{limited, limited, limited, limited, limited, limited}, 0.95, nil); g.Standing != result.Open {
 		t.Errorf("gate %+v", g)
 	}
 }
@@ -128,15 +120,15 @@ func TestWithin(t *testing.T) {
 	}
 	noise := func(_ int, u float64) float64 { return 1 + u }
 	w := withinOf(make(noise, 410))[0]
-	// Uniform on [1, 2]: variance 1/12 over 400 bins; t of 19 degrees is 2.093.
-	if want := 2.093 * math.Sqrt(1.0/12/400); w.Interval == nil || math.Abs(*w.MeanS-1.5) > 3*want || *w.Interval.Half < 0.6*want || *w.Interval.Half > 1.4*want {
+	// Uniform on [1, 2]: variance 1/12 over 400 bins; t of 9 degrees is 2.262.
+	if want := 2.262 * math.Sqrt(1.0/12/400); w.Interval == nil || math.Abs(*w.MeanS-1.5) > 3*want || *w.Interval.Half < 0.6*want || *w.Interval.Half > 1.4*want {
 		t.Errorf("noise: %+v", w)
 	}
 	w = withinOf(make(func(i int, u float64) float64 { return 2 + math.Sin(float64(i)/60) + u/100 }, 410))[0]
 	if w.Interval != nil || *w.Lag1 < 0.5 || !strings.Contains(w.Refused, "correlated") {
 		t.Errorf("a wave: %+v", w)
 	}
-	if w = withinOf(make(noise, 100))[0]; w.Interval != nil || w.Refused == "" || w.MeanS != nil {
-		t.Errorf("90 bins: %+v", w)
+	if w = withinOf(make(noise, 89))[0]; w.Interval != nil || w.Refused == "" || w.MeanS != nil {
+		t.Errorf("79 bins: %+v", w)
 	}
 }

@@ -53,6 +53,8 @@ func layOut(r result.Result, opt Options) *doc {
 		d.comparison(r)
 	case *result.Check:
 		d.check(r)
+	case *result.Sizing:
+		d.sizing(r)
 	case *result.Failures:
 		d.failures(r)
 	default:

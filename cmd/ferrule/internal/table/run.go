@@ -79,11 +79,29 @@ func (d *doc) outcomes(p result.Period, classes []result.Class, i int) {
 	}
 	d.grid(packets)
 	d.grid(delays)
+	d.transfers(classes, i)
 	if worst != nil {
 		d.line(word("worst pair: "), join(", ", worst...))
 	}
 	for _, m := range misses {
 		d.line(m...)
+	}
+}
+
+// transfers shows what closed-loop transports did in period number i.
+func (d *doc) transfers(classes []result.Class, i int) {
+	g := columns(abbreviated("class"), right("transfers"), right("complete"), right("time p50"), right("p95"), right("p99"), right("max"),
+		right("goodput"), right("sent again"), right("time-outs"))
+	for _, c := range classes {
+		if i >= len(c.Periods) || c.Periods[i].Transfers == nil {
+			continue
+		}
+		t, s := c.Periods[i].Transfers, result.UnitSeconds
+		g.add(name(c.Name), count(t.Asked, ""), count(t.Complete, ""), optional(t.TimeS.P50, s), optional(t.TimeS.P95, s), optional(t.TimeS.P99, s),
+			optional(t.TimeS.Max, s), optional(t.GoodputBps, result.UnitBps), count(t.ResentCount, ""), count(t.Timeouts, ""))
+	}
+	if len(g.rows) > 0 {
+		d.grid(g)
 	}
 }
 

@@ -22,6 +22,15 @@ func spread(p50, p95, p99, p999, most float64) result.Distribution {
 	return result.Distribution{Min: new(p50 / 2), Mean: new(p50), P50: &p50, P95: &p95, P99: &p99, P999: &p999, Max: &most}
 }
 
+func sampleSizing() *result.Sizing {
+	return &result.Sizing{Head: sampleHead(), Plan: "video-express", Circuit: "vx", Classes: []string{"video"}, Confidence: 0.95, StepLevel: 0.997,
+		Low: 1, High: 12, Least: new(int64(4)), Missed: new(int64(3)),
+		Prediction: result.Prediction{LoadBps: 3.1e9, PacketB: 1420, Full: new(int64(3)), ByTheory: new(int64(3)), TightestS: new(0.01), Percentile: 0.99},
+		Trail: []result.SizeStep{{Slots: 3, Seeds: 10, Standing: result.Missed, Text: "video normal pdv-p99: 14 ms ± 1 ms, limit 10 ms"},
+			{Slots: 6, Seeds: 10, Standing: result.Met, Text: "every objective is met"}, {Slots: 4, Seeds: 40, Standing: result.Met, Text: "every objective is met"}},
+		Audit: result.Audit{OfferedPackets: 900, DeliveredPackets: 900, OK: true}}
+}
+
 func sampleWithin() []result.Within {
 	half := 0.0004
 	return []result.Within{
@@ -90,6 +99,8 @@ func sampleRun() *result.Run {
 func sampleComparison() *result.Comparison {
 	half := func(v float64) *result.Interval { return &result.Interval{Half: &v} }
 	c := &result.Comparison{Head: sampleHead(), Base: "as-is", Seeds: []uint64{1, 2, 3, 4, 5, 6, 7, 8}, Confidence: 0.95, Margin: 0.01,
+		Growth: []result.Growth{{Plan: "as-is", Breaks: new(1.0), Steps: []result.GrowthStep{{Factor: 1, Standing: result.Missed, First: "video after loss: 2 %, limit 0.1 %"}}},
+			{Plan: "video-express-live", HoldsTo: new(1.3), Steps: []result.GrowthStep{{Factor: 1.3, Standing: result.Met}, {Factor: 1.6, Standing: result.Open, First: "video normal loss: 0.1 %"}}}},
 		Gates: []result.Gate{{Plan: "as-is", Standing: result.Missed, Confidence: 0.95, Holds: []result.Hold{
 			{Class: "voice", Period: "normal", Figure: "delay-p99", Unit: "s", Limit: 0.04, Standing: result.Missed, Text: "41.2 ms ± 0.3 ms for voice-tn.out, limit 40 ms"},
 			{Class: "voice", Period: "hit", Figure: "out", Unit: "s", Limit: 0.5, Standing: result.Met, Text: "87 ms ± 1 ms, limit 500 ms"}}},
@@ -147,6 +158,7 @@ func sampleBatch() *result.Batch {
 		Worst: "voice NORMAL", WorstHalf: 0.041, Looks: []int64{10, 17, 24}}, Head: sampleHead(), Plan: "as-is", Seeds: []uint64{1, 2, 3}, Confidence: 0.95, Periods: samplePeriods(),
 		Figures: []result.Mean{
 			{Class: "voice", Period: "normal", Figure: "delay-p99", Unit: "s", Limit: new(0.04), Mean: new(0.0123),
+				Pooled: new(0.0127), PooledInterval: &result.Interval{Low: new(0.0119), High: new(0.0133)},
 				Interval: &result.Interval{Half: new(0.00021)}, Seeds: 3, WorstPair: "voice-tn.out", Met: new(true)},
 			{Class: "voice", Period: "normal", Figure: "delay-p99.9", Unit: "s", Seeds: 0},
 			{Class: "web", Period: "normal", Figure: "throughput", Unit: "bit/s", Mean: new(4.5e9),

@@ -40,6 +40,9 @@ func (d *doc) batch(b *result.Batch) {
 				g.add(toned(name(class), strong), cell{}, cell{}, cell{}, cell{}, cell{}, cell{})
 			}
 			g.add(meanRow(word("  "+figureName(m.Figure)), m)...)
+			if m.Pooled != nil {
+				g.add(word("    all seeds together"), cell{}, optional(m.Pooled, m.Unit), interval(m.PooledInterval, m.Unit), cell{}, cell{}, cell{})
+			}
 		}
 		d.grid(g)
 	}
@@ -54,6 +57,8 @@ func (d *doc) batch(b *result.Batch) {
 	d.gates(b.Gates)
 	d.stopping(b.Stopping)
 	d.definitions()
+	d.line(word("A percentile is the mean of the seeds' percentiles; it has no interval when a seed holds too few independent"))
+	d.line(word("delays beyond it, for it is then too small on average. \"All seeds together\" is the percentile of all packets."))
 	d.heading(word("PRICE AND AUDIT"))
 	d.price(b.Price)
 	d.audit(b.Audit)
@@ -162,6 +167,7 @@ func (d *doc) comparison(c *result.Comparison) {
 		d.compared(c.Base, p)
 	}
 	d.gates(c.Gates)
+	d.growth(c.Growth)
 	d.definitions()
 	d.line(word("pp: percentage points. Objectives: every aggregate of the class, under the plan. Verdicts in brackets are"))
 	d.line(word("exploratory. Same: identical, or surely less apart than "), limit(c.Margin, result.UnitRatio),

@@ -21,7 +21,7 @@ import (
 var update = flag.Bool("update", false, "rewrite the golden files; explain why in the commit")
 
 func samples() map[string]result.Result {
-	return map[string]result.Result{"run": sampleRun(), "batch": sampleBatch(), "compare": sampleComparison(), "check": sampleCheck(), "failures": sampleFailures()}
+	return map[string]result.Result{"run": sampleRun(), "batch": sampleBatch(), "compare": sampleComparison(), "check": sampleCheck(), "size": sampleSizing(), "failures": sampleFailures()}
 }
 
 func text(t *testing.T, r result.Result, opt Options) string {
