@@ -18,13 +18,15 @@ type Env struct {
 	ErrOut io.Writer // messages, progress, timings, logs
 	IsTTY  func(w io.Writer) bool
 	Getenv func(key string) string
-	Studio studio
+
+	Environ func() []string // all variables as NAME=VALUE; nil: there are none
+	Studio  studio
 }
 
 // osEnv is the world of a process.
 func osEnv(s studio) Env {
 	return Env{
-		Files: disk{}, Out: os.Stdout, ErrOut: os.Stderr, Getenv: os.Getenv, Studio: s,
+		Files: disk{}, Out: os.Stdout, ErrOut: os.Stderr, Getenv: os.Getenv, Environ: os.Environ, Studio: s,
 		IsTTY: func(w io.Writer) bool {
 			f, ok := w.(*os.File)
 			return ok && isatty.IsTerminal(f.Fd())

@@ -8,6 +8,8 @@ import (
 	"strings"
 
 	"github.com/spf13/cobra"
+
+	"ferrule/scenarios"
 )
 
 func newScenarios(env Env) *cobra.Command {
@@ -34,6 +36,15 @@ func newScenarios(env Env) *cobra.Command {
 					return err
 				}
 				_, err = env.Out.Write(in.data)
+				return failed(err)
+			},
+		},
+		&cobra.Command{
+			Use:   "schema",
+			Short: "Print the JSON Schema of scenario files, for editors",
+			Args:  exactly(0),
+			RunE: func(*cobra.Command, []string) error {
+				_, err := env.Out.Write(scenarios.Schema())
 				return failed(err)
 			},
 		},
