@@ -67,7 +67,8 @@ type YearOfClass struct {
 	HurtMostBy  string  `json:"hurt_most_by,omitempty"` // the failure that loses most packets of it
 	LostPackets float64 `json:"lost_packets"`           // to that failure
 
-	Lost         *float64 `json:"lost_per_year_s,omitempty"` // mean over its aggregates, by load
+	Lost         *float64 `json:"lost_per_year_s,omitempty"`            // mean over its aggregates, by load
+	Below        *float64 `json:"below_objective_per_year_s,omitempty"` // short of an objective that is met when nothing fails
 	Availability *float64 `json:"availability_ratio,omitempty"`
 	WorstLost    *float64 `json:"worst_lost_per_year_s,omitempty"`
 	WorstPair    string   `json:"worst_pair,omitempty"`
@@ -78,6 +79,7 @@ type YearOfTraffic struct {
 	Aggregate    string  `json:"aggregate"`
 	Class        string  `json:"class"`
 	Lost         float64 `json:"lost_per_year_s"`
+	Below        float64 `json:"below_objective_per_year_s"`
 	Availability float64 `json:"availability_ratio"`
 }
 
@@ -98,11 +100,13 @@ func (t *longTable) failures(r *Failures) {
 		}
 		for _, y := range p.Classes {
 			t.optional(p.Plan+"/class", y.Class, "", "lost-per-year", UnitSeconds, y.Lost)
+			t.optional(p.Plan+"/class", y.Class, "", "below-objective-per-year", UnitSeconds, y.Below)
 			t.optional(p.Plan+"/class", y.Class, "", "availability", UnitRatio, y.Availability)
 			t.optional(p.Plan+"/class", y.Class, "", "worst-lost-per-year", UnitSeconds, y.WorstLost)
 		}
 		for _, y := range p.Each {
 			t.value(p.Plan+"/aggregate", y.Aggregate, "", "lost-per-year", UnitSeconds, y.Lost)
+			t.value(p.Plan+"/aggregate", y.Aggregate, "", "below-objective-per-year", UnitSeconds, y.Below)
 			t.value(p.Plan+"/aggregate", y.Aggregate, "", "availability", UnitRatio, y.Availability)
 		}
 	}

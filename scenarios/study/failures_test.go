@@ -240,6 +240,14 @@ func TestFailuresByHand(t *testing.T) {
 	if n := cut.Classes[0].LostPackets; n < 5 || n > 60 || len(cut.CutOff) != 0 || cut.Classes[0].Missed != 1 {
 		t.Errorf("routed: %g packets lost, cut off %v; by way of c it takes 2 ms and misses 1 ms: %d", n, cut.CutOff, cut.Classes[0].Missed)
 	}
+	// By way of c it misses its objective until the repair: 12 h at the rate of
+	// the cuts of 100 km, as above, and at that of the other fibres not at all.
+	if y := asIs.Classes[0]; y.Below == nil || math.Abs(*y.Below/60-196.3) > 0.05 || *y.Lost > 1 {
+		t.Errorf("routed: a year %+v", y)
+	}
+	if asIs.Classes[1].Below != nil {
+		t.Error("a class without objectives falls short of them")
+	}
 	if b := named(t, asIs, "a-c"); b.Classes[0].LostPackets != 0 || b.Classes[1].Hit != 2 || *b.LengthKm != 200 {
 		t.Errorf("the cut of a-c: %+v", b)
 	}

@@ -232,62 +232,91 @@ func worseFirst(a, b result.Failure) int {
 	return 0
 }
 
-// year adds to out what each aggregate and class may expect in a year. A cut
-// counts in time in service: a fibre that is down is not cut again.
-func (x *folding) year(out *result.FailuresPlan) {
+// A year is what each way may expect in a year, in seconds.
+type year struct {
+	lost, below []float64
+	first       *trial // tells the names, classes and loads of the ways
+	rated       bool   // a rate is known of something
+}
+
+// expect adds up over all failures. A cut counts in time in service: a fibre
+// that is down is not cut again. What misses its objective once all has settled
+// does so until the repair.
+func (x *folding) expect() year {
 	repair := x.w.Repair.Seconds()
-	var lost, weight []float64 // by way
-	var first *trial
-	rated := false
+	var y year
+	nothing := x.of(0)
 	for i := range x.list {
 		trials, rate := x.of(i), x.perYear(i)
 		if len(trials) == 0 {
 			continue
 		}
-		if first == nil {
-			first = trials[0]
-			lost, weight = make([]float64, len(first.Ways)), first.Asked
+		if y.first == nil {
+			y.first = trials[0]
+			y.lost, y.below = make([]float64, len(y.first.Ways)), make([]float64, len(y.first.Ways))
 		}
-		rated = rated || rate > 0
-		for w := range lost {
-			sum := 0.0
+		if rate == 0 {
+			continue
+		}
+		y.rated = true
+		for w := range y.lost {
+			out, below := 0.0, 0.0
 			for _, t := range trials {
 				switch a := &t.Ways[w]; {
 				case a.CutOff:
-					sum += repair
+					out += repair
 				case a.Hit:
-					sum += a.Outage
+					out += a.Outage
+				}
+				if a := &t.Ways[w]; a.Missed && !a.CutOff && !missedWith(nothing, t.Seed, w) {
+					below += repair
 				}
 			}
-			lost[w] += float64(rate * sum / float64(len(trials)))
+			y.lost[w] += float64(rate * out / float64(len(trials)))
+			y.below[w] += float64(rate * below / float64(len(trials)))
 		}
 	}
+	return y
+}
+
+// year adds to out what each class and aggregate may expect in a year.
+func (x *folding) year(out *result.FailuresPlan) {
+	y := x.expect()
 	for c := range x.sc.Classes {
-		y := result.YearOfClass{Class: x.sc.Classes[c].Name}
-		x.hurtMost(out, c, &y)
-		total, weights := 0.0, 0.0
-		for w := range first.Ways {
-			if first.Ways[w].Class != y.Class {
-				continue
-			}
-			total += float64(weight[w] * lost[w])
-			weights += weight[w]
-			if rated && (y.WorstLost == nil || lost[w] > *y.WorstLost) {
-				y.WorstLost, y.WorstPair = new(lost[w]), first.Ways[w].Name
-			}
-		}
-		if rated && weights > 0 {
-			y.Lost = new(total / weights)
-			y.Availability = new(1 - total/weights/secondsPerYear)
-		}
-		out.Classes = append(out.Classes, y)
+		out.Classes = append(out.Classes, x.yearOf(out, c, &y))
 	}
-	for w := range first.Ways {
-		if rated {
-			out.Each = append(out.Each, result.YearOfTraffic{Aggregate: first.Ways[w].Name, Class: first.Ways[w].Class,
-				Lost: lost[w], Availability: 1 - lost[w]/secondsPerYear})
+	for w := range y.first.Ways {
+		if a := &y.first.Ways[w]; y.rated {
+			out.Each = append(out.Each, result.YearOfTraffic{Aggregate: a.Name, Class: a.Class,
+				Lost: y.lost[w], Below: y.below[w], Availability: 1 - y.lost[w]/secondsPerYear})
 		}
 	}
+}
+
+// yearOf is the year of class c: means over its ways by load.
+func (x *folding) yearOf(out *result.FailuresPlan, c int, y *year) result.YearOfClass {
+	r := result.YearOfClass{Class: x.sc.Classes[c].Name}
+	x.hurtMost(out, c, &r)
+	lost, below, weights := 0.0, 0.0, 0.0
+	for w := range y.first.Ways {
+		a := &y.first.Ways[w]
+		if a.Class != r.Class {
+			continue
+		}
+		lost += float64(y.first.Asked[w] * y.lost[w])
+		below += float64(y.first.Asked[w] * y.below[w])
+		weights += y.first.Asked[w]
+		if y.rated && (r.WorstLost == nil || y.lost[w] > *r.WorstLost) {
+			r.WorstLost, r.WorstPair = new(y.lost[w]), a.Name
+		}
+	}
+	if y.rated && weights > 0 {
+		r.Lost, r.Availability = new(lost/weights), new(1-lost/weights/secondsPerYear)
+		if len(x.sc.Classes[c].Objective) > 0 {
+			r.Below = new(below / weights)
+		}
+	}
+	return r
 }
 
 // hurtMost names the failure that loses most packets of class c.

@@ -36,21 +36,28 @@ func (d *doc) failures(r *result.Failures) {
 
 // yearly sets plans beside each other, class by class.
 func (d *doc) yearly(r *result.Failures) {
-	d.heading(word("WHAT HURTS EACH CLASS MOST, and what a year of single cuts costs it"))
-	g := columns(abbreviated("class"), abbreviated("plan"), abbreviated("hurt most by"), right("packets lost"),
-		right("out a year"), right("availability"), abbreviated("worst aggregate"), right("out a year"))
+	most := columns(abbreviated("class"), abbreviated("plan"), abbreviated("hurt most by"), right("packets lost"))
+	cost := columns(abbreviated("class"), abbreviated("plan"), right("out"), right("availability"), right("below objective"),
+		abbreviated("worst aggregate"), right("out"))
+	rated := false
 	for c := range r.Classes {
 		for i := range r.Plans {
 			y := &r.Plans[i].Classes[c]
-			g.add(name(y.Class), name(r.Plans[i].Plan), name(y.HurtMostBy), mean(y.LostPackets), minutes(y.Lost),
-				available(y.Availability), name(y.WorstPair), minutes(y.WorstLost))
+			most.add(name(y.Class), name(r.Plans[i].Plan), name(y.HurtMostBy), mean(y.LostPackets))
+			cost.add(name(y.Class), name(r.Plans[i].Plan), minutes(y.Lost), available(y.Availability), minutes(y.Below),
+				name(y.WorstPair), minutes(y.WorstLost))
+			rated = rated || y.Lost != nil
 		}
 	}
-	d.grid(g)
-	if r.CutsPerY > 0 {
-		d.line(word("out a year: mean over the aggregates of the class, by load; "), number(r.CutsPerY, ""),
-			word(" cuts per km and year, each repaired after "), minutes(&r.RepairS))
+	d.heading(word("WHAT HURTS EACH CLASS MOST"))
+	d.grid(most)
+	if !rated {
+		return
 	}
+	d.heading(word("A YEAR of single cuts, "), number(r.CutsPerY, ""), word(" per km, each repaired after "), minutes(&r.RepairS))
+	d.grid(cost)
+	d.line(word("mean over the aggregates of a class, by load; out: nothing arrives;" +
+		" below objective: it arrives, and misses until the repair what it keeps when nothing fails"))
 }
 
 // mean shows a mean number of packets: as a count where it is large.

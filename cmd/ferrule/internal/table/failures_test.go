@@ -25,7 +25,7 @@ func sampleFailures() *result.Failures {
 			{Plan: "as-is", Nothing: &nothing, Failures: []result.Failure{first, second},
 				Classes: []result.YearOfClass{
 					{Class: "voice", HurtMostBy: "tarn-holm", LostPackets: 1234.5, Lost: new(0.185), Availability: new(0.99999999413), WorstLost: new(61.5), WorstPair: "voice-tn.out"},
-					{Class: "web", HurtMostBy: "tarn-holm", LostPackets: 12.25, Lost: new(36486.72), Availability: new(0.998843), WorstLost: new(36486.72), WorstPair: "web-tn.out"}},
+					{Class: "web", HurtMostBy: "tarn-holm", LostPackets: 12.25, Lost: new(36486.72), Below: new(1260.0), Availability: new(0.998843), WorstLost: new(36486.72), WorstPair: "web-tn.out"}},
 				Each: []result.YearOfTraffic{{Aggregate: "voice-tn.out", Class: "voice", Lost: 0.185, Availability: 0.99999999413}}},
 			{Plan: "express", Failures: []result.Failure{second}, Classes: []result.YearOfClass{{Class: "voice"}, {Class: "web"}}}},
 		Audit:    result.Audit{OfferedPackets: 7000000, DeliveredPackets: 6999000, LostPackets: result.Losses{{Cause: "cut", Packets: 1000}}, OK: true},
