@@ -162,8 +162,6 @@ func (v *visit) watch() {
 	}
 }
 
-func second[A any](_ A, err error) error { return err }
-
 func (v *visit) must(err error) {
 	v.t.Helper()
 	if err != nil {
