@@ -73,7 +73,7 @@ func newRoot(env Env) *cobra.Command {
 		SilenceUsage:  true,
 		SilenceErrors: true,
 	}
-	root.AddCommand(newRun(env), newBatch(env), newCompare(env), newFailures(env), newCheck(env), newSize(env), newCoverage(env), newScenarios(env), newVersion(env))
+	root.AddCommand(newRun(env), newBatch(env), newCompare(env), newFailures(env), newCheck(env), newConsole(env), newSize(env), newCoverage(env), newScenarios(env), newVersion(env))
 	return root
 }
 
