@@ -81,6 +81,7 @@ func (r *resolver) resolveClasses() {
 			c.Traffic = r.traffic.find(q, raw.Traffic)
 		}
 		c.Objective = objective(p.field("objective"), &raw.Objective)
+		r.transfersEnd(p.field("objective"), &c)
 		r.s.Classes = append(r.s.Classes, c)
 		r.queueOrder(p, i)
 	}
@@ -134,6 +135,17 @@ func (r *resolver) queueOrder(p *place, i int) {
 		q.fault("write weight for all of them, or wfq", "weight does not go together with wfq")
 	case here.Queue == nodes.QueueFIFO && here.Drop != above.Drop:
 		p.field("drop").fault("write the same for all fifo classes: they share a queue", "differs from the class %s", above.Name)
+	}
+}
+
+// transfersEnd checks that a class with an objective on transfers has some that
+// end.
+func (r *resolver) transfersEnd(p *place, c *Class) {
+	for _, l := range c.Objective {
+		if l.Figure < FigureTransferP50 || c.Traffic >= 0 && r.s.Traffic[c.Traffic].Model == ModelWeb || !p.given() {
+			continue
+		}
+		p.field(l.Figure.String()).fault("give the class traffic of the model web, or leave the objective out", "the class has no transfers that end")
 	}
 }
 

@@ -47,10 +47,13 @@ const (
 	FigurePDVP95
 	FigurePDVP99
 	FigurePDVP999
-	FigureIPDVP999 // inter-packet delay variation (RFC 3393)
-	FigureJitter   // interarrival jitter (RFC 3550)
-	FigureLoss     // ratio of packets lost
-	FigureOut      // longest outage
+	FigureIPDVP999    // inter-packet delay variation (RFC 3393)
+	FigureJitter      // interarrival jitter (RFC 3550)
+	FigureLoss        // ratio of packets lost
+	FigureOut         // longest outage
+	FigureTransferP50 // time from a request to the last byte, of a closed loop
+	FigureTransferP95
+	FigureTransferP99
 )
 
 // CommandOrder is how the commands of one set-up are given.
@@ -142,6 +145,7 @@ var (
 	figureWords    = []string{
 		"delay-mean", "delay-p50", "delay-p95", "delay-p99", "delay-p99.9",
 		"pdv-p50", "pdv-p95", "pdv-p99", "pdv-p99.9", "ipdv-p99.9", "jitter", "loss", "out",
+		"transfer-p50", "transfer-p95", "transfer-p99",
 	}
 	dropWords      = []string{"tail", "red", "codel", "fq-codel"} // in the order of nodes.DropPolicy
 	commandWords   = []string{"by-kind", "parallel", "sequence"}

@@ -103,6 +103,10 @@ type rawObjective struct {
 	Jitter    *des.Time `mapstructure:"jitter"`
 	Loss      *ratio    `mapstructure:"loss"`
 	Out       *des.Time `mapstructure:"out"`
+
+	TransferP50 *des.Time `mapstructure:"transfer-p50"`
+	TransferP95 *des.Time `mapstructure:"transfer-p95"`
+	TransferP99 *des.Time `mapstructure:"transfer-p99"`
 }
 
 type rawTraffic struct {

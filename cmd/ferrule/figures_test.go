@@ -12,8 +12,8 @@ func TestObjectivesNameFiguresOfAResult(t *testing.T) {
 	v := new(1.0)
 	all := result.Distribution{Min: v, Mean: v, P50: v, P95: v, P99: v, P999: v, Max: v}
 	o := result.Outcome{LossRatio: v, ThroughputBps: v, DelayS: all, PDVS: all, IPDVS: all, JitterS: v, ReorderedRatio: v,
-		OutageS: v, RecoveryS: v}
-	for f := scenarios.FigureDelayMean; f <= scenarios.FigureOut; f++ {
+		OutageS: v, RecoveryS: v, Transfers: &result.Transfers{TimeS: all}}
+	for f := scenarios.FigureDelayMean; f <= scenarios.FigureTransferP99; f++ {
 		if _, ok := o.Figure(f.String()); !ok {
 			t.Errorf("no result has a figure %q", f)
 		}

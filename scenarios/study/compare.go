@@ -210,7 +210,7 @@ func (f *pairing) compared(plan string) result.Compared {
 // headline lists the figures that are compared though they have no limit.
 var headline = []string{
 	result.FigLoss, result.FigThroughput, result.FigDelayMean, result.FigDelayP99, result.FigPDVP999,
-	result.FigReordered, result.FigOut, result.FigRecovery,
+	result.FigReordered, result.FigOut, result.FigRecovery, result.FigTransferP95, result.FigGoodput,
 }
 
 // pairs gathers figures over the samples of the plan, then those of the base.

@@ -277,7 +277,8 @@ func beyondOneIn(f scenarios.Figure) float64 {
 		return 100
 	case scenarios.FigureDelayP999, scenarios.FigurePDVP999, scenarios.FigureIPDVP999:
 		return 1000
-	case scenarios.FigureDelayMean, scenarios.FigureJitter, scenarios.FigureLoss, scenarios.FigureOut:
+	case scenarios.FigureDelayMean, scenarios.FigureJitter, scenarios.FigureLoss, scenarios.FigureOut,
+		scenarios.FigureTransferP50, scenarios.FigureTransferP95, scenarios.FigureTransferP99: // of transfers, not of packets
 		return 0
 	default:
 		panic("study: unknown figure " + f.String())

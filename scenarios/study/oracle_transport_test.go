@@ -15,7 +15,7 @@ func loopFile(transport, drop string) string {
 scenario: loop
 run: { length: 20s, warm-up: 2s }
 classes:
-  - { name: web, queue: weight 50%%, buffer: 40ms, traffic: pages, drop: %[2]s }
+  - { name: web, queue: weight 50%%, buffer: 40ms, traffic: pages, drop: %[2]s, objective: { transfer-p50: 1s, transfer-p95: 3ms } }
   - { name: bulk, queue: weight 50%%, buffer: 40ms, traffic: copies, drop: %[2]s }
 traffic:
   - { name: pages, model: web, size: { pareto: { mean: 80kB, shape: 1.5, at-most: 10MB } }, transport: %[1]s }
@@ -46,6 +46,9 @@ func TestClosedLoopInScenario(t *testing.T) {
 		}
 		if w.Complete < w.Asked-10 || w.TimeS.P95 == nil || *w.TimeS.Min < 0.004 || *w.TimeS.P95 > 2 {
 			t.Errorf("%s: %d of %d complete, times %+v", transport, w.Complete, w.Asked, w.TimeS)
+		}
+		if o := class(t, r, "web").Objective; o == nil || o.Met == nil || *o.Met || len(o.Misses) != 1 || o.Misses[0].Figure != "transfer-p95" {
+			t.Errorf("%s: objective %+v, want the one on the 95th percentile missed: it is less than two round trips", transport, o)
 		}
 		if got := *c.GoodputBps; got < 30e6 || got > 41e6 || c.Asked != 0 || c.Complete != 0 {
 			t.Errorf("%s: bulk gets %.3g bit/s; %d asked for and %d complete after the warm-up", transport, got, c.Asked, c.Complete)

@@ -189,9 +189,9 @@ const (
 // senseOf tells which way a figure of a class gets better.
 func senseOf(figure string) sense {
 	switch figure {
-	case result.FigThroughput:
+	case result.FigThroughput, result.FigGoodput:
 		return higherIsBetter
-	case result.FigOffered, result.FigDelivered, result.FigDuplicates, result.FigInside:
+	case result.FigTransfers, result.FigOffered, result.FigDelivered, result.FigDuplicates, result.FigInside:
 		return neither
 	}
 	if strings.HasPrefix(figure, result.FigLostPrefix) {
@@ -209,6 +209,8 @@ var figureOrder = []string{
 	"pdv-min", "pdv-mean", result.FigPDVP50, result.FigPDVP95, result.FigPDVP99, result.FigPDVP999, "pdv-max",
 	"ipdv-min", "ipdv-mean", "ipdv-p50", "ipdv-p95", result.FigIPDVP99, result.FigIPDVP999, "ipdv-max",
 	result.FigJitter, result.FigReordered, result.FigOut, result.FigRecovery,
+	result.FigTransfers, "transfer-min", result.FigTransferMean, result.FigTransferP50, result.FigTransferP95, result.FigTransferP99,
+	"transfer-p99.9", "transfer-max", result.FigGoodput, result.FigResent, result.FigTimeouts,
 }
 
 // rankOf is the place of a figure in that order; figures that are not listed
