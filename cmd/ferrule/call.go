@@ -32,6 +32,7 @@ type call struct {
 	level  string
 	gate   gateFlag
 	resume string
+	in     input  // what was loaded
 	again  string // the command that makes the same again
 }
 
@@ -81,6 +82,7 @@ func (c *call) begin(cmd *cobra.Command, args []string) (scenario, options, erro
 		return nil, options{}, err
 	}
 	in.sets, in.cuts = c.sets, c.cuts
+	c.in = in
 	sc, err := c.env.Studio.Load(in)
 	if err != nil {
 		return nil, options{}, fmt.Errorf("the scenario is not sound:\n%w", err)

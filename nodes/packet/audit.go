@@ -164,6 +164,8 @@ type PortReport struct {
 	Utilisation float64 // share of the time its line was busy
 	Service     float64 // ps: mean line time
 	ServiceCoV2 float64 // squared coefficient of variation of line times
+	Gap         float64 // ps: mean gap between arrivals, of all classes
+	GapCoV2     float64 // squared coefficient of variation of gaps
 }
 
 // PortReports lists the ports that sent or lost anything, by site and circuit.
@@ -199,6 +201,12 @@ func (n *Network) PortReports() []PortReport {
 				r.Service = float64(c.service-m.service) / sent
 				if mean2 := float64(r.Service * r.Service); mean2 > 0 {
 					r.ServiceCoV2 = max(0, (c.service2-m.service2)/sent/mean2-1)
+				}
+			}
+			if n := float64(r.Arrived); n > 0 {
+				r.Gap = float64(c.lastIn-m.lastIn) / n
+				if mean2 := float64(r.Gap * r.Gap); mean2 > 0 {
+					r.GapCoV2 = max(0, (c.gap2-m.gap2)/n/mean2-1)
 				}
 			}
 			r.Utilisation = float64(c.service-m.service) / span

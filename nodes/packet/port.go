@@ -56,6 +56,8 @@ type portCount struct {
 	service     des.Time // line time
 	service2    float64  // ps^2: sum of squares of line times
 	packetsIn   uint64
+	lastIn      des.Time // of the newest arrival
+	gap2        float64  // ps^2: sum of squares of the gaps between arrivals
 }
 
 // segment serves the arrivals of the segment that ends at end.
@@ -136,6 +138,9 @@ func (q *port) serveMany(s *Site) {
 // at one instant arrivals come before decisions.
 func (q *port) arrive(s *Site, p *nodes.Packet, next des.Time) {
 	t := p.Due
+	gap := float64(t - q.count.lastIn)
+	q.count.gap2 += float64(gap * gap)
+	q.count.lastIn = t
 	if q.state != nodes.PortDown {
 		if q.waiting > 0 && q.free < t {
 			q.catch(s, t)

@@ -45,6 +45,21 @@ type Port struct {
 	MeanWaitS      *float64 `json:"mean_wait_s,omitempty"`
 	MeanQueueBytes *float64 `json:"mean_queue_bytes,omitempty"`
 	MaxQueueBytes  *int64   `json:"max_queue_bytes,omitempty"`
+
+	Theory *Theory `json:"theory,omitempty"` // absent when nothing arrived or the port was never free
+}
+
+// Theory is a second opinion on the mean wait of a port, by queueing theory
+// from the moments measured at the port itself.
+type Theory struct {
+	MeanGapS     float64 `json:"mean_gap_s"`     // between arrivals
+	GapCoV2      float64 `json:"gap_cov2"`       // squared coefficient of variation; 1 for Poisson arrivals
+	MeanServiceS float64 `json:"mean_service_s"` // on the line
+	ServiceCoV2  float64 `json:"service_cov2"`
+	WaitS        float64 `json:"wait_s"`            // M/G/1: as if arrivals were a Poisson process
+	CeilingS     float64 `json:"ceiling_s"`         // Kingman: no queue with independent gaps waits longer on average
+	Parts        bool    `json:"parts,omitempty"`   // measured and predicted differ
+	Because      string  `json:"because,omitempty"` // why that is expected
 }
 
 // A Fibre is how one fibre pair was used at the end of a run.

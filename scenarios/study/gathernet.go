@@ -125,6 +125,7 @@ func (g *gatherer) ports() {
 			x.MeanWaitS = &wait
 			queue := p.MeanQueue * float64(p.IPBytes) / float64(p.Sent)
 			x.MeanQueueBytes = &queue
+			x.Theory = g.theory(&p)
 		}
 		g.r.Ports = append(g.r.Ports, x)
 	}

@@ -100,3 +100,22 @@ func (d *doc) within(r *result.Run) {
 	}
 	d.grid(g)
 }
+
+// opinions sets the waits of ports beside those that theory predicts.
+func (d *doc) opinions(ps []result.Port) {
+	g := columns(abbreviated("circuit"), abbreviated("from"), right("mean wait"), right("theory"), right("ceiling"), right("gaps"), right("services"),
+		wrapped("they part because"))
+	for _, p := range ps[:min(len(ps), d.rows)] {
+		if t := p.Theory; t != nil {
+			s := result.UnitSeconds
+			g.add(name(p.Circuit), name(p.From), optional(p.MeanWaitS, s), number(t.WaitS, s), number(t.CeilingS, s),
+				plainNumber(&t.GapCoV2), plainNumber(&t.ServiceCoV2), name(t.Because))
+		}
+	}
+	if len(g.rows) == 0 {
+		return
+	}
+	d.heading(word("SECOND OPINION, mean waits by queueing theory from what each port measured"))
+	d.grid(g)
+	d.line(word("Theory: as if packets came at random. Ceiling: with any independent gaps. Gaps, services: squared variation."))
+}

@@ -154,6 +154,7 @@ func (d *doc) ports(ps []result.Port) {
 	}
 	d.grid(g)
 	d.rest(len(ps), "ports")
+	d.opinions(ps)
 }
 
 func busy(p result.Port) float64 {

@@ -76,6 +76,8 @@ func sampleRun() *result.Run {
 		Ports: []result.Port{
 			{Circuit: "th", From: "holm", LostPackets: result.Losses{}},
 			{Circuit: "th", From: "tarn", Utilisation: new(0.4321), SentPackets: 99, MeanWaitS: new(1.23e-6),
+				Theory: &result.Theory{MeanGapS: 2e-5, GapCoV2: 1.83, MeanServiceS: 9e-6, ServiceCoV2: 0.42, WaitS: 5.1e-6, CeilingS: 7.7e-6, Parts: true,
+					Because: "arrivals come in bursts, more than those of a Poisson process"},
 				MeanQueueBytes: new(345.6), MaxQueueBytes: new(int64(61500)), LostPackets: result.Losses{{Cause: "queue", Packets: 12}}},
 			{Circuit: "hn", From: "holm", Utilisation: new(0.91), LostPackets: result.Losses{}},
 		},
