@@ -50,6 +50,13 @@ type options struct {
 	store    store                     // of finished replications; nil: none
 	runs     bool                      // batch and compare also hand out the runs of the first seed
 	progress func(done, total float64) // may be called from any goroutine
+	measured sheet                     // to which a check is held; no name: none
+}
+
+// A sheet is a file of rows.
+type sheet struct {
+	name string
+	data []byte
 }
 
 // A store keeps finished replications: study.Store.

@@ -25,7 +25,9 @@ func TestSetsOfTheEnvironment(t *testing.T) {
 		env := Env{
 			Files: disk{}, Out: &out, ErrOut: &errOut, Studio: fakeStudio{},
 			IsTTY: func(io.Writer) bool { return false }, Getenv: func(string) string { return "" },
-			Environ: func() []string { return []string{"FERRULE_SET_2=b=2", "SHELL=sh", "FERRULE_SET_1=a=x=1", "NO_FERRULE_SET_3=d=4"} },
+			Environ: func() []string {
+				return []string{"FERRULE_SET_2=b=2", "SHELL=sh", "FERRULE_SET_1=a=x=1", "NO_FERRULE_SET_3=d=4"}
+			},
 		}
 		path := file(t, "sound")
 		args := append([]string{"run", path, "--format", "json", "--out", path + ".html"}, x.more...)

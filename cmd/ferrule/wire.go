@@ -83,5 +83,16 @@ func (l loaded) Failures(ctx context.Context, opt options, w study.Sweep) (*resu
 }
 
 func (l loaded) Check(ctx context.Context, opt options) (*result.Check, error) {
-	return study.Check(ctx, l.sc, opt.study())
+	var ms []scenarios.Measured
+	if opt.measured.name != "" {
+		var err error
+		if ms, err = scenarios.ParseMeasured(opt.measured.name, opt.measured.data, l.sc); err != nil {
+			return nil, err
+		}
+	}
+	r, err := study.Check(ctx, l.sc, opt.study())
+	if err == nil && ms != nil {
+		r.Measured, err = study.Calibrate(l.sc, opt.study(), ms)
+	}
+	return r, err
 }

@@ -223,6 +223,12 @@ func (t *longTable) check(c *Check) {
 		t.optional("link", name, "", "worst-utilisation", UnitRatio, l.WorstUtilisation)
 		t.optional("link", name, "", "growth-left", UnitRatio, l.GrowthLeft)
 	}
+	for _, m := range c.Measured {
+		name := m.Of + " from " + m.From + " to " + m.To
+		t.value(m.What, name, "", "measured", m.Unit, m.Measured)
+		t.optional(m.What, name, "", "model", m.Unit, m.Model)
+		t.optional(m.What, name, "", "model-minus-measured", m.Unit, m.Difference)
+	}
 	for _, a := range c.Candidates {
 		t.value("candidate", a.Aggregate, "", "load", UnitBps, a.Bps)
 		t.count("candidate", a.Aggregate, "routers-passed", UnitCount, a.RoutersPassed)

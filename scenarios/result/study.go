@@ -265,6 +265,8 @@ type Check struct {
 	Estimate   Estimate    `json:"estimate"`
 	Defaults   []Default   `json:"defaults"`
 	Cautions   []string    `json:"cautions"`
+
+	Measured []Calibration `json:"measured,omitempty"` // if there are measurements to compare with
 }
 
 // A Link is the load of one direction of a circuit, as routed.

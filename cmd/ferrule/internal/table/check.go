@@ -11,6 +11,7 @@ import (
 func (d *doc) check(c *result.Check) {
 	d.title("Check", c.Head, word(": plan "), name(c.Plan))
 	d.links(c.Links)
+	d.calibration(c.Measured)
 	d.findings(c.Findings)
 	d.candidates(c.Candidates)
 	d.heading(word("ESTIMATE"))
