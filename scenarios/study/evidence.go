@@ -68,6 +68,13 @@ func (f *pairing) contrast(s *series) contrast {
 	return x
 }
 
+// leastPairs is how many pairs a correlation takes: any two lie on a line. dust
+// is the gain from which on the differences vary by no more than rounding does.
+const (
+	leastPairs = 3
+	dust       = 1e9
+)
+
 // weigh sets what was tried against what was there before, pair by pair.
 func (x *contrast) weigh(tried, had []float64, by terms) {
 	t := measure.PairedT(tried, had, by.level)
@@ -86,10 +93,10 @@ func (x *contrast) weigh(tried, had []float64, by terms) {
 		}
 	}
 	x.P = new(max(t.P, measure.LeastP(differ)))
-	if !math.IsNaN(t.Correlation) {
+	if len(had) >= leastPairs && !math.IsNaN(t.Correlation) {
 		x.Correlation = new(t.Correlation)
 	}
-	if !math.IsNaN(t.Gain) && t.Gain > 0 {
+	if len(had) >= leastPairs && t.Gain > 0 && t.Gain < dust { // a NaN is neither
 		x.PairingGain = new(t.Gain)
 	}
 	if least := by.margin * scaleOf(&x.Difference); least > 0 {

@@ -280,7 +280,7 @@ func (d *doc) stopping(s *result.Stopping) {
 	cells := []cell{word("relative precision of "), limit(s.Precision, result.UnitRatio), word(" asked for "), word(figureName(s.Figure)),
 		word(", "), count(s.AtMost, "seeds"), word(" at most: "), word(what)}
 	if s.Worst != "" {
-		cells = append(cells, word("; widest "), name(s.Worst), word(", half-width over mean "), limit(s.WorstHalf, result.UnitRatio))
+		cells = append(cells, word("; widest "), name(s.Worst), word(", half-width over mean "), number(s.WorstHalf, result.UnitRatio))
 	}
 	d.line(cells...)
 	looks := make([]cell, len(s.Looks))
