@@ -323,7 +323,7 @@ func (g *gatherer) cautions() {
 	for i := range sc.Classes {
 		for j := range sc.Aggregates {
 			a := &sc.Aggregates[j]
-			if int(a.Class) == i && sc.Traffic[a.Traffic].Model == scenarios.ModelFiles && !slices.Contains(open, sc.Classes[i].Name) {
+			if m := sc.Traffic[a.Traffic].Model; int(a.Class) == i && (m == scenarios.ModelFiles || m == scenarios.ModelPages) && !slices.Contains(open, sc.Classes[i].Name) {
 				open = append(open, sc.Classes[i].Name)
 			}
 		}
