@@ -94,6 +94,7 @@ func foldBatch(plan string, samples []*sample, level float64) *result.Batch {
 	if len(divided) > 0 {
 		b.Cautions = append(b.Cautions, "Limits met in some seeds only: "+shortList(divided)+".")
 	}
+	b.Cautions = append(b.Cautions, lossless(b.Figures)...)
 	if len(samples) == 1 {
 		b.Cautions = append(b.Cautions, "One seed says nothing about chance: there is no interval.")
 	}
@@ -180,6 +181,25 @@ func cautionsOf(samples []*sample) []string {
 		}
 	}
 	return out
+}
+
+// lossless says what a loss of zero in every seed bounds: not the ratio, for
+// losses come in clumps, but how often a run of this length has any.
+func lossless(figures []result.Mean) []string {
+	var none []string
+	seeds := int64(0)
+	for _, m := range figures {
+		if m.Figure == result.FigLoss && m.Mean != nil && *m.Mean == 0 {
+			none = append(none, m.Class+" "+strings.ToUpper(m.Period))
+			if seeds == 0 || m.Seeds < seeds {
+				seeds = m.Seeds
+			}
+		}
+	}
+	if none == nil {
+		return nil
+	}
+	return []string{fmt.Sprintf("Nothing was lost of %s: %s. That bounds episodes of loss, not their size.", shortList(none), noneSeen(seeds))}
 }
 
 // warmUpsDiffer says so when the warm-up is not the same in all samples.

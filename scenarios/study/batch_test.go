@@ -212,3 +212,23 @@ func TestProgress(t *testing.T) {
 		t.Errorf("ended at %v after %d calls, want 20 after 40", last, calls)
 	}
 }
+
+// A loss that was never seen is no loss of zero: 1 - 0.05^(1/10) = 0.259 of all
+// runs may still have one (Hanley and Lippman-Hand, 1983).
+func TestBatchLossless(t *testing.T) {
+	samples := hands(1, 2, 3, 4, 5, 6, 7, 8, 9, 10)
+	for _, s := range samples {
+		for i := range s.figures {
+			if s.figures[i].figure == result.FigLoss {
+				s.figures[i].value = new(0.0)
+			}
+		}
+	}
+	text := strings.Join(foldBatch("as-is", samples, 0.95).Cautions, "\n")
+	if !strings.Contains(text, "Nothing was lost of voice NORMAL: no loss in 10 seeds: at 95 % at most 26 of 100 such runs have an episode of loss") {
+		t.Errorf("cautions %q", text)
+	}
+	if text = strings.Join(foldBatch("as-is", hands(1, 2), 0.95).Cautions, "\n"); strings.Contains(text, "Nothing was lost") {
+		t.Errorf("of a loss of 1 %%: %q", text)
+	}
+}
