@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"slices"
 
 	"ferrule/des"
 	"ferrule/nodes"
@@ -259,7 +260,7 @@ func (s *Session) Snapshot() *Snapshot {
 	s.last = s.look()
 	now := &s.last
 	g := newGatherer(s.m, true)
-	g.end = now.at
+	g.end = now.at + des.Picosecond // what has come to pass by now is shown
 	g.circuits()
 	g.fibres()
 	g.steps()
@@ -284,11 +285,16 @@ func (s *Session) Snapshot() *Snapshot {
 		x.Classes = append(x.Classes, y)
 	}
 	for _, way := range g.ways {
-		if by := s.m.Control.Carried(way); len(by) > 0 {
+		if by := s.m.Control.Carried(way); slices.ContainsFunc(by, s.isForMoved) {
 			x.Moved = append(x.Moved, MovedNow{g.wayName(way), by})
 		}
 	}
 	return x
+}
+
+// isForMoved reports whether a circuit carries only what is moved onto it.
+func (s *Session) isForMoved(circuit string) bool {
+	return slices.ContainsFunc(s.m.Plan.Circuits, func(c scenarios.Circuit) bool { return c.Name == circuit && c.Carries == nodes.CarriesMoved })
 }
 
 // loads are what ports sent between two looks, per second.

@@ -37,6 +37,8 @@ type visit struct {
 	t   *testing.T
 	mu  sync.Mutex
 	bad []string
+
+	home string // what requests may begin with besides file: and data:
 }
 
 func (v *visit) note(format string, args ...any) {
@@ -130,10 +132,16 @@ func open(t *testing.T, browser context.Context, r result.Result, scheme string,
 	v := &visit{ctx: ctx, t: t}
 	v.watch()
 	v.call(chromedp.EmulateViewport(wide, high))
-	_, err = chromedp.Call(ctx, emulation.SetEmulatedMedia, emulation.SetEmulatedMediaParams{Features: []*emulation.MediaFeature{{Name: "prefers-color-scheme", Value: scheme}}})
-	v.must(err)
+	v.scheme(scheme)
 	v.call(chromedp.Navigate("file://" + file))
 	return v
+}
+
+// scheme sets the colour scheme that the reader wishes.
+func (v *visit) scheme(name string) {
+	v.t.Helper()
+	_, err := chromedp.Call(v.ctx, emulation.SetEmulatedMedia, emulation.SetEmulatedMediaParams{Features: []*emulation.MediaFeature{{Name: "prefers-color-scheme", Value: name}}})
+	v.must(err)
 }
 
 // watch notes console errors, exceptions, violations of the policy and every
@@ -148,7 +156,7 @@ func (v *visit) watch() {
 		case *weblog.EventEntryAdded:
 			v.note("log: %s %s", ev.Entry.Level, ev.Entry.Text)
 		case *network.EventRequestWillBeSent:
-			if !strings.HasPrefix(ev.Request.URL, "file://") && !strings.HasPrefix(ev.Request.URL, "data:") {
+			if (v.home == "" || !strings.HasPrefix(ev.Request.URL, v.home)) && !strings.HasPrefix(ev.Request.URL, "file://") && !strings.HasPrefix(ev.Request.URL, "data:") {
 				v.note("request: %s", ev.Request.URL)
 			}
 		}

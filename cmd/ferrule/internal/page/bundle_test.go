@@ -12,12 +12,18 @@ import (
 
 var update = flag.Bool("update", false, "write the bundle anew")
 
-// The committed bundle is what its sources give, byte for byte.
+// The committed bundles are what their sources give, byte for byte.
 func TestBundleIsFresh(t *testing.T) {
+	fresh(t, "web/main.ts", "dist/page.js", licences(t))
+	fresh(t, "web/console.ts", "dist/console.js", "")
+}
+
+func fresh(t *testing.T, entry, file, head string) {
+	t.Helper()
 	r := api.Build(api.BuildOptions{
-		EntryPoints: []string{"web/main.ts"}, Bundle: true, Format: api.FormatIIFE, Target: api.ES2022, Charset: api.CharsetASCII,
+		EntryPoints: []string{entry}, Bundle: true, Format: api.FormatIIFE, Target: api.ES2022, Charset: api.CharsetASCII,
 		MinifyWhitespace: true, MinifyIdentifiers: true, MinifySyntax: true, LegalComments: api.LegalCommentsNone,
-		Banner: map[string]string{"js": licences(t)}, Outfile: "page.js", LogLevel: api.LogLevelSilent,
+		Banner: map[string]string{"js": head}, Outfile: "page.js", LogLevel: api.LogLevelSilent,
 	})
 	for _, e := range append(r.Errors, r.Warnings...) {
 		at := ""
@@ -31,19 +37,19 @@ func TestBundleIsFresh(t *testing.T) {
 	}
 	built := r.OutputFiles[0].Contents
 	if *update {
-		if err := os.WriteFile("dist/page.js", built, 0o644); err != nil {
+		if err := os.WriteFile(file, built, 0o644); err != nil {
 			t.Fatal(err)
 		}
 	}
-	committed, err := os.ReadFile("dist/page.js")
+	committed, err := os.ReadFile(file)
 	if err != nil {
 		t.Fatal(err)
 	}
 	if !bytes.Equal(built, committed) {
-		t.Errorf("dist/page.js has %d bytes, its sources give %d other ones: run go generate", len(committed), len(built))
+		t.Errorf("%s has %d bytes, its sources give %d other ones: run go generate", file, len(committed), len(built))
 	}
 	if low := strings.ToLower(string(committed)); strings.Contains(low, "</script") || strings.Contains(low, "<!--") || strings.Contains(low, "sourcemappingurl") {
-		t.Error("the bundle cannot stand inside a page")
+		t.Errorf("%s cannot stand inside a page", file)
 	}
 }
 

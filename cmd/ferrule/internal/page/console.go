@@ -34,6 +34,9 @@ var openAPI []byte
 //go:embed console.html
 var consolePage []byte
 
+//go:embed console.css
+var consoleStyle string
+
 //go:embed dist/console.js
 var consoleProgram string
 
@@ -117,7 +120,7 @@ func (c *Console) routes() []route {
 	return []route{
 		{"GET", "/", file("text/html; charset=utf-8", consolePage), nil},
 		{"GET", "/console.js", file("text/javascript; charset=utf-8", []byte(consoleProgram)), nil},
-		{"GET", "/console.css", file("text/css; charset=utf-8", []byte(variables()+style)), nil},
+		{"GET", "/console.css", file("text/css; charset=utf-8", []byte(variables()+style+consoleStyle)), nil},
 		{"GET", "/openapi.json", file("application/json", openAPI), nil},
 		{"GET", "/api/sessions", c.list, nil},
 		{"POST", "/api/sessions", c.begin, nil},

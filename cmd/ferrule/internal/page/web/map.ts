@@ -187,7 +187,7 @@ function lower(run: Run, g: Ground, t: number, used: Map<string, number>): SVGEl
     const taken = used.get(f.name) ?? 0;
     const full = f.slots > 0 ? Math.min(taken / f.slots, 1) : 0;
     const w = bore(f) * g.fine;
-    const item = svg("g", {}, svg("title", {}, `${f.name}: ${f.length_km} km, ${f.channels ?? 0} channels, ${taken} of ${f.slots} slots taken` +
+    const item = svg("g", { "data-fibre": f.name }, svg("title", {}, `${f.name}: ${f.length_km} km, ${f.channels ?? 0} channels, ${taken} of ${f.slots} slots taken` +
       (f.risk_groups ? `; shares ${f.risk_groups.join(", ")}` : "")));
     item.append(svg("path", { class: "fibre-wall", d: path([a, b]), "stroke-width": w + 2 }));
     item.append(svg("path", { class: "fibre-bore", d: path([a, b]), "stroke-width": w }));
