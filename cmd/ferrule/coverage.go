@@ -52,18 +52,26 @@ type covered struct {
 	note              string
 }
 
+// leastJudged is how many experiments a line takes to be judged: fewer tell 95
+// from 90 of 100 by luck alone.
+const leastJudged = 100
+
 // coverageTable lays lines out in markdown.
 func coverageTable(lines []covered) string {
 	var b strings.Builder
 	b.WriteString("| run | what | truth | hits | of | share | asked for | |\n| --- | --- | ---: | ---: | ---: | ---: | ---: | --- |\n")
 	for _, l := range lines {
-		share, verdict := "-", "nothing to judge"
+		share, verdict := "-", "too few to judge"
+		s := float64(l.hits) / float64(l.experiments)
 		if l.experiments > 0 {
-			s := float64(l.hits) / float64(l.experiments)
-			share, verdict = strconv.FormatFloat(100*s, 'f', 1, 64)+" %", "ok"
-			if s < l.low || s > l.high {
-				verdict = "OUTSIDE"
-			}
+			share = strconv.FormatFloat(100*s, 'f', 1, 64) + " %"
+		}
+		switch {
+		case l.experiments < leastJudged:
+		case s < l.low || s > l.high:
+			verdict = "OUTSIDE"
+		default:
+			verdict = "ok"
 		}
 		fmt.Fprintf(&b, "| %s | %s | %s | %d | %d | %s | %.1f to %.1f %% | %s |\n", l.cell, l.what, l.truth, l.hits, l.experiments, share,
 			100*l.low, 100*l.high, strings.TrimSuffix(verdict+"; "+l.note, "; "))

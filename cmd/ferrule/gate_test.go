@@ -88,7 +88,7 @@ func fakeGates(text string, plans ...string) []result.Gate {
 func TestCoverageTable(t *testing.T) {
 	status, out, errOut := try(t.Context(), false, nil, "coverage")
 	if status != 0 || !strings.Contains(out, "| 380 | 400 | 95.0 % | 92.0 to 98.0 % | ok |") ||
-		!strings.Contains(out, "| 75.0 % | 92.0 to 98.0 % | OUTSIDE; a note |") || !strings.Contains(out, "nothing to judge") {
+		!strings.Contains(out, "| 75.0 % | 92.0 to 98.0 % | OUTSIDE; a note |") || !strings.Contains(out, "too few to judge") {
 		t.Errorf("status %d\n%s%s", status, out, errOut)
 	}
 	for _, args := range []string{"--experiments 9", "--seconds 0", "--seconds NaN", "x"} {

@@ -12,7 +12,7 @@ import (
 // central 99.9 % of its binomial law. DEVELOPERS.md holds the whole study.
 func TestCoverage(t *testing.T) {
 	const experiments = 20
-	lines, err := Coverage(t.Context(), Options{}, experiments, 4)
+	lines, err := Coverage(t.Context(), Options{}, experiments, 2)
 	if err != nil {
 		t.Fatal(err)
 	}
