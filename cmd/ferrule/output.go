@@ -120,6 +120,9 @@ func commandLine(cmd *cobra.Command, args []string) string {
 			return // they do not change the result
 		}
 		for _, v := range values {
+			if f.Name == "acts" {
+				v = filepath.Base(v)
+			}
 			words = append(words, "--"+f.Name, quoted(v))
 		}
 	})

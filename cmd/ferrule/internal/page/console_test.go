@@ -16,7 +16,9 @@ import (
 	"testing"
 	"time"
 
+	"ferrule/des"
 	"ferrule/scenarios"
+	"ferrule/scenarios/library"
 	"ferrule/scenarios/result"
 	"ferrule/scenarios/study"
 )
@@ -440,6 +442,37 @@ func TestStalledReadersAreDropped(t *testing.T) {
 	}
 	if readers != all-stalled {
 		t.Errorf("%d of %d readers were given something", readers, all-stalled)
+	}
+}
+
+// Looking at the demo ten times a second and telling it costs less than a tenth
+// of the time.
+func TestUpdatesAreCheap(t *testing.T) {
+	data, files, err := library.Open(library.Demo)
+	if err != nil {
+		t.Fatal(err)
+	}
+	sc, err := scenarios.Load("demo", data, files, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	s, err := study.NewSession(t.Context(), sc, study.Options{Cores: 1})
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer s.Close()
+	l := newLive(s)
+	s.Advance(des.Second/2, nil)
+	best := time.Hour // others may be at work on this machine
+	for range 20 {
+		s.Advance(s.Now()+des.Millisecond, nil)
+		began := time.Now()
+		l.publish()
+		best = min(best, time.Since(began))
+	}
+	t.Logf("an update takes %v and has %d bytes", best, len(l.latest().data))
+	if best > updateEvery/10 {
+		t.Errorf("an update takes %v of every %v", best, updateEvery)
 	}
 }
 
