@@ -6,6 +6,7 @@ import (
 	"reflect"
 	"slices"
 	"strconv"
+	"strings"
 
 	"go.yaml.in/yaml/v3"
 
@@ -145,28 +146,25 @@ func (s *Scenario) ReadSession(name string, data []byte) (*Session, error) {
 	return ses, nil
 }
 
-// ReadAct reads one line of Words.Line under a plan of Stage. An error is of
-// type Problems.
-func (s *Scenario) ReadAct(line string, plan *Plan) (Act, error) {
+// ReadActs reads lines of Words.Line, in order of time, under a plan of Stage.
+// An error is of type Problems.
+func (s *Scenario) ReadActs(lines []string, plan *Plan) ([]Act, error) {
 	const name = "act"
-	data := []byte("acts:\n  - " + line + "\n")
+	data := []byte("acts:\n  - " + strings.Join(lines, "\n  - ") + "\n")
 	f := &faults{files: []string{name}}
 	t := parseTree(name, data, f)
 	if t == nil {
-		return Act{}, f.err()
+		return nil, f.err()
 	}
 	sh := &shaper{t: t, spoilt: map[*yaml.Node]bool{}}
 	sh.mapping(t.top(), reflect.TypeFor[rawSession]())
 	var raw rawSession
 	t.read(data, nil, &raw)
 	if err := f.err(); err != nil {
-		return Act{}, err
+		return nil, err
 	}
 	acts := s.sessionActs(t, sh.spoilt, raw.Acts, plan)
-	if err := f.err(); err != nil {
-		return Act{}, err
-	}
-	return acts[0], nil
+	return acts, f.err()
 }
 
 // sessionActs resolves acts whose circuits are all known.
@@ -213,6 +211,12 @@ func (s *Scenario) sessionActs(t *tree, spoilt map[*yaml.Node]bool, raw []rawAct
 			p.field("at").fault("list acts in order of time", "%s is before the act above it", FormatTime(a.At))
 		}
 		last = a.At
+		for j := len(acts) - 1; j >= 0 && acts[j].At == a.At; j-- {
+			if b := &acts[j]; contradict(b, &a) {
+				p.fault("let the clock run between them", "%s %s and %s %s contradict each other at %s", b.Verb, b.Subject, a.Verb, a.Subject, FormatTime(a.At))
+				break
+			}
+		}
 		acts = append(acts, a)
 	}
 	return acts

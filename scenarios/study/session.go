@@ -27,8 +27,11 @@ type Session struct {
 	found *foundWarmUp
 	close func()
 	lines []string
+	acted des.Time // instant of the last act that was asked for
 	over  bool
-	last  seen
+
+	before int // lines of earlier instants
+	last   seen
 }
 
 // foundWarmUp is what pilots said of a warm-up.
@@ -103,7 +106,8 @@ func (s *Session) Advance(to des.Time, stop func() bool) {
 }
 
 // Act does w now: it happens before anything else of this instant. The error
-// says what is wrong with w. A refusal by the controller is no error: it comes
+// says what is wrong with w, also that it contradicts what was done at this
+// instant. A refusal by the controller is no error: it comes
 // in the steps of a Snapshot.
 func (s *Session) Act(w *scenarios.Words) error {
 	switch {
@@ -112,12 +116,15 @@ func (s *Session) Act(w *scenarios.Words) error {
 	case len(s.lines) >= MostActs:
 		return fmt.Errorf("a session takes %d acts at most", MostActs)
 	}
+	if s.acted != s.Now() {
+		s.acted, s.before = s.Now(), len(s.lines)
+	}
 	line := w.Line(s.Now())
-	a, err := s.file.ReadAct(line, s.m.Plan)
+	acts, err := s.file.ReadActs(append(slices.Clone(s.lines[s.before:]), line), s.m.Plan)
 	if err != nil {
 		return err
 	}
-	s.m.Do(&a)
+	s.m.Do(&acts[len(acts)-1])
 	s.lines = append(s.lines, line)
 	return nil
 }

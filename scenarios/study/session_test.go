@@ -190,12 +190,34 @@ func TestActsAreChecked(t *testing.T) {
 			t.Errorf("%+v: %v, want %q", c.w, err, c.want)
 		}
 	}
-	if saved := string(s.Saved()); !strings.HasSuffix(saved, "acts: []\n") {
+	if err := s.Act(&scenarios.Words{Cut: "tarn-holm"}); err != nil {
+		t.Error(err)
+	}
+	if err := s.Act(&scenarios.Words{Repair: "tarn-holm"}); err == nil || !strings.Contains(err.Error(), "contradict each other") {
+		t.Errorf("a repair at the instant of the cut: %v", err)
+	}
+	s.Advance(11*des.Millisecond, nil)
+	if err := s.Act(&scenarios.Words{Repair: "tarn-holm"}); err != nil {
+		t.Error(err)
+	}
+	if saved := string(s.Saved()); strings.Count(saved, "  - {at: ") != 2 {
 		t.Errorf("saved %s", saved)
 	}
 	s.Advance(des.Minute, nil)
 	if err := s.Act(&scenarios.Words{Cut: "tarn-holm"}); err == nil || !s.Over() {
 		t.Errorf("an act after the end: %v", err)
+	}
+}
+
+// A session in which nothing is done is saved too.
+func TestNothingIsSaved(t *testing.T) {
+	s, err := study.NewSession(t.Context(), coast(t), study.Options{Cores: 1})
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer s.Close()
+	if saved := string(s.Saved()); !strings.HasSuffix(saved, "acts: []\n") {
+		t.Errorf("saved %s", saved)
 	}
 }
 
