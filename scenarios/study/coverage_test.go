@@ -23,7 +23,7 @@ func TestCoverage(t *testing.T) {
 			continue // too few were given an interval to be judged
 		}
 		judged++
-		low, high := 0, c.Experiments
+		var low, high int
 		switch {
 		case strings.Contains(c.What, "within the run"): // a skewed law and few batches: short runs are known to cover less
 			low, high = measure.CoverageRange(c.Experiments, 0.91, 0.999)
