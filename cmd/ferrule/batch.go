@@ -20,7 +20,7 @@ const (
 )
 
 func newBatch(env Env) *cobra.Command {
-	c := &call{env: env}
+	c := &call{env: env, writes: suffixes{html: true, xml: true}}
 	plan, n, within := asIs, 8, ""
 	p := precision{figure: result.FigDelayP99, atMost: defaultCap}
 	cmd := &cobra.Command{

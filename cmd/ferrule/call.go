@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"io/fs"
+	"path/filepath"
 	"runtime"
 	"slices"
 	"strings"
@@ -32,8 +33,23 @@ type call struct {
 	level  string
 	gate   gateFlag
 	resume string
-	in     input  // what was loaded
-	again  string // the command that makes the same again
+	writes suffixes // beside the forms that every study has
+	in     input    // what was loaded
+	again  string   // the command that makes the same again
+}
+
+// suffixes are forms of file that not every study can be written in.
+type suffixes struct{ html, xml bool }
+
+// suitable refuses a file that the study cannot fill, before anything runs.
+func (s suffixes) suitable(study, path string) error {
+	switch ext := filepath.Ext(path); {
+	case ext == ".html" && !s.html:
+		return fmt.Errorf("%s: %s has no report; end the file in .json, .csv, .md or .txt", path, study)
+	case ext == ".xml" && !s.xml:
+		return fmt.Errorf("%s: only batch and compare say how objectives stand; end the file in .json, .csv, .md or .txt", path)
+	}
+	return nil
 }
 
 // flags adds the flags that all studies share to cmd.
@@ -64,6 +80,9 @@ func (c *call) begin(cmd *cobra.Command, args []string) (scenario, options, erro
 	}
 	for _, path := range c.outs {
 		if _, err := c.formatOf(path); err != nil {
+			return nil, options{}, fmt.Errorf("--out: %w", err)
+		}
+		if err := c.writes.suitable(cmd.Name(), path); err != nil {
 			return nil, options{}, fmt.Errorf("--out: %w", err)
 		}
 	}

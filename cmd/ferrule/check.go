@@ -1,7 +1,6 @@
 package main
 
 import (
-	"errors"
 	"fmt"
 	"time"
 
@@ -19,9 +18,6 @@ func newCheck(env Env) *cobra.Command {
 		Example: "  ferrule check coast.yaml --set aggregates.video-tn.load=600Mbps",
 		Args:    atMostOne,
 		RunE: func(cmd *cobra.Command, args []string) error {
-			if c.asksPage() {
-				return errors.New("--out: a check has no report; end the file in .json, .csv, .md or .txt")
-			}
 			sc, opt, err := c.begin(cmd, args)
 			if err != nil {
 				return err

@@ -18,7 +18,7 @@ const (
 )
 
 func newCompare(env Env) *cobra.Command {
-	c := &call{env: env}
+	c := &call{env: env, writes: suffixes{html: true, xml: true}}
 	base, n, margin := asIs, defaultCompare, "1%"
 	var only, growth []string
 	cmd := &cobra.Command{

@@ -1,7 +1,6 @@
 package main
 
 import (
-	"errors"
 	"fmt"
 	"math"
 	"slices"
@@ -45,9 +44,6 @@ func newFailures(env Env) *cobra.Command {
 			w, err := s.sweep()
 			if err != nil {
 				return err
-			}
-			if c.asksPage() {
-				return errors.New("--out: failures have no report; end the file in .json, .csv, .md or .txt")
 			}
 			sc, opt, err := c.begin(cmd, args)
 			if err != nil {

@@ -11,7 +11,7 @@ import (
 )
 
 func newRun(env Env) *cobra.Command {
-	c := &call{env: env}
+	c := &call{env: env, writes: suffixes{html: true}}
 	plan, acts := asIs, ""
 	cmd := &cobra.Command{
 		Use:     "run [FILE]",
