@@ -7,17 +7,24 @@ import (
 
 // Executor spreads the regions of one run over cores. It implements
 // des.Executor: its workers live as long as it does, look out for work for a
-// moment after each window and then sleep until they are called. Which of them
-// does what is left to chance, and nothing can depend on it: Each returns when
-// every call has returned, and calls share no state.
+// moment after each window and then sleep until they are called. Each core has
+// its share, every so-manyth call, so that a region mostly stays with the core
+// whose cache holds it, and who is done helps the others. Who does what is so
+// left to chance, and nothing can depend on it: Each returns when every call has
+// returned, and calls share no state.
 //
 // An Executor belongs to one run at a time.
 type Executor struct {
 	workers []*worker // beside the caller
 	do      func(i int)
 	n       int64
-	_       [64]byte
-	next    atomic.Int64 // the next i to do
+	shares  []share // of the caller, then of each worker
+}
+
+// share is the next call of one core's share; a share has a cache line of its own.
+type share struct {
+	next atomic.Int64
+	_    [56]byte
 }
 
 // worker is one goroutine and what it and the caller tell each other.
@@ -49,11 +56,11 @@ const (
 // NewExecutor starts an executor for the given number of cores, the caller's
 // own included; fewer than two start nothing. Close ends it.
 func NewExecutor(cores int) *Executor {
-	e := &Executor{}
-	for range cores - 1 {
+	e := &Executor{shares: make([]share, max(cores, 1))}
+	for k := 1; k < cores; k++ {
 		w := &worker{wake: make(chan struct{}, 1)}
 		e.workers = append(e.workers, w)
-		go e.serve(w)
+		go e.serve(w, k)
 	}
 	return e
 }
@@ -68,12 +75,14 @@ func (e *Executor) Each(n int, do func(i int)) {
 		return
 	}
 	e.do, e.n = do, int64(n)
-	e.next.Store(0)
+	for k := range e.shares {
+		e.shares[k].next.Store(int64(k))
+	}
 	helpers := e.workers[:min(len(e.workers), n-1)]
 	for _, w := range helpers {
 		w.call(called)
 	}
-	e.work()
+	e.work(0)
 	for _, w := range helpers {
 		if w.state.CompareAndSwap(called, idle) {
 			continue // it had not begun, and will not
@@ -103,22 +112,27 @@ func (w *worker) call(state int32) {
 	}
 }
 
-// work does what nobody has begun.
-func (e *Executor) work() {
-	for i := e.next.Add(1) - 1; i < e.n; i = e.next.Add(1) - 1 {
-		e.do(int(i))
+// work does what nobody has begun, the share of core k first.
+func (e *Executor) work(k int) {
+	cores := len(e.shares)
+	step := int64(cores)
+	for d := range cores {
+		s := &e.shares[(k+d)%cores]
+		for i := s.next.Add(step) - step; i < e.n; i = s.next.Add(step) - step {
+			e.do(int(i))
+		}
 	}
 }
 
 // serve is a worker's life.
-func (e *Executor) serve(w *worker) {
+func (e *Executor) serve(w *worker, k int) {
 	for {
 		w.await()
 		if w.state.Load() == dismissed {
 			return
 		}
 		if w.state.CompareAndSwap(called, working) {
-			e.work()
+			e.work(k)
 			w.state.Store(idle)
 		}
 	}

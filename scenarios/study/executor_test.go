@@ -11,6 +11,9 @@ import (
 	"ferrule/des/random"
 	"ferrule/nodes"
 	"ferrule/nodes/packet"
+	"ferrule/scenarios"
+	"ferrule/scenarios/build"
+	"ferrule/scenarios/library"
 	"ferrule/scenarios/study"
 )
 
@@ -211,7 +214,38 @@ func TestExecutorDoesNotShow(t *testing.T) {
 // once, which is what the machine can give. Quotient is the rate of the one by
 // the rate of the two; the target is 0.8.
 func BenchmarkTwoCores(b *testing.B) {
-	const length, rounds = 150 * des.Millisecond, 7
+	const length = 150 * des.Millisecond
+	twoCores(b, func() *packet.Network { return bothWays(b, length, 1) })
+}
+
+// The same with the country of the library: 19 towns, 1,710 aggregates.
+func BenchmarkTwoCoresCountry(b *testing.B) {
+	data, beside, err := library.Open("nineteen-towns")
+	if err != nil {
+		b.Fatal(err)
+	}
+	sc, err := scenarios.Load("nineteen-towns", data, beside, []string{"run.length=400ms", "run.warm-up=100ms"})
+	if err != nil {
+		b.Fatal(err)
+	}
+	plan, err := sc.Plan(scenarios.AsIs)
+	if err != nil {
+		b.Fatal(err)
+	}
+	twoCores(b, func() *packet.Network {
+		m, err := build.New(sc, plan, 1)
+		if err != nil {
+			b.Fatal(err)
+		}
+		return m.Network
+	})
+}
+
+// twoCores reports the median over rounds of what one run on two cores reaches
+// of the rate of two independent runs at once, and of its speed-up over one
+// core.
+func twoCores(b *testing.B, network func() *packet.Network) {
+	const rounds = 7
 	var quotients, speedups []float64
 	timed := func(f func()) float64 {
 		from := time.Now()
@@ -221,7 +255,7 @@ func BenchmarkTwoCores(b *testing.B) {
 	run := func(n *packet.Network, exec des.Executor) { n.Run(des.NewKernel(n, exec), nil) }
 	for b.Loop() {
 		for range rounds {
-			a, c, d, one := bothWays(b, length, 1), bothWays(b, length, 1), bothWays(b, length, 1), bothWays(b, length, 1)
+			a, c, d, one := network(), network(), network(), network()
 			e := study.NewExecutor(2)
 			both := timed(func() {
 				done := make(chan bool)
