@@ -137,6 +137,9 @@ func near(s string, words []string) string {
 // didYouMean turns the closest word into a hint; with no close word it lists
 // the words, if they are few.
 func didYouMean(s string, words []string) string {
+	if a, b, ok := strings.Cut(s, "-"); ok && slices.Contains(words, b+"-"+a) { // a fibre named from its other end
+		return fmt.Sprintf("did you mean %q?", b+"-"+a)
+	}
 	if w := near(s, words); w != "" {
 		return fmt.Sprintf("did you mean %q?", w)
 	}

@@ -49,7 +49,7 @@ func TestJUnit(t *testing.T) {
 		c.Failure.Message != "45 ms < limit & more" {
 		t.Errorf("%+v", c)
 	}
-	if status, _, errOut := try(t.Context(), false, nil, "run", "--out", path); status != 1 || !strings.Contains(errOut, "only a batch or a comparison") {
+	if status, _, errOut := try(t.Context(), false, nil, "run", "--out", path); status != 2 || !strings.Contains(errOut, "only batch and compare") {
 		t.Errorf("a run: status %d, %s", status, errOut)
 	}
 }

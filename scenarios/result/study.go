@@ -58,6 +58,7 @@ const (
 	Better    Verdict = "better"
 	Worse     Verdict = "worse"
 	Same      Verdict = "same"      // identical, or surely no difference that matters
+	Mixed     Verdict = "mixed"     // of a class: better in some figures, worse in others
 	Undecided Verdict = "undecided" // no evidence either way
 )
 

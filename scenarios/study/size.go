@@ -6,6 +6,7 @@ import (
 	"math"
 	"math/bits"
 	"slices"
+	"strings"
 
 	"ferrule/des/theory"
 	"ferrule/nodes"
@@ -65,6 +66,20 @@ type sizer struct {
 	first int
 }
 
+// plansWith hints at the plans that have a circuit of that name.
+func plansWith(sc *scenarios.Scenario, circuit string) string {
+	var have []string
+	for i := range sc.Plans {
+		if slices.ContainsFunc(sc.Plans[i].Circuits, func(c scenarios.Circuit) bool { return c.Name == circuit }) {
+			have = append(have, sc.Plans[i].Name)
+		}
+	}
+	if have == nil {
+		return ""
+	}
+	return "; it is in the plans " + strings.Join(have, ", ")
+}
+
 // begin checks the question and predicts.
 func (z *sizer) begin(sc *scenarios.Scenario) (*result.Sizing, error) {
 	plan, err := sc.Plan(z.o.plan())
@@ -74,7 +89,7 @@ func (z *sizer) begin(sc *scenarios.Scenario) (*result.Sizing, error) {
 	at := slices.IndexFunc(plan.Circuits, func(c scenarios.Circuit) bool { return c.Name == z.q.Circuit })
 	switch {
 	case at < 0:
-		return nil, fmt.Errorf("plan %s has no circuit %q", plan.Name, z.q.Circuit)
+		return nil, fmt.Errorf("plan %s has no circuit %q%s", plan.Name, z.q.Circuit, plansWith(sc, z.q.Circuit))
 	case plan.Circuits[at].Slots == 0:
 		return nil, fmt.Errorf("circuit %s is a whole channel and has no number of slots", z.q.Circuit)
 	}

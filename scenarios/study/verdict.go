@@ -13,7 +13,7 @@ import (
 // verdictOf sums up a class in one line. seeds is how many the study has. The figures that count are those with
 // a limit or, where none has one, all. A class is better when some of them are
 // and none is worse, worse the other way round, same when none differs at all,
-// and undecided when there is no evidence or evidence of both.
+// mixed when there is evidence of both, and undecided when there is none.
 func verdictOf(class string, of []contrast, seeds int, family result.Family) result.ClassVerdict {
 	v := result.ClassVerdict{Class: class}
 	limited := slices.DeleteFunc(slices.Clone(of), func(x contrast) bool { return x.Limit == nil })
@@ -37,8 +37,8 @@ func verdictOf(class string, of []contrast, seeds int, family result.Family) res
 	case len(better)+len(worse)+len(same)+len(open) == 0:
 		parts = append(parts, "nothing to compare")
 	case len(better) > 0 && len(worse) > 0:
-		v.Verdict = result.Undecided
-		parts = append(parts, "mixed: better "+places(better)+", worse "+places(worse))
+		v.Verdict = result.Mixed
+		parts = append(parts, "better "+places(better)+", worse "+places(worse))
 	case len(better) > 0:
 		v.Verdict = result.Better
 		parts = append(parts, "better "+places(better))

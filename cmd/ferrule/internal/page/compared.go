@@ -57,7 +57,7 @@ func verdictSentence(plan *result.Compared) string {
 	for _, w := range words {
 		var names []string
 		for _, v := range plan.Verdicts {
-			if _, style := chipOf(plan, v); style == w.style {
+			if _, style := chip(v.Verdict); style == w.style {
 				names = append(names, v.Class)
 			}
 		}
@@ -128,23 +128,13 @@ func chip(v result.Verdict) (word, style string) {
 		return "▼ worse", "worse"
 	case result.Same:
 		return "= the same", "same"
+	case result.Mixed:
+		return "▲▼ mixed", "mixed"
 	case result.Undecided, "":
 		return "? undecided", "undecided"
 	default:
 		panic("page: unknown verdict " + string(v))
 	}
-}
-
-// chipOf tells a class that gains here and loses there from one of which
-// nothing is known.
-func chipOf(plan *result.Compared, v result.ClassVerdict) (word, style string) {
-	has := func(x result.Verdict) bool {
-		return slices.ContainsFunc(plan.Figures, func(d result.Difference) bool { return d.Class == v.Class && d.Verdict == x })
-	}
-	if v.Verdict == result.Undecided && has(result.Better) && has(result.Worse) {
-		return "▲▼ mixed", "mixed"
-	}
-	return chip(v.Verdict)
 }
 
 // limitsOf counts the limits of a class that a plan misses.
@@ -178,7 +168,7 @@ func limitsOf(plan *result.Compared, v result.ClassVerdict) said {
 
 func comparedRow(plan *result.Compared, v result.ClassVerdict, periods []result.Period) row {
 	r := row{Class: v.Class}
-	r.Chip, r.Style = chipOf(plan, v)
+	r.Chip, r.Style = chip(v.Verdict)
 	met, missed := []string{}, []string{}
 	for _, p := range periods {
 		var figures []result.Difference
@@ -276,7 +266,7 @@ func matrixOf(c *result.Comparison) *matrix {
 				if v.Class != first.Class {
 					continue
 				}
-				cell.Chip, cell.Style = chipOf(&c.Plans[i], v)
+				cell.Chip, cell.Style = chip(v.Verdict)
 				cell.Limits = []said{limitsOf(&c.Plans[i], v)}
 			}
 			r.Chips = append(r.Chips, cell)

@@ -208,12 +208,18 @@ func (d *doc) events(es []result.Event) {
 	d.heading(word("EVENTS"))
 	g := columns(right("at"), left("what"), wrapped("subject"), wrapped("detail"))
 	together := alike(es)
-	for _, e := range together[:min(len(together), d.rows)] {
+	for _, e := range together[:min(len(together), eventRows*d.rows)] {
 		g.add(instant(e.AtS), name(e.What), name(e.Subject), name(e.Detail))
 	}
 	d.grid(g)
-	d.rest(len(together), "lines")
+	if n := len(together) - eventRows*d.rows; n > 0 {
+		d.line(word("and "), count(int64(n), ""), word(" more lines; --format json or csv has all"))
+	}
 }
+
+// eventRows is how many lines of events stand for one row of the limit: a cut
+// and its repair take some fifty.
+const eventRows = 3
 
 // alike makes one line of what befell several subjects alike, at one instant
 // and with the same detail, such as every circuit over one fibre.

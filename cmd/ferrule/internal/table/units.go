@@ -330,7 +330,7 @@ func verdict(v result.Verdict) cell {
 		return toned(word(string(v)), good)
 	case result.Worse:
 		return toned(word(string(v)), bad)
-	case result.Same, result.Undecided:
+	case result.Same, result.Mixed, result.Undecided:
 		return word(string(v))
 	default:
 		panic("table: unknown verdict " + strconv.Quote(string(v)))
